@@ -1,0 +1,20 @@
+//! The one name space of message and finding codes, one file for each room that raises them.
+
+pub mod plan;
+pub mod read;
+pub mod review;
+pub mod solve;
+
+/// A stable code with the paragraph that `ebbmap explain` prints.
+#[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord)]
+pub struct Code {
+    /// Name in lower case with hyphens, for example `net-unknown`.
+    pub name: &'static str,
+    /// What it means, what the tool did, what the user can do.
+    pub meaning: &'static str,
+}
+
+/// All codes, sorted by room.
+pub fn all() -> impl Iterator<Item = Code> {
+    [read::ALL, review::ALL, plan::ALL, solve::ALL].into_iter().flatten().copied()
+}

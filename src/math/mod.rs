@@ -1,0 +1,1 @@
+//! Small numerical tools without board words: quadrature, Krylov loops, special functions.

@@ -1,0 +1,1 @@
+//! The sheets a user gets: ticket map, contact sheet, tables and JSON, as bytes.

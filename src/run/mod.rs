@@ -1,0 +1,1 @@
+//! A whole run: review -> plan -> maps -> files, with progress and threads.

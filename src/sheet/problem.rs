@@ -1,0 +1,82 @@
+//! The problem as plain data: sheets on one grid, verticals between them, source strips and landings.
+
+use crate::geom::{Grid, Point};
+
+/// A thin conducting sheet.
+#[derive(Clone, Debug)]
+pub struct Sheet {
+    /// Which cells are copper, `grid.len()` values.
+    pub copper: Vec<bool>,
+    /// Height in metres on a common axis.
+    pub z_m: f64,
+}
+
+/// Cells of one sheet over which a current spreads evenly by weight (weights sum to 1).
+#[derive(Clone, Debug, PartialEq)]
+pub struct Patch {
+    /// Index of the sheet.
+    pub sheet: usize,
+    /// Cell index and weight.
+    pub cells: Vec<(usize, f64)>,
+}
+
+/// A lumped branch between two patches: barrel, bridging part, tie, capacitor.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Vertical {
+    /// Where positive current leaves a sheet.
+    pub from: Patch,
+    /// Where it enters a sheet.
+    pub to: Patch,
+    /// Series resistance in ohm.
+    pub resistance_ohm: f64,
+    /// Series inductance in henry, only what the grid does not already carry.
+    pub inductance_h: f64,
+    /// Series capacitance in farad; none conducts at DC.
+    pub capacitance_f: Option<f64>,
+}
+
+/// How the current spreads over a source strip's width.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum StripProfile {
+    /// Evenly (low frequency).
+    Uniform,
+    /// Edge-crowded, density 1/sqrt(1 - (2x/w)^2) (high frequency).
+    Edge,
+}
+
+/// A straight piece of source current at a given height.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct SourceStrip {
+    /// Start.
+    pub from: Point,
+    /// End.
+    pub to: Point,
+    /// Height in metres on the common axis.
+    pub z_m: f64,
+    /// Width in metres.
+    pub width_m: f64,
+    /// Profile across the width.
+    pub profile: StripProfile,
+    /// Current from `from` to `to` in A (1 for the signal itself).
+    pub current_a: f64,
+}
+
+/// A current that enters (positive) the sheets over a patch.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Injection {
+    /// Where.
+    pub patch: Patch,
+    /// Current into the sheet in A.
+    pub current_a: f64,
+}
+
+/// Sheets and what joins them; sources and frequency are given when solving.
+#[derive(Clone, Debug)]
+pub struct Problem {
+    /// Cells, common to all sheets.
+    pub grid: Grid,
+    /// Sheets.
+    pub sheets: Vec<Sheet>,
+    /// Verticals between sheets (or between two places of one sheet).
+    pub verticals: Vec<Vertical>,
+}

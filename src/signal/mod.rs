@@ -1,0 +1,1 @@
+//! Bands and spectra: at which frequencies a signal is looked at.

@@ -1,0 +1,1 @@
+//! Published closed forms of the return current, one file for each model.

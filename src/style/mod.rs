@@ -1,0 +1,1 @@
+//! Looks as plain data: colours, widths, fonts, page sizes.
