@@ -5,3 +5,8 @@
 mod problem;
 
 pub use problem::{Injection, Patch, Problem, Sheet, SourceStrip, StripProfile, Vertical};
+
+mod solution;
+mod system;
+pub use solution::{Solution, SolveFailure};
+pub use system::{Drive, OperatingPoint, System};
