@@ -9,6 +9,41 @@ pub struct Sheet {
     pub copper: Vec<bool>,
     /// Height in metres on a common axis.
     pub z_m: f64,
+    /// Rising indices (as in [`super::Solution::jx`]) of vertical faces between two copper cells that do not conduct:
+    /// a slot narrower than a cell passes there.
+    pub cut_x: Vec<usize>,
+    /// The same of horizontal faces (as in [`super::Solution::jy`]).
+    pub cut_y: Vec<usize>,
+}
+
+impl Sheet {
+    /// A sheet without cut faces.
+    pub fn new(copper: Vec<bool>, z_m: f64) -> Self {
+        Self { copper, z_m, cut_x: Vec::new(), cut_y: Vec::new() }
+    }
+
+    /// Which faces conduct, that is have copper on both sides and are not cut: vertical faces, `(nx + 1) * ny`
+    /// values as in [`super::Solution::jx`], and horizontal faces, `nx * (ny + 1)` values as in
+    /// [`super::Solution::jy`]. A branch of the system is a face that conducts.
+    pub fn conducting_faces(&self, grid: &Grid) -> (Vec<bool>, Vec<bool>) {
+        let (nx, ny) = (grid.nx, grid.ny);
+        let mut along_x = vec![false; (nx + 1) * ny];
+        let mut along_y = vec![false; nx * (ny + 1)];
+        for iy in 0..ny {
+            for ix in 0..nx {
+                let here = self.copper[iy * nx + ix];
+                if ix > 0 {
+                    along_x[iy * (nx + 1) + ix] = here && self.copper[iy * nx + ix - 1];
+                }
+                if iy > 0 {
+                    along_y[iy * nx + ix] = here && self.copper[(iy - 1) * nx + ix];
+                }
+            }
+        }
+        self.cut_x.iter().for_each(|&face| along_x[face] = false);
+        self.cut_y.iter().for_each(|&face| along_y[face] = false);
+        (along_x, along_y)
+    }
 }
 
 /// Cells of one sheet over which a current spreads evenly by weight (weights sum to 1).
