@@ -1,5 +1,11 @@
 //! The return-current density of one net on one plane at one frequency, and how it comes from a model.
 
+mod mask;
+mod pieces;
+
+pub use mask::{Mask, NO_ISLAND, TooCoarse};
+pub use pieces::Copper;
+
 use crate::geom::Grid;
 use crate::review::Model;
 use num_complex::Complex64;

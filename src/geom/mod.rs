@@ -3,6 +3,7 @@
 mod grid;
 mod point;
 mod polygon;
+pub mod raster;
 
 pub use grid::Grid;
 pub use point::{Bounds, Point};
