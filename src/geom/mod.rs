@@ -1,9 +1,12 @@
 //! Plane geometry in metres: points, polygons with holes, regions, the uniform grid of cells.
 
+pub mod boolean;
 mod grid;
+pub mod locate;
 mod point;
-mod polygon;
+pub mod polygon;
 pub mod raster;
+pub mod stroke;
 
 pub use grid::Grid;
 pub use point::{Bounds, Point};
