@@ -1,6 +1,36 @@
 //! The command-line interface: arguments, commands, exit codes.
+//!
+//! Results go to standard output, messages and progress to standard error. The commands use the library as an
+//! outsider would; nothing here computes or draws.
+
+mod args;
+mod console;
+mod draw;
+mod exit;
+mod explain;
+mod look;
+
+pub use console::Console;
+pub use exit::Exit;
+
+use args::{Arguments, Command};
+use clap::Parser as _;
 
 /// Runs the command of this process and gives its exit code.
 pub fn main() -> std::process::ExitCode {
-    std::process::ExitCode::from(2)
+    let arguments = match Arguments::try_parse() {
+        Ok(arguments) => arguments,
+        Err(usage) => {
+            // A reader that went away (`ebbmap --help | head -1`) is no failure, and nobody is left to tell.
+            let _ = usage.print();
+            return if usage.use_stderr() { Exit::Unusable.into() } else { Exit::Complete.into() };
+        }
+    };
+    let mut console = Console::of_process();
+    let exit = match &arguments.command {
+        Command::Draw(order) => draw::draw(order, &mut console),
+        Command::Look { path, json } => look::look(path, *json, &mut console),
+        Command::Explain { code } => explain::explain(code.as_deref(), &mut console),
+    };
+    console.finish(exit).into()
 }

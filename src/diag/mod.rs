@@ -48,6 +48,27 @@ pub struct Diagnostic {
     pub hints: Vec<String>,
 }
 
+impl Place {
+    /// The place in words, for example `fab/copper-1.gbr, line 12` or `L2, x 12.30 mm, y 4.00 mm`; none if there is
+    /// no place.
+    pub fn in_words(&self) -> Option<String> {
+        let mut words = Vec::new();
+        if let Some(file) = &self.file {
+            words.push(file.clone());
+        }
+        if let Some(line) = self.line {
+            words.push(format!("line {line}"));
+        }
+        if let Some(layer) = self.layer {
+            words.push(format!("L{layer}"));
+        }
+        if let Some(at) = self.at {
+            words.push(format!("x {:.2} mm, y {:.2} mm", at.x * 1e3, at.y * 1e3));
+        }
+        (!words.is_empty()).then(|| words.join(", "))
+    }
+}
+
 impl Diagnostic {
     /// A message without a place and without hints.
     pub fn new(severity: Severity, code: Code, text: impl Into<String>) -> Self {
