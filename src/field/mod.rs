@@ -1,10 +1,20 @@
 //! The return-current density of one net on one plane at one frequency, and how it comes from a model.
 
+mod foil;
 mod mask;
 mod pieces;
+mod source;
+pub mod spread;
+mod stage;
+pub mod track;
+mod workshop;
 
+pub use foil::Foil;
 pub use mask::{Mask, NO_ISLAND, TooCoarse};
 pub use pieces::Copper;
+pub use source::Source;
+pub use stage::Voids;
+pub use workshop::{Bench, Progress, Solved, TOLERANCE, Workshop};
 
 use crate::geom::Grid;
 use crate::review::Model;

@@ -2,6 +2,7 @@
 
 mod json;
 mod manifest;
+pub mod numbers;
 
 pub use json::json;
 pub use manifest::{Manifest, sha256_hex};

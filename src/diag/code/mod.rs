@@ -1,5 +1,6 @@
 //! The one name space of message and finding codes, one file for each room that raises them.
 
+pub mod field;
 pub mod plan;
 pub mod read;
 pub mod review;
@@ -16,5 +17,5 @@ pub struct Code {
 
 /// All codes, sorted by room.
 pub fn all() -> impl Iterator<Item = Code> {
-    [read::ALL, review::ALL, plan::ALL, solve::ALL].into_iter().flatten().copied()
+    [read::ALL, review::ALL, plan::ALL, solve::ALL, field::ALL].into_iter().flatten().copied()
 }

@@ -1,0 +1,42 @@
+//! Codes raised by the room `field`.
+
+use super::Code;
+
+/// The landings of a net lie on copper that is not connected.
+pub const LANDINGS_APART: Code = Code {
+    name: "landings-apart",
+    meaning: "The return of the net would have to enter the plane on one island and leave it on another. No current \
+              on this plane alone does that, so no map is drawn. Join the islands on the board, name landings on \
+              one island with `driver_landing` and `receiver_landing`, or name another plane.",
+};
+
+/// A landing is nowhere near the plane's copper.
+pub const LANDING_OFF_COPPER: Code = Code {
+    name: "landing-off-copper",
+    meaning: "The circle over which the return would enter the plane covers none of its copper, nor does a ring of \
+              two cells round it. Name a landing on the plane with `driver_landing` or `receiver_landing`.",
+};
+
+/// A cell holds copper that must stay apart.
+pub const CELL_TOO_LARGE: Code = Code {
+    name: "cell-too-large",
+    meaning: "Two pieces of copper that are not connected, or two necks, pass through one cell, so cells of this \
+              size cannot stand for the plane. The cell is halved up to two times; where that is not enough, no map \
+              is drawn. Set a smaller `cell` under `[solver]`.",
+};
+
+/// The cell was halved.
+pub const CELL_HALVED: Code = Code {
+    name: "cell-halved",
+    meaning: "Cells of the size asked for cannot stand for the plane: two pieces of copper pass through one cell. \
+              The map is solved on smaller cells.",
+};
+
+/// The iteration did not converge.
+pub const NOT_CONVERGED: Code = Code {
+    name: "solve-not-converged",
+    meaning: "The iteration did not reach the tolerance. A map is never drawn from such a solution.",
+};
+
+/// All codes of this room.
+pub const ALL: &[Code] = &[LANDINGS_APART, LANDING_OFF_COPPER, CELL_TOO_LARGE, CELL_HALVED, NOT_CONVERGED];

@@ -1,0 +1,148 @@
+//! From maps to figures.
+
+use super::station::{self, Station};
+use super::{Figure, Figures, level, section};
+use crate::field::ReturnMap;
+use crate::geom::Point;
+use crate::plan::TrackLeg;
+
+/// Relative error that is stated where there was no second solve on cells of 2d: the bound for a straight track with
+/// cells up to the height, and up to twice the height. Checked by: `straight_track_matches_the_sheet_formula` in
+/// tests/field.rs.
+pub const UNCHECKED_ERROR: [f64; 2] = [0.02, 0.06];
+/// Shares of the return for half-widths and contours.
+const PARTS: [f64; 3] = [0.5, 0.8, 0.95];
+/// Steps of a section profile per height, as far as 4h; 3h is a multiple of the step.
+const STEPS_PER_HEIGHT: usize = 8;
+/// Growth of the distances of a section profile beyond.
+const GROWTH: f64 = 1.02;
+
+/// Maps of one net, plane and frequency.
+#[derive(Clone, Copy, Debug)]
+pub struct Maps<'a> {
+    /// The map itself.
+    pub map: &'a ReturnMap,
+    /// The same with all voids filled.
+    pub without_voids: Option<&'a ReturnMap>,
+    /// Both on cells of 2d.
+    pub coarse: Option<(&'a ReturnMap, Option<&'a ReturnMap>)>,
+}
+
+/// The track that the map belongs to.
+#[derive(Clone, Copy, Debug)]
+pub struct Track<'a> {
+    /// Legs that the plane serves.
+    pub legs: &'a [TrackLeg],
+    /// Where the return enters and leaves the plane.
+    pub landings: &'a [Point],
+    /// Thickness of the dielectric between track and plane in metres, h.
+    pub height_m: f64,
+}
+
+/// All figures of one map.
+pub fn figures(maps: &Maps, track: &Track) -> Figures {
+    let stations = station::along(track.legs, maps.map.grid.cell_m);
+    let stations = station::regular(&stations, track.legs, track.landings, track.height_m);
+    let all = |map: &ReturnMap| Raw::of(map, &stations, track.height_m);
+    let here = all(maps.map);
+    let filled = maps.without_voids.map(all);
+    let coarse = maps.coarse.map(|(map, filled)| (all(map), filled.map(all)));
+    let bound = UNCHECKED_ERROR[usize::from(maps.map.grid.cell_m > 1.001 * track.height_m)];
+    // A figure that exists for cells of d and not for 2d, or without a second solve, gets the bound.
+    let figure = |pick: &dyn Fn(&Raw) -> Option<f64>| {
+        let value = pick(&here);
+        let second = coarse.as_ref().and_then(|(map, _)| pick(map));
+        let error = match (value, second) {
+            (Some(a), Some(b)) => (a - b).abs(),
+            (Some(a), None) => bound * a.abs(),
+            (None, _) => 0.0,
+        };
+        Figure { value, without_voids: filled.as_ref().and_then(pick), error }
+    };
+    let extra = |pick: &dyn Fn(&Raw) -> Option<f64>| -> Option<Figure> {
+        let of = |map: &Raw, filled: Option<&Raw>| Some(pick(map)? - pick(filled?)?);
+        let value = of(&here, filled.as_ref())?;
+        let second = coarse.as_ref().and_then(|(map, filled)| of(map, filled.as_ref()));
+        let scale = pick(&here).unwrap_or(value);
+        let error = second.map_or(bound * scale.abs(), |second| (value - second).abs());
+        Some(Figure { value: Some(value), without_voids: Some(0.0), error })
+    };
+    let present = |figure: Figure| figure.value.is_some().then_some(figure);
+    Figures {
+        share_3h: figure(&|raw| raw.share_3h),
+        worst_share_3h: here.worst,
+        half_width_m: std::array::from_fn(|i| figure(&|raw| raw.half_width_m[i])),
+        contour_levels: level::levels(maps.map, PARTS),
+        extra_path_m: extra(&|raw| Some(raw.path_m)),
+        loop_resistance_ohm: present(figure(&|raw| raw.resistance_ohm)),
+        loop_inductance_h: present(figure(&|raw| raw.inductance_h)),
+        extra_loop_resistance_ohm: extra(&|raw| raw.resistance_ohm),
+        extra_loop_inductance_h: extra(&|raw| raw.inductance_h),
+    }
+}
+
+/// Figures of one map alone.
+struct Raw {
+    share_3h: Option<f64>,
+    worst: Option<(f64, Point)>,
+    half_width_m: [Option<f64>; 3],
+    path_m: f64,
+    resistance_ohm: Option<f64>,
+    inductance_h: Option<f64>,
+}
+
+impl Raw {
+    fn of(map: &ReturnMap, stations: &[Station], height_m: f64) -> Self {
+        let profile = Profile::of(map, stations, height_m);
+        let omega = std::f64::consts::TAU * map.frequency_hz;
+        Self {
+            share_3h: profile.as_ref().map(|profile| profile.mean[3 * STEPS_PER_HEIGHT]),
+            worst: profile.as_ref().map(|profile| profile.worst),
+            half_width_m: PARTS.map(|part| profile.as_ref().and_then(|profile| profile.half_width_m(part))),
+            path_m: level::in_phase_path_m(map),
+            resistance_ohm: map.loop_impedance_ohm.map(|z| z.re),
+            inductance_h: map.loop_impedance_ohm.filter(|_| omega > 0.0).map(|z| z.im / omega),
+        }
+    }
+}
+
+/// The mean share over the stations against the distance from the track.
+struct Profile {
+    within_m: Vec<f64>,
+    mean: Vec<f64>,
+    worst: (f64, Point),
+}
+
+impl Profile {
+    fn of(map: &ReturnMap, stations: &[Station], height_m: f64) -> Option<Self> {
+        let bounds = map.grid.bounds();
+        let reach = libm::hypot(bounds.width(), bounds.height());
+        let near = (0..=4 * STEPS_PER_HEIGHT).map(|i| height_m * i as f64 / STEPS_PER_HEIGHT as f64);
+        let mut within_m: Vec<f64> = near.collect();
+        let mut next = 4.0 * height_m * GROWTH;
+        while next < reach * GROWTH {
+            within_m.push(next);
+            next *= GROWTH;
+        }
+        let mut mean = vec![0.0; within_m.len()];
+        let mut worst: Option<(f64, Point)> = None;
+        for station in stations {
+            let shares = section::shares(map, station.at, station.along, &within_m);
+            let near = shares[3 * STEPS_PER_HEIGHT];
+            if worst.is_none_or(|(least, _)| near < least) {
+                worst = Some((near, station.at));
+            }
+            mean.iter_mut().zip(&shares).for_each(|(mean, share)| *mean += share);
+        }
+        mean.iter_mut().for_each(|mean| *mean /= stations.len().max(1) as f64);
+        worst.map(|worst| Self { within_m, mean, worst })
+    }
+
+    /// The smallest distance within which the mean share reaches `part`, linear between steps.
+    fn half_width_m(&self, part: f64) -> Option<f64> {
+        let after = self.mean.iter().position(|&share| share >= part)?;
+        let (before, share) = (self.mean[after.checked_sub(1)?], self.mean[after]);
+        let (near, far) = (self.within_m[after - 1], self.within_m[after]);
+        Some(far - (far - near) * (share - part) / (share - before))
+    }
+}
