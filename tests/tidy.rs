@@ -74,7 +74,8 @@ fn files_below(folder: &str) -> Vec<PathBuf> {
 
 fn sources(folder: &str) -> Vec<(PathBuf, String)> {
     let rust = files_below(folder).into_iter().filter(|path| path.extension().is_some_and(|e| e == "rs"));
-    let read: Vec<_> = rust.map(|path| (path.clone(), fs::read_to_string(root().join(path)).unwrap())).collect();
+    let read: Vec<_> =
+        rust.map(|path| (path.clone(), fs::read_to_string(root().join(path)).unwrap())).collect();
     assert!(!read.is_empty(), "no sources in {folder}: this test would check nothing");
     read
 }
@@ -165,7 +166,9 @@ fn imports_point_downward() {
 
 #[test]
 fn import_scanner_sees_lists_and_paths() {
-    let code = code_only("use crate::{board::{Board, Net}, geom::Point};\nlet x = crate::plan::Plan; // crate::cli\n");
+    let code = code_only(
+        "use crate::{board::{Board, Net}, geom::Point};\nlet x = crate::plan::Plan; // crate::cli\n",
+    );
     let want: BTreeSet<String> = ["board", "geom", "plan"].iter().map(|s| s.to_string()).collect();
     assert_eq!(imported_rooms(&code), want);
 }
@@ -231,7 +234,8 @@ fn numerical_files_name_their_checks() {
         if excused {
             continue;
         }
-        let header: String = text.lines().take_while(|line| line.starts_with("//!")).collect::<Vec<_>>().join("\n");
+        let header: String =
+            text.lines().take_while(|line| line.starts_with("//!")).collect::<Vec<_>>().join("\n");
         if !header.contains("Checked by:") {
             wrong.push(format!("{}: header lacks `Checked by:`", path.display()));
             continue;
@@ -268,7 +272,8 @@ fn developers_document_names_every_room_and_nothing_else() {
     }
     // whatever looks like a path of the repository must exist
     for quoted in text.split('`').skip(1).step_by(2) {
-        let is_path = ["src/", "tests/", "samples/", "styles/", ".ci/"].iter().any(|top| quoted.starts_with(top));
+        let is_path =
+            ["src/", "tests/", "samples/", "styles/", ".ci/"].iter().any(|top| quoted.starts_with(top));
         if is_path && !quoted.contains(['*', '<', ' ']) && !root().join(quoted).exists() {
             wrong.push(format!("DEVELOPERS.md names `{quoted}`, which does not exist"));
         }
@@ -346,7 +351,10 @@ fn golden_cases_are_complete() {
         if path.extension().is_some_and(|e| e == "png") && bytes > 20 * 1024 {
             let case = fs::read_to_string(root().join(path.with_file_name("case.toml"))).unwrap_or_default();
             if !case.contains("large = \"") {
-                wrong.push(format!("{}: {bytes} bytes; at most 20480 without `large = \"reason\"`", path.display()));
+                wrong.push(format!(
+                    "{}: {bytes} bytes; at most 20480 without `large = \"reason\"`",
+                    path.display()
+                ));
             }
         }
     }
