@@ -1,1 +1,4 @@
-//! Small numerical tools without board words: quadrature, Krylov loops, special functions.
+//! Small numerical tools without board words: quadrature, Fourier filters, special functions.
+
+pub mod filter;
+pub mod quadrature;

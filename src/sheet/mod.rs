@@ -2,11 +2,16 @@
 //!
 //! Knows nothing of boards: it gets masks, heights, verticals, sources and frequencies.
 
+mod branches;
+pub mod kernel;
+mod operator;
 mod problem;
+mod projector;
+pub mod source;
 
 pub use problem::{Injection, Patch, Problem, Sheet, SourceStrip, StripProfile, Vertical};
 
 mod solution;
 mod system;
 pub use solution::{Solution, SolveFailure};
-pub use system::{Drive, OperatingPoint, System};
+pub use system::{Drive, OperatingPoint, Prepared, System};

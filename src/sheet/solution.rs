@@ -11,6 +11,9 @@ pub struct Solution {
     pub jy: Vec<Vec<Complex64>>,
     /// Current in A through each vertical, positive from `from` to `to`.
     pub verticals: Vec<Complex64>,
+    /// For each sheet and cell the potential in V against some cell of the same connected copper (zero without copper);
+    /// differences are those along the copper, without the EMF of the fields.
+    pub potential_v: Vec<Vec<Complex64>>,
     /// Impedance in ohm of the loop as far as the sheets and verticals make it: the EMF that their currents and the
     /// potential difference of the landings put into the source path, for the source's unit current, without the
     /// source path's own resistance and self-inductance.
@@ -35,6 +38,11 @@ pub enum SolveFailure {
     NoCopper {
         /// Index of the injection or vertical.
         index: usize,
+    },
+    /// The graph of cells could not be factored: out of memory.
+    Factor {
+        /// Number of unknowns.
+        unknowns: usize,
     },
     /// The iteration did not reach the tolerance.
     NoConvergence {

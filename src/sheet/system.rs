@@ -1,7 +1,22 @@
 //! The discrete system of a problem: branches, factor and kernels, independent of frequency and source.
+//!
+//! Model: Zs K + s A(K, strips) + grad phi = 0 on every sheet, div K = injected current, with the band-limited kernel
+//! of `kernel` between the branches of all sheets, verticals r + s l + 1/(s c) between patches; solved by conjugate
+//! gradients on the currents that conserve (`operator`), from the potential flow as start.
+//!
+//! Source: partial-element method, Ruehli, IEEE T-MTT 22, 1974 (from memory); projection see `projector`.
+//!
+//! Holds when: sheets are thin against the track's height and all lengths are short against the wavelength.
+//!
+//! Checked by: tests/physics.
 
+use super::branches::{Branches, NO_NODE};
+use super::operator::{Coupling, Impedance, dot, norm, typical, vertical_impedance};
+use super::projector::Projector;
+use super::source;
 use super::{Injection, Problem, Solution, SolveFailure, SourceStrip};
 use num_complex::Complex64;
+use std::sync::Arc;
 
 /// What drives the sheets: source strips at their heights and the landings where the return enters and leaves.
 #[derive(Clone, Debug)]
@@ -21,16 +36,34 @@ pub struct OperatingPoint {
     pub zs_ohm: Vec<Complex64>,
 }
 
+/// A drive on the branches of a system: the part of a solve that does not depend on frequency.
+#[derive(Clone, Debug)]
+pub struct Prepared {
+    /// Integral of the strips' vector potential along every dual edge in V s.
+    pub flux: Vec<f64>,
+    /// Current in A that enters each node.
+    pub entering: Vec<f64>,
+}
+
 /// A prepared problem: solve it for any source and frequency.
 #[derive(Debug)]
 pub struct System {
     problem: Problem,
+    branches: Branches,
+    coupling: Coupling,
+    projector: Arc<Projector>,
 }
+
+/// Steps after which a solve is given up.
+const MOST_STEPS: usize = 400;
 
 impl System {
     /// Numbers the branches, factors the graph Laplacian and transforms the kernels of `problem`.
     pub fn new(problem: Problem) -> Result<Self, SolveFailure> {
-        Ok(Self { problem })
+        let branches = Branches::new(&problem)?;
+        let coupling = Coupling::new(&problem);
+        let projector = Arc::new(Projector::new(&branches, vec![1.0; problem.verticals.len()])?);
+        Ok(Self { problem, branches, coupling, projector })
     }
 
     /// The problem that was prepared.
@@ -38,13 +71,168 @@ impl System {
         &self.problem
     }
 
+    /// Number of unknown currents: conducting faces and verticals.
+    pub fn unknowns(&self) -> usize {
+        self.branches.conducts.iter().filter(|conducts| **conducts).count() + self.branches.ends.len()
+    }
+
+    /// Bytes of the factor that all solves share.
+    pub fn factor_bytes(&self) -> usize {
+        self.projector.bytes()
+    }
+
+    /// Evaluates the drive on the branches; use it for several frequencies with [`System::solve_prepared`].
+    pub fn prepare(&self, drive: &Drive) -> Result<Prepared, SolveFailure> {
+        let mut entering = vec![0.0; self.branches.nodes];
+        for (index, injection) in drive.injections.iter().enumerate() {
+            for (node, weight) in self.branches.on_nodes(&injection.patch, index)? {
+                entering[node as usize] += weight * injection.current_a;
+            }
+        }
+        Ok(Prepared { flux: source::flux(&self.problem, &drive.strips), entering })
+    }
+
     /// Solves for one drive at one frequency to a relative residual of `tolerance`.
     pub fn solve(
         &self,
-        _drive: &Drive,
-        _point: &OperatingPoint,
-        _tolerance: f64,
+        drive: &Drive,
+        point: &OperatingPoint,
+        tolerance: f64,
     ) -> Result<Solution, SolveFailure> {
-        todo!("solver")
+        self.solve_prepared(&self.prepare(drive)?, point, tolerance)
+    }
+
+    /// Solves for one prepared drive at one frequency to a relative residual of `tolerance`.
+    pub fn solve_prepared(
+        &self,
+        drive: &Prepared,
+        point: &OperatingPoint,
+        tolerance: f64,
+    ) -> Result<Solution, SolveFailure> {
+        let s = Complex64::new(0.0, 2.0 * std::f64::consts::PI * point.frequency_hz);
+        let projector = self.projector_at(s, &point.zs_ohm)?;
+        self.check_balance(&projector, &drive.entering)?;
+        let branches = &self.branches;
+        let mut operator =
+            Impedance::new(&self.problem, branches, &self.coupling, &projector, s, &point.zs_ohm);
+        let mut emf: Vec<Complex64> = drive.flux.iter().map(|a| s * a).collect();
+        emf.iter_mut().zip(&branches.conducts).filter(|(_, c)| !**c).for_each(|(v, _)| *v = 0.0.into());
+        emf.resize(branches.len(), Complex64::default());
+        let entering: Vec<Complex64> = drive.entering.iter().map(|&a| a.into()).collect();
+        // potential flow: conserve() removes the divergence, so start from the negative of what should enter
+        let mut currents = vec![Complex64::default(); branches.len()];
+        let flow = projector.potential(&entering);
+        branches.subtract_gradient(&flow, Some(&projector.conductance), &mut currents);
+        currents.iter_mut().for_each(|i| *i = -*i);
+        // the voltages that drive the currents: induced ones without their potential part, resistive ones of the start
+        let mut driving = emf.clone();
+        projector.take_out_potential(branches, &mut driving);
+        let size = norm(&driving) + norm(&operator.resistive(&currents));
+        drop(driving);
+        let (steps, _) = operator.iterate(&emf, &mut currents, tolerance * size, MOST_STEPS);
+        // rounding of many steps: bring the divergence back
+        let mut surplus = branches.divergence(&currents);
+        surplus.iter_mut().zip(&entering).for_each(|(leaves, enters)| *leaves -= enters);
+        let potential = projector.potential(&surplus);
+        branches.subtract_gradient(&potential, Some(&projector.conductance), &mut currents);
+        // what is left of the voltage law
+        let mut voltage = vec![Complex64::default(); branches.len()];
+        operator.apply(&currents, &mut voltage);
+        let impedance = dot(&currents, &voltage) + 2.0 * dot(&currents, &emf);
+        voltage.iter_mut().zip(&emf).for_each(|(v, e)| *v += e);
+        let potential = projector.take_out_potential(branches, &mut voltage);
+        let residual = if size > 0.0 { norm(&voltage) / size } else { 0.0 };
+        if residual.is_nan() || residual > 1.01 * tolerance.max(1e-11) {
+            return Err(SolveFailure::NoConvergence { steps, residual, tolerance });
+        }
+        Ok(self.solution(currents, &potential, impedance, residual, steps))
+    }
+
+    /// The prepared factor, or one with weights that suit the verticals at this frequency.
+    fn projector_at(&self, s: Complex64, zs: &[Complex64]) -> Result<Arc<Projector>, SolveFailure> {
+        let typical = typical(&self.problem, s, zs).norm();
+        let suits: Vec<f64> = self
+            .problem
+            .verticals
+            .iter()
+            .map(|vertical| {
+                let ratio = vertical_impedance(vertical, s).norm() / typical;
+                if !ratio.is_finite() {
+                    return 0.0;
+                }
+                // powers of four, so that small changes of frequency change nothing
+                if (0.1..=10.0).contains(&ratio) || ratio < 0.1 {
+                    1.0
+                } else {
+                    libm::exp2(-2.0 * libm::round(libm::log2(ratio) / 2.0)).max(1e-9)
+                }
+            })
+            .collect();
+        if suits == self.projector.conductance {
+            return Ok(self.projector.clone());
+        }
+        Ok(Arc::new(Projector::new(&self.branches, suits)?))
+    }
+
+    /// The net current of every connected piece of copper must vanish.
+    fn check_balance(&self, projector: &Projector, entering: &[f64]) -> Result<(), SolveFailure> {
+        let mut net = vec![0.0; entering.len()];
+        let mut total = 0.0;
+        for (node, &current) in entering.iter().enumerate() {
+            net[projector.piece[node] as usize] += current;
+            total += current.abs();
+        }
+        let off = |piece: &&u32| net[**piece as usize].abs() > 1e-9 * total;
+        let lands = |node: usize| entering[node] != 0.0;
+        let Some(first) = (0..entering.len()).find(|&node| lands(node) && off(&&projector.piece[node]))
+        else {
+            return Ok(());
+        };
+        let piece = projector.piece[first];
+        let second = (0..entering.len())
+            .find(|&node| lands(node) && projector.piece[node] != piece && off(&&projector.piece[node]));
+        let cell = |wanted: usize| {
+            let at = self.branches.node.iter().position(|&node| node as usize == wanted && node != NO_NODE);
+            at.unwrap_or(0) % self.branches.cells()
+        };
+        let cells = (cell(first), cell(second.unwrap_or(first)));
+        Err(SolveFailure::Unbalanced { cells, current_a: net[piece as usize] })
+    }
+
+    /// Currents and potentials in the layout that others read.
+    fn solution(
+        &self,
+        currents: Vec<Complex64>,
+        potential: &[Complex64],
+        impedance: Complex64,
+        residual: f64,
+        steps: usize,
+    ) -> Solution {
+        let branches = &self.branches;
+        let (nx, ny, zero) = (branches.nx, branches.ny, Complex64::default());
+        let (mut jx, mut jy, mut potentials) = (Vec::new(), Vec::new(), Vec::new());
+        for sheet in 0..branches.sheets {
+            let mut along_x = vec![zero; (nx + 1) * ny];
+            let from = &currents[branches.plane(sheet, 0)];
+            for (to, row) in along_x.chunks_exact_mut(nx + 1).zip(from.chunks_exact(nx)) {
+                to[..nx].copy_from_slice(row);
+            }
+            let mut along_y = currents[branches.plane(sheet, 1)].to_vec();
+            along_y.resize(nx * (ny + 1), zero);
+            jx.push(along_x);
+            jy.push(along_y);
+            let nodes = &branches.node[sheet * nx * ny..(sheet + 1) * nx * ny];
+            let at = |&node: &u32| if node == NO_NODE { zero } else { potential[node as usize] };
+            potentials.push(nodes.iter().map(at).collect());
+        }
+        Solution {
+            jx,
+            jy,
+            verticals: currents[branches.faces()..].to_vec(),
+            potential_v: potentials,
+            sheet_impedance_ohm: impedance,
+            residual,
+            steps,
+        }
     }
 }

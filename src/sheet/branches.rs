@@ -1,0 +1,196 @@
+//! The branches of a problem: conducting faces and verticals, their nodes, and the sparse operators on them.
+//!
+//! A vector of branch currents holds for each sheet nx * ny x-faces (index iy * nx + ix is the face between cells
+//! (ix - 1, iy) and (ix, iy)), then nx * ny y-faces (between (ix, iy - 1) and (ix, iy)), then one value for each
+//! vertical. Faces that do not conduct are always zero. Currents in A, positive towards rising index.
+//!
+//! Model: divergence (D i)_n = current that leaves node n; resistance of a face
+//! Zs (1 + (d_xx - d_yy)/24) on x-faces, signs exchanged on y-faces, second differences between conducting faces only:
+//! a face flux stands for the average across the face, the EMF needs the average along the dual edge.
+//!
+//! Source: derived by Taylor expansion; checked against the closed form of the resistive sheet.
+//!
+//! Checked by: `straight_track_on_a_resistive_sheet` and `dense_direct_solve_agrees` in tests/physics.
+
+use super::{Patch, Problem, SolveFailure, Vertical};
+use num_complex::Complex64;
+
+/// Mark of a cell without copper.
+pub const NO_NODE: u32 = u32::MAX;
+
+/// Numbering of faces, verticals and nodes.
+#[derive(Debug)]
+pub struct Branches {
+    /// Columns of the grid.
+    pub nx: usize,
+    /// Rows of the grid.
+    pub ny: usize,
+    /// Number of sheets.
+    pub sheets: usize,
+    /// Which faces conduct, in the order of a vector of branch currents.
+    pub conducts: Vec<bool>,
+    /// Node of each cell of each sheet, [`NO_NODE`] without copper.
+    pub node: Vec<u32>,
+    /// Number of nodes (copper cells of all sheets).
+    pub nodes: usize,
+    /// For each vertical the nodes it touches with what leaves them for 1 A.
+    pub ends: Vec<Vec<(u32, f64)>>,
+}
+
+impl Branches {
+    /// Numbers the branches of `problem`.
+    pub fn new(problem: &Problem) -> Result<Self, SolveFailure> {
+        let (nx, ny) = (problem.grid.nx, problem.grid.ny);
+        let sheets = problem.sheets.len();
+        let mut conducts = Vec::with_capacity(2 * sheets * nx * ny);
+        let mut node = Vec::with_capacity(sheets * nx * ny);
+        let mut nodes = 0;
+        for sheet in &problem.sheets {
+            let (along_x, along_y) = sheet.conducting_faces(&problem.grid);
+            for iy in 0..ny {
+                conducts.extend_from_slice(&along_x[iy * (nx + 1)..iy * (nx + 1) + nx]);
+            }
+            conducts.extend_from_slice(&along_y[..nx * ny]);
+            for &copper in &sheet.copper {
+                node.push(if copper { nodes } else { NO_NODE });
+                nodes += u32::from(copper);
+            }
+        }
+        let mut branches = Self { nx, ny, sheets, conducts, node, nodes: nodes as usize, ends: Vec::new() };
+        let ends =
+            problem.verticals.iter().enumerate().map(|(index, vertical)| branches.ends_of(vertical, index));
+        branches.ends = ends.collect::<Result<_, _>>()?;
+        Ok(branches)
+    }
+
+    fn ends_of(&self, vertical: &Vertical, index: usize) -> Result<Vec<(u32, f64)>, SolveFailure> {
+        let mut ends = self.on_nodes(&vertical.from, index)?;
+        ends.extend(self.on_nodes(&vertical.to, index)?.into_iter().map(|(node, weight)| (node, -weight)));
+        Ok(ends)
+    }
+
+    /// A patch as nodes and weights that sum to 1; cells without copper are left out and the rest takes their part.
+    pub fn on_nodes(&self, patch: &Patch, index: usize) -> Result<Vec<(u32, f64)>, SolveFailure> {
+        let cells = self.nx * self.ny;
+        let on_copper: Vec<(u32, f64)> = patch
+            .cells
+            .iter()
+            .filter(|&&(cell, weight)| cell < cells && patch.sheet < self.sheets && weight != 0.0)
+            .map(|&(cell, weight)| (self.node[patch.sheet * cells + cell], weight))
+            .filter(|&(node, _)| node != NO_NODE)
+            .collect();
+        let sum: f64 = on_copper.iter().map(|(_, weight)| weight).sum();
+        if on_copper.is_empty() || sum.is_nan() || sum <= 0.0 {
+            return Err(SolveFailure::NoCopper { index });
+        }
+        Ok(on_copper.into_iter().map(|(node, weight)| (node, weight / sum)).collect())
+    }
+
+    /// Number of cells of the grid.
+    pub fn cells(&self) -> usize {
+        self.nx * self.ny
+    }
+
+    /// Number of values of all faces.
+    pub fn faces(&self) -> usize {
+        self.conducts.len()
+    }
+
+    /// Number of values of a vector of branch currents.
+    pub fn len(&self) -> usize {
+        self.faces() + self.ends.len()
+    }
+
+    /// Range of the x-faces (direction 0) or y-faces (direction 1) of a sheet.
+    pub fn plane(&self, sheet: usize, direction: usize) -> std::ops::Range<usize> {
+        let first = (2 * sheet + direction) * self.cells();
+        first..first + self.cells()
+    }
+
+    /// Calls `visit(branch, from node, to node)` for every conducting face in rising order.
+    pub fn each_face(&self, mut visit: impl FnMut(usize, usize, usize)) {
+        let cells = self.cells();
+        for sheet in 0..self.sheets {
+            for (direction, step) in [(0, 1), (1, self.nx)] {
+                let first = self.plane(sheet, direction).start;
+                for cell in 0..cells {
+                    if self.conducts[first + cell] {
+                        let to = sheet * cells + cell;
+                        visit(first + cell, self.node[to - step] as usize, self.node[to] as usize);
+                    }
+                }
+            }
+        }
+    }
+
+    /// Current that leaves each node.
+    pub fn divergence(&self, currents: &[Complex64]) -> Vec<Complex64> {
+        let mut leaves = vec![Complex64::default(); self.nodes];
+        self.each_face(|branch, from, to| {
+            leaves[from] += currents[branch];
+            leaves[to] -= currents[branch];
+        });
+        for (ends, current) in self.ends.iter().zip(&currents[self.faces()..]) {
+            ends.iter().for_each(|&(node, weight)| leaves[node as usize] += current * weight);
+        }
+        leaves
+    }
+
+    /// Subtracts from `emf` the potential differences along the branches, `emf - scale D^T potential`; `inverse_weight`
+    /// multiplies those of the verticals.
+    pub fn subtract_gradient(
+        &self,
+        potential: &[Complex64],
+        inverse_weight: Option<&[f64]>,
+        emf: &mut [Complex64],
+    ) {
+        self.each_face(|branch, from, to| emf[branch] -= potential[from] - potential[to]);
+        let faces = self.faces();
+        for (index, ends) in self.ends.iter().enumerate() {
+            let drop: Complex64 = ends.iter().map(|&(node, weight)| potential[node as usize] * weight).sum();
+            emf[faces + index] -= drop * inverse_weight.map_or(1.0, |weights| weights[index]);
+        }
+    }
+
+    /// Adds the resistive voltages of one plane of faces, `out += zs (1 +- (d_xx - d_yy)/24) currents`.
+    pub fn add_resistive(
+        &self,
+        sheet: usize,
+        direction: usize,
+        zs: Complex64,
+        currents: &[Complex64],
+        out: &mut [Complex64],
+    ) {
+        let (nx, ny) = (self.nx, self.ny);
+        let conducts = &self.conducts[self.plane(sheet, direction)];
+        // along x with plus on x-faces, with minus on y-faces
+        let along_x = if direction == 0 { zs / 24.0 } else { -zs / 24.0 };
+        for iy in 0..ny {
+            for at in iy * nx..(iy + 1) * nx {
+                if !conducts[at] {
+                    continue;
+                }
+                let here = currents[at];
+                let mut sum = zs * here;
+                let second = |neighbour: usize| {
+                    if conducts[neighbour] { currents[neighbour] - here } else { Complex64::default() }
+                };
+                let mut bend = Complex64::default();
+                if at > iy * nx {
+                    bend += second(at - 1);
+                }
+                if at + 1 < (iy + 1) * nx {
+                    bend += second(at + 1);
+                }
+                if iy > 0 {
+                    bend -= second(at - nx);
+                }
+                if iy + 1 < ny {
+                    bend -= second(at + nx);
+                }
+                sum += along_x * bend;
+                out[at] += sum;
+            }
+        }
+    }
+}

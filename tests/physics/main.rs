@@ -1,0 +1,3 @@
+//! Checks of the solver against closed forms, other methods and itself.
+mod straight;
+mod support;
