@@ -148,3 +148,27 @@ fn copper_that_one_cell_cannot_tell_apart_is_refused() {
         Ok(mask) => assert_eq!(mask.islands, 2, "accepted although islands differ"),
     }
 }
+
+#[test]
+#[ignore = "a timing, printed for the notes"]
+fn time_of_a_mask() {
+    let mut plane = star(Point::mm(50.0, 40.0), 30e-3, 60_000);
+    for i in 0..400 {
+        let (x, y) = (36.0 + 1.4 * (i % 20) as f64, 26.0 + 1.4 * (i / 20) as f64);
+        plane.holes.push(hole(crate::scene::disc(x, y, 0.45)));
+    }
+    for cell_mm in [0.4, 0.2, 0.1] {
+        let grid = grid(cell_mm, 100.0, 80.0);
+        let started = std::time::Instant::now();
+        let mask = mask(std::slice::from_ref(&plane), &grid).unwrap();
+        eprintln!(
+            "{} cells: {:?}, {} islands, {} neck cells, {} + {} cut faces",
+            grid.len(),
+            started.elapsed(),
+            mask.islands,
+            mask.neck_cells,
+            mask.cut_x.len(),
+            mask.cut_y.len()
+        );
+    }
+}
