@@ -292,6 +292,13 @@ impl Bench<'_, '_> {
                 let text = format!("landing `{}` must lie on plane `{}`", landing.what, self.chart.plane);
                 self.placed(Diagnostic::error(code::LANDING_OFF_COPPER, text), landing.at)
             }
+            SolveFailure::Factor { .. } => {
+                let text = format!(
+                    "plane `{}` must be small enough to be factored in memory; {failure:?}",
+                    self.chart.plane
+                );
+                Diagnostic::error(code::NOT_FACTORED, text).hint("set a larger `cell` under `[solver]`")
+            }
             SolveFailure::NoConvergence { steps, residual, tolerance } => {
                 let text = format!(
                     "solve of net `{}` on plane `{}` in band `{}` must reach a residual of {tolerance:.0e}; got \

@@ -38,5 +38,13 @@ pub const NOT_CONVERGED: Code = Code {
     meaning: "The iteration did not reach the tolerance. A map is never drawn from such a solution.",
 };
 
+/// The plane could not be prepared.
+pub const NOT_FACTORED: Code = Code {
+    name: "plane-not-factored",
+    meaning: "The network of the plane's cells could not be factored, most likely because memory ran out. No map is \
+              drawn. Set a larger `cell` under `[solver]`.",
+};
+
 /// All codes of this room.
-pub const ALL: &[Code] = &[LANDINGS_APART, LANDING_OFF_COPPER, CELL_TOO_LARGE, CELL_HALVED, NOT_CONVERGED];
+pub const ALL: &[Code] =
+    &[LANDINGS_APART, LANDING_OFF_COPPER, CELL_TOO_LARGE, CELL_HALVED, NOT_CONVERGED, NOT_FACTORED];
