@@ -1,8 +1,10 @@
 //! The sheets a user gets: ticket map, contact sheet, tables and JSON, as bytes.
 
+mod findings;
 mod json;
 mod manifest;
 pub mod numbers;
 
+pub use findings::{Findings, Subject};
 pub use json::json;
 pub use manifest::{Manifest, sha256_hex};

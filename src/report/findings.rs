@@ -1,0 +1,251 @@
+//! `findings.json`: the figures of every map, what was withheld or skipped and why, and all messages.
+//!
+//! Quantities are in SI units with the unit in the member's name; coordinates are in millimetres from the review's
+//! origin. A member that does not apply is `null`.
+
+use crate::diag::{Diagnostic, Severity};
+use crate::field::{PlaneId, ReturnMap};
+use crate::figure::{Figure, Figures};
+use crate::geom::Point;
+use crate::plan::{ChartPlan, NetPlan};
+use crate::review::Model;
+use serde::Serialize;
+
+/// Version of the document.
+const SCHEMA: u32 = 1;
+
+/// The document.
+#[derive(Clone, Debug, Serialize)]
+pub struct Findings {
+    schema: u32,
+    board: BoardEntry,
+    maps: Vec<MapEntry>,
+    skipped: Vec<SkippedEntry>,
+    messages: Vec<MessageEntry>,
+    #[serde(skip)]
+    origin: Point,
+}
+
+#[derive(Clone, Debug, Serialize)]
+struct BoardEntry {
+    title: String,
+    revision: String,
+}
+
+#[derive(Clone, Debug, Serialize)]
+struct PlaneEntry {
+    layer: String,
+    net: String,
+}
+
+#[derive(Clone, Debug, Serialize)]
+struct MapEntry {
+    net: String,
+    driver: String,
+    receiver: String,
+    plane: PlaneEntry,
+    band: String,
+    frequency_hz: f64,
+    /// Pictures, relative to the folder; null when withheld.
+    svg: Option<String>,
+    png: Option<String>,
+    withheld: Option<MessageEntry>,
+    model: Option<&'static str>,
+    height_m: f64,
+    track_width_m: f64,
+    cell_m: Option<f64>,
+    residual: Option<f64>,
+    driver_landing: LandingEntry,
+    receiver_landing: LandingEntry,
+    figures: Option<FiguresEntry>,
+}
+
+#[derive(Clone, Debug, Serialize)]
+struct LandingEntry {
+    what: String,
+    x_mm: f64,
+    y_mm: f64,
+    radius_m: f64,
+}
+
+#[derive(Clone, Copy, Debug, Serialize)]
+struct FigureEntry {
+    value: Option<f64>,
+    without_voids: Option<f64>,
+    error: f64,
+}
+
+#[derive(Clone, Debug, Serialize)]
+struct WorstEntry {
+    value: f64,
+    x_mm: f64,
+    y_mm: f64,
+}
+
+#[derive(Clone, Debug, Serialize)]
+struct FiguresEntry {
+    share_3h: FigureEntry,
+    worst_share_3h: Option<WorstEntry>,
+    half_width_50_m: FigureEntry,
+    half_width_80_m: FigureEntry,
+    half_width_95_m: FigureEntry,
+    contour_levels_a_per_m: [f64; 3],
+    extra_path_m: Option<FigureEntry>,
+    loop_resistance_ohm: Option<FigureEntry>,
+    loop_inductance_h: Option<FigureEntry>,
+    extra_loop_resistance_ohm: Option<FigureEntry>,
+    extra_loop_inductance_h: Option<FigureEntry>,
+}
+
+#[derive(Clone, Debug, Serialize)]
+struct SkippedEntry {
+    net: String,
+    reason: MessageEntry,
+}
+
+#[derive(Clone, Debug, Serialize)]
+struct MessageEntry {
+    severity: &'static str,
+    code: &'static str,
+    text: String,
+    file: Option<String>,
+    line: Option<u32>,
+    layer: Option<String>,
+    x_mm: Option<f64>,
+    y_mm: Option<f64>,
+    hints: Vec<String>,
+}
+
+/// Which map an entry is about.
+#[derive(Clone, Copy, Debug)]
+pub struct Subject<'a> {
+    /// The net.
+    pub net: &'a NetPlan,
+    /// The plane's chart.
+    pub chart: &'a ChartPlan,
+    /// Name of the band.
+    pub band: &'a str,
+    /// Frequency in Hz.
+    pub frequency_hz: f64,
+}
+
+impl Findings {
+    /// A document without maps; `origin` is the point of the files' coordinates that the review calls (0, 0).
+    pub fn new(title: &str, revision: &str, origin: Point) -> Self {
+        let board = BoardEntry { title: title.to_owned(), revision: revision.to_owned() };
+        Self { schema: SCHEMA, board, maps: Vec::new(), skipped: Vec::new(), messages: Vec::new(), origin }
+    }
+
+    /// Adds a map with its figures; `stem` names its pictures.
+    pub fn add_map(&mut self, subject: Subject, stem: &str, map: &ReturnMap, figures: &Figures) {
+        let mut entry = self.entry(subject);
+        entry.svg = Some(format!("maps/{stem}.svg"));
+        entry.png = Some(format!("maps/{stem}.png"));
+        entry.model = Some(match map.model {
+            Model::Sheet => "sheet",
+            Model::Spread => "spread",
+        });
+        entry.cell_m = Some(map.grid.cell_m);
+        entry.residual = map.residual;
+        entry.figures = Some(self.figures(figures));
+        self.maps.push(entry);
+    }
+
+    /// Adds a map that was withheld, with the reason.
+    pub fn add_withheld(&mut self, subject: Subject, reason: &Diagnostic) {
+        let mut entry = self.entry(subject);
+        entry.withheld = Some(self.message(reason));
+        self.maps.push(entry);
+    }
+
+    /// Adds a net of the review that has no map at all, with the reason.
+    pub fn add_skipped(&mut self, net: &str, reason: &Diagnostic) {
+        let reason = self.message(reason);
+        self.skipped.push(SkippedEntry { net: net.to_owned(), reason });
+    }
+
+    /// Adds a message.
+    pub fn add_message(&mut self, message: &Diagnostic) {
+        let message = self.message(message);
+        self.messages.push(message);
+    }
+
+    fn entry(&self, subject: Subject) -> MapEntry {
+        let Subject { net, chart, band, frequency_hz } = subject;
+        let landing = |landing: &crate::plan::Landing| {
+            let (x_mm, y_mm) = self.millimetres(landing.at);
+            LandingEntry { what: landing.what.clone(), x_mm, y_mm, radius_m: landing.radius_m }
+        };
+        MapEntry {
+            net: net.net.clone(),
+            driver: net.driver.clone(),
+            receiver: net.receiver.clone(),
+            plane: plane(&chart.plane),
+            band: band.to_owned(),
+            frequency_hz,
+            svg: None,
+            png: None,
+            withheld: None,
+            model: None,
+            height_m: chart.height_m,
+            track_width_m: chart.width_m,
+            cell_m: None,
+            residual: None,
+            driver_landing: landing(&chart.driver_landing),
+            receiver_landing: landing(&chart.receiver_landing),
+            figures: None,
+        }
+    }
+
+    fn figures(&self, figures: &Figures) -> FiguresEntry {
+        FiguresEntry {
+            share_3h: figure(figures.share_3h),
+            worst_share_3h: figures.worst_share_3h.map(|(value, at)| {
+                let (x_mm, y_mm) = self.millimetres(at);
+                WorstEntry { value, x_mm, y_mm }
+            }),
+            half_width_50_m: figure(figures.half_width_m[0]),
+            half_width_80_m: figure(figures.half_width_m[1]),
+            half_width_95_m: figure(figures.half_width_m[2]),
+            contour_levels_a_per_m: figures.contour_levels,
+            extra_path_m: figures.extra_path_m.map(figure),
+            loop_resistance_ohm: figures.loop_resistance_ohm.map(figure),
+            loop_inductance_h: figures.loop_inductance_h.map(figure),
+            extra_loop_resistance_ohm: figures.extra_loop_resistance_ohm.map(figure),
+            extra_loop_inductance_h: figures.extra_loop_inductance_h.map(figure),
+        }
+    }
+
+    fn message(&self, message: &Diagnostic) -> MessageEntry {
+        let at = message.place.at.map(|at| self.millimetres(at));
+        MessageEntry {
+            severity: match message.severity {
+                Severity::Note => "note",
+                Severity::Warning => "warning",
+                Severity::Error => "error",
+            },
+            code: message.code.name,
+            text: message.text.clone(),
+            file: message.place.file.clone(),
+            line: message.place.line,
+            layer: message.place.layer.map(|layer| format!("L{layer}")),
+            x_mm: at.map(|at| at.0),
+            y_mm: at.map(|at| at.1),
+            hints: message.hints.clone(),
+        }
+    }
+
+    /// Millimetres from the review's origin, to a nanometre, so that sums of coordinates leave no digits of rounding.
+    fn millimetres(&self, at: Point) -> (f64, f64) {
+        let round = |metres: f64| (metres * 1e9).round() * 1e-6 + 0.0;
+        (round(at.x - self.origin.x), round(at.y - self.origin.y))
+    }
+}
+
+fn plane(plane: &PlaneId) -> PlaneEntry {
+    PlaneEntry { layer: format!("L{}", plane.layer + 1), net: plane.net.clone() }
+}
+
+fn figure(figure: Figure) -> FigureEntry {
+    FigureEntry { value: figure.value, without_voids: figure.without_voids, error: figure.error }
+}
