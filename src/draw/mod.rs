@@ -1,1 +1,18 @@
-//! Drawing: scenes of placed items, the colour scale, and the writers of SVG and PNG.
+//! Drawing: scenes of placed items, the color scale, and the writers of SVG and PNG.
+//!
+//! A picture is a [`Scene`]: items in millimeters on a sheet, in reading order. [`svg`] turns a scene into text and
+//! [`png`] renders that very text, so the two cannot differ. Nothing here knows how a board is read or solved.
+
+mod font;
+mod number;
+mod path;
+pub mod png;
+mod scene;
+pub mod svg;
+mod text;
+
+pub use font::width_mm;
+pub use number::{grouped, significant, with_prefix};
+pub use path::PathData;
+pub use scene::{Group, Image, Item, Scene, Shape, TextBox};
+pub use text::{Anchor, Text, italic, plain, raised, shortened, wrapped};

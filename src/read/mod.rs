@@ -12,6 +12,7 @@ mod outline;
 mod set;
 mod source;
 mod stackup;
+pub mod style;
 mod ties;
 
 pub use build::read_board;

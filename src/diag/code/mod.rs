@@ -5,6 +5,7 @@ pub mod plan;
 pub mod read;
 pub mod review;
 pub mod solve;
+pub mod style;
 
 /// A stable code with the paragraph that `ebbmap explain` prints.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord)]
@@ -17,5 +18,5 @@ pub struct Code {
 
 /// All codes, sorted by room.
 pub fn all() -> impl Iterator<Item = Code> {
-    [read::ALL, review::ALL, plan::ALL, solve::ALL, field::ALL].into_iter().flatten().copied()
+    [read::ALL, review::ALL, plan::ALL, solve::ALL, field::ALL, style::ALL].into_iter().flatten().copied()
 }
