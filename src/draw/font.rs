@@ -46,9 +46,8 @@ impl Metrics {
     fn of(face: Face) -> &'static Self {
         static ALL: [OnceLock<Metrics>; 5] = [const { OnceLock::new() }; 5];
         // An unreadable font would be a broken build, which the tests of this file find; such a face has no glyph.
-        ALL[face as usize].get_or_init(|| {
-            Self::read(face).unwrap_or(Self { glyphs: Vec::new(), units_per_em: 1000.0 })
-        })
+        ALL[face as usize]
+            .get_or_init(|| Self::read(face).unwrap_or(Self { glyphs: Vec::new(), units_per_em: 1000.0 }))
     }
 
     fn glyph(&self, character: char) -> Option<(u16, u16)> {
@@ -65,7 +64,8 @@ pub(super) fn has(face: Face, character: char) -> bool {
 /// Width in mm of `text` set in `face` with type of `size` mm; characters that the face lacks have no width.
 pub fn width_mm(face: Face, size: f64, text: &str) -> f64 {
     let metrics = Metrics::of(face);
-    let units: u32 = text.chars().filter_map(|c| metrics.glyph(c)).map(|(_, advance)| u32::from(advance)).sum();
+    let units: u32 =
+        text.chars().filter_map(|c| metrics.glyph(c)).map(|(_, advance)| u32::from(advance)).sum();
     f64::from(units) / metrics.units_per_em * size
 }
 
@@ -73,12 +73,14 @@ pub fn width_mm(face: Face, size: f64, text: &str) -> f64 {
 /// face cannot be read.
 pub(super) fn subset_of(face: Face, characters: &BTreeSet<char>) -> Vec<u8> {
     let metrics = Metrics::of(face);
-    let glyphs: BTreeSet<u16> = characters.iter().filter_map(|&c| metrics.glyph(c)).map(|(glyph, _)| glyph).collect();
+    let glyphs: BTreeSet<u16> =
+        characters.iter().filter_map(|&c| metrics.glyph(c)).map(|(glyph, _)| glyph).collect();
     let glyphs: Vec<u16> = std::iter::once(0).chain(glyphs).collect();
     let make = || -> Option<Vec<u8>> {
         let data = ReadScope::new(face.bytes()).read::<FontData<'_>>().ok()?;
         let renamed = Renamed { inner: data.table_provider(0).ok()?, names: name_table(face) };
-        let mut tables = vec![tag::CMAP, tag::HEAD, tag::HHEA, tag::HMTX, tag::MAXP, tag::NAME, tag::OS_2, tag::POST];
+        let mut tables =
+            vec![tag::CMAP, tag::HEAD, tag::HHEA, tag::HMTX, tag::MAXP, tag::NAME, tag::OS_2, tag::POST];
         tables.extend([tag::CVT, tag::FPGM, tag::PREP]);
         subset(&renamed, &glyphs, &SubsetProfile::Custom(tables), CmapTarget::Unicode).ok()
     };
@@ -179,7 +181,11 @@ mod tests {
             let data = ReadScope::new(&bytes).read::<FontData<'_>>().expect("a font");
             let mut font = Font::new(data.table_provider(0).expect("tables")).expect("a font");
             for &character in &characters {
-                let (glyph, _) = font.lookup_glyph_index(character, allsorts::font::MatchingPresentation::NotRequired, None);
+                let (glyph, _) = font.lookup_glyph_index(
+                    character,
+                    allsorts::font::MatchingPresentation::NotRequired,
+                    None,
+                );
                 assert_ne!(glyph, 0, "{face:?} lost {character:?}");
                 let (_, advance) = Metrics::of(face).glyph(character).expect("in the face");
                 assert_eq!(font.horizontal_advance(glyph), Some(advance));

@@ -51,7 +51,9 @@ pub fn render(scene: &Scene, svg: &SvgText) -> Result<Pixels, RenderFault> {
             };
             let italic = font.style() != usvg::FontStyle::Normal;
             let matches = |face: Face| {
-                face.family() == family && face.italic() == italic && (face.weight() > 500) == (font.weight() > 500)
+                face.family() == family
+                    && face.italic() == italic
+                    && (face.weight() > 500) == (font.weight() > 500)
             };
             ids.iter().find(|(face, _)| matches(*face)).map(|(_, id)| *id)
         }),
@@ -79,7 +81,11 @@ pub fn encode(scene: &Scene, pixels: &Pixels) -> Result<Vec<u8>, RenderFault> {
     encoder.set_compression(png::Compression::High);
     encoder.set_source_srgb(png::SrgbRenderingIntent::Perceptual);
     let per_meter = (f64::from(pixels.width) / scene.width * 1000.0).round() as u32;
-    encoder.set_pixel_dims(Some(png::PixelDimensions { xppu: per_meter, yppu: per_meter, unit: png::Unit::Meter }));
+    encoder.set_pixel_dims(Some(png::PixelDimensions {
+        xppu: per_meter,
+        yppu: per_meter,
+        unit: png::Unit::Meter,
+    }));
     let software = format!("ebbmap {}", env!("CARGO_PKG_VERSION"));
     let texts = [
         ("Title", scene.title.as_str()),

@@ -156,7 +156,10 @@ impl Writer {
             self.attribute("stroke-width", "1.1");
             self.attribute("paint-order", "stroke");
         }
-        if text.spans.iter().any(|span| span.text.contains("  ") || span.text.starts_with(' ') || span.text.ends_with(' '))
+        if text
+            .spans
+            .iter()
+            .any(|span| span.text.contains("  ") || span.text.starts_with(' ') || span.text.ends_with(' '))
         {
             self.attribute("xml:space", "preserve");
         }
@@ -189,7 +192,9 @@ impl Writer {
 
     fn image(&mut self, image: &Image) {
         self.text.push_str("<image");
-        for (name, value) in [("x", image.x), ("y", image.y), ("width", image.width), ("height", image.height)] {
+        for (name, value) in
+            [("x", image.x), ("y", image.y), ("width", image.width), ("height", image.height)]
+        {
             self.number(name, value);
         }
         self.attribute("preserveAspectRatio", "none");
@@ -249,7 +254,11 @@ fn class(face: Face) -> &'static str {
 fn facts_json(scene: &Scene) -> String {
     let mut facts: BTreeMap<&str, serde_json::Value> = BTreeMap::new();
     for (key, value) in &scene.facts {
-        let value = value.parse::<f64>().ok().filter(|number| number.is_finite()).and_then(serde_json::Number::from_f64);
+        let value = value
+            .parse::<f64>()
+            .ok()
+            .filter(|number| number.is_finite())
+            .and_then(serde_json::Number::from_f64);
         let text = scene.facts.iter().find(|(k, _)| k == key).map_or("", |(_, v)| v.as_str());
         facts.insert(key, value.map_or_else(|| text.into(), serde_json::Value::Number));
     }

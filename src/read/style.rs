@@ -216,7 +216,8 @@ impl StyleFile {
         let font = self.font.build(report);
         let color = self.colour.build(report);
         let line = self.line.build(report);
-        let density = gradient("density", &self.density.map, self.density.turn_over, self.density.clip, report);
+        let density =
+            gradient("density", &self.density.map, self.density.turn_over, self.density.clip, report);
         let series = gradient("series", &self.series.map, self.series.turn_over, self.series.clip, report);
         let change = self.change.build(report);
         let ticket = self.sheet.ticket.build("sheet.ticket", report);
@@ -288,10 +289,14 @@ fn dashes(key: &str, text: &str, report: Report<'_>) -> Vec<f64> {
 
 impl FontTable {
     fn build(self, report: Report<'_>) -> Lettering {
-        let bundled = [("family", &self.family, "IBM Plex Sans"), ("narrow", &self.narrow, "IBM Plex Sans Condensed")];
+        let bundled =
+            [("family", &self.family, "IBM Plex Sans"), ("narrow", &self.narrow, "IBM Plex Sans Condensed")];
         for (key, got, known) in bundled {
             if got != known {
-                report(&format!("font.{key}"), format!("family must be `{known}`, which is bundled; got `{got}`"));
+                report(
+                    &format!("font.{key}"),
+                    format!("family must be `{known}`, which is bundled; got `{got}`"),
+                );
             }
         }
         Lettering {

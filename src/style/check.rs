@@ -109,7 +109,8 @@ fn density(style: &Style, faults: &mut Vec<Fault>) {
     let page = style.color.page;
     let (low, high) = (page.difference(gradient.at(0.0)), page.difference(gradient.at(1.0)));
     if low < 10.0 {
-        let text = format!("lowest density must differ from the page by at least 10 (CIE 1976); got {low:.1}");
+        let text =
+            format!("lowest density must differ from the page by at least 10 (CIE 1976); got {low:.1}");
         fault(faults, "density.clip", text);
     }
     if high < low {
@@ -148,7 +149,11 @@ fn change(style: &Style, faults: &mut Vec<Fault>) {
     }
     let zero = change.zero.lab();
     if libm::hypot(zero.a, zero.b) > 8.0 {
-        fault(faults, "change.zero", format!("color of no change must be neutral; got {}", change.zero.hex()));
+        fault(
+            faults,
+            "change.zero",
+            format!("color of no change must be neutral; got {}", change.zero.hex()),
+        );
     }
 }
 
@@ -159,7 +164,9 @@ mod tests {
     #[test]
     fn gradients_known_to_turn_are_refused_and_the_others_pass() {
         for name in super::super::gradient_names() {
-            let Some(gradient) = Gradient::named(name, false, [0.02, 0.98]) else { panic!("{name} is missing") };
+            let Some(gradient) = Gradient::named(name, false, [0.02, 0.98]) else {
+                panic!("{name} is missing")
+            };
             assert_eq!(monotone(&gradient), name != "TURBO", "{name}");
         }
     }

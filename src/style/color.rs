@@ -117,7 +117,10 @@ mod tests {
     #[test]
     fn lab_has_its_known_values() {
         let near = |lab: Lab, l: f64, a: f64, b: f64| {
-            assert!((lab.l - l).abs() < 0.02 && (lab.a - a).abs() < 0.03 && (lab.b - b).abs() < 0.03, "{lab:?}");
+            assert!(
+                (lab.l - l).abs() < 0.02 && (lab.a - a).abs() < 0.03 && (lab.b - b).abs() < 0.03,
+                "{lab:?}"
+            );
         };
         near(Rgb(255, 0, 0).lab(), 53.24, 80.09, 67.20);
         near(Rgb(0, 0, 255).lab(), 32.30, 79.19, -107.86);

@@ -17,7 +17,8 @@ pub enum Face {
 
 impl Face {
     /// All faces, in the order of their files in pictures.
-    pub const ALL: [Self; 5] = [Self::Regular, Self::Bold, Self::Narrow, Self::NarrowBold, Self::NarrowItalic];
+    pub const ALL: [Self; 5] =
+        [Self::Regular, Self::Bold, Self::Narrow, Self::NarrowBold, Self::NarrowItalic];
 
     /// The font file.
     pub fn bytes(self) -> &'static [u8] {
