@@ -3,16 +3,22 @@
 //! A picture is a [`Scene`]: items in millimeters on a sheet, in reading order. [`svg`] turns a scene into text and
 //! [`png`] renders that very text, so the two cannot differ. Nothing here knows how a board is read or solved.
 
+pub mod contour;
+pub mod density;
 mod font;
 mod number;
 mod path;
 pub mod png;
+mod scale;
 mod scene;
 pub mod svg;
 mod text;
+mod view;
 
 pub use font::width_mm;
 pub use number::{grouped, significant, with_prefix};
 pub use path::PathData;
+pub use scale::DensityScale;
 pub use scene::{Group, Image, Item, Scene, Shape, TextBox};
 pub use text::{Anchor, Text, italic, plain, raised, shortened, wrapped};
+pub use view::View;
