@@ -2,9 +2,11 @@
 
 mod findings;
 mod json;
+mod look;
 mod manifest;
 pub mod numbers;
 
 pub use findings::{Findings, Subject};
 pub use json::json;
+pub use look::Look;
 pub use manifest::{Manifest, sha256_hex};
