@@ -4,6 +4,7 @@ pub mod field;
 pub mod plan;
 pub mod read;
 pub mod review;
+pub mod run;
 pub mod solve;
 pub mod style;
 
@@ -18,5 +19,8 @@ pub struct Code {
 
 /// All codes, sorted by room.
 pub fn all() -> impl Iterator<Item = Code> {
-    [read::ALL, review::ALL, plan::ALL, solve::ALL, field::ALL, style::ALL].into_iter().flatten().copied()
+    [read::ALL, review::ALL, plan::ALL, solve::ALL, field::ALL, style::ALL, run::ALL]
+        .into_iter()
+        .flatten()
+        .copied()
 }
