@@ -10,8 +10,8 @@
 //! | extra path = int (abs(Re K) - abs(Re K0)) dA | how much longer voids make the return | m |
 //! | extra loop R, L = R(Z) - R(Z0), L(Z) - L(Z0) | Z = R + j w L, loop of track and plane | ohm, H |
 //!
-//! The error of a figure is its change from cells of 2d to cells of d where both were solved, otherwise the bound
-//! in [`compute::UNCHECKED_ERROR`].
+//! The error of a figure is its change from cells of 2d to cells of d, times the halvings of the cell that the
+//! resistance still needs, and at least the bound in [`compute::LEAST_ERROR`].
 
 pub mod chart;
 pub mod compute;

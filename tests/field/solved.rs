@@ -98,35 +98,42 @@ fn straight_track_on_cells_of_half_the_height() {
     assert!(error < 0.01, "{error}");
 }
 
+/// Share of the return within x of a filament over an endless sheet, complex.
+fn sheet_share(x: f64, h: f64, hertz: f64, zs: Complex64) -> Complex64 {
+    sheet_formula(0.0, h, 0.0, 2.0 * x, hertz, zs) * (2.0 * x)
+}
+
+#[test]
+fn the_formula_here_matches_the_table() {
+    // Source: C(X) of the sheet formula by exponential integrals in 30 digits, Zs = 0.5 mohm, h = 0.2 mm.
+    let zs = Complex64::new(0.5e-3, 0.0);
+    for (hertz, x, re, im) in [
+        (1e6, 0.6e-3, 0.773849376, 0.122764409),
+        (1e6, 0.25414733e-3, 0.5, f64::NAN),
+        (1e5, 2.0e-3, 0.738000257, 0.33774796),
+    ] {
+        let share = sheet_share(x, 0.2e-3, hertz, zs);
+        assert!((share.re - re).abs() < 1e-5 && !((share.im - im).abs() > 1e-5), "{share} at {hertz}");
+    }
+}
+
 #[test]
 fn shares_and_half_widths_of_a_straight_track() {
-    // Source: table of the sheet formula, Zs = 0.5 mohm, sheet 0.2 mm below: half-widths of the in-phase return at
-    // 1 MHz 0.25414733 mm (50 %) and 0.67215971 mm (80 %); in-phase share within 3h 0.773849376; at 100 MHz 3h
-    // holds 0.795165703 and 80 % lie within 0.615541422 mm.
-    let foil = 1.0 / (58.0 * 0.5e-3) * 1e-3;
-    for (hertz, share, half) in
-        [(1e6, 0.773849376, [0.25414733, 0.67215971]), (1e8, 0.795165703, [0.20000802, 0.615541422])]
-    {
-        // The sheet stands for mid-copper at low and for the face at high frequency.
-        let copper = ebbmap::field::Foil::new(foil * 1e-3, 20.0);
-        let gap = 0.2 - 2e3 * copper.current_depth_m(hertz);
-        let mut scene = wide(0.2, 410.0, 1.0);
-        (scene.gap, scene.foil, scene.cell, scene.track_width) = (gap, foil, 0.2, 1e-3);
+    for hertz in [1e6, 1e8] {
+        let mut scene = wide(0.2, 160.0, 0.5);
+        scene.track_width = 1e-3;
         let charted = solve(&scene, hertz);
-        assert!((charted.map.height_m - 0.2e-3).abs() < 1e-12);
-        // Figures are per h, the dielectric's thickness; ask the section for 0.6 mm itself.
         let map = &charted.map;
-        let at = ebbmap::geom::Point::mm(scene.width / 2.0, scene.track[0].1);
-        let found =
-            ebbmap::figure::section::shares(map, at, ebbmap::geom::Point::new(1.0, 0.0), &[0.6e-3])[0];
-        eprintln!(
-            "{hertz:e}: share {found:.4} of {share:.4}, half-widths {:?}",
-            charted.figures.half_width_m
-        );
-        assert!((found - share).abs() < 0.01, "{hertz:e} Hz: share {found} against {share}");
-        for (figure, exact) in charted.figures.half_width_m.iter().zip(half) {
-            let found = figure.value.unwrap() * 1e3;
-            assert!((found / exact - 1.0).abs() < 0.03, "{hertz:e} Hz: {found} mm against {exact} mm");
+        let (h, zs) = (map.height_m, map.zs_ohm.unwrap());
+        let share = charted.figures.share_3h;
+        let exact = sheet_share(0.6e-3, h, hertz, zs).re;
+        eprintln!("{hertz:e}: share {share:?}, formula {exact:.4}");
+        assert!((share.value.unwrap() - exact).abs() < 4e-3, "{hertz:e} Hz: {share:?} against {exact}");
+        for (figure, part) in charted.figures.half_width_m.iter().zip([0.5, 0.8, 0.95]) {
+            let found = sheet_share(figure.value.unwrap(), h, hertz, zs).re;
+            eprintln!("half-width {figure:?}: formula holds {found:.4}");
+            // The plane ends 80 h away: the 0.8 % that would flow beyond flow within.
+            assert!((found - part).abs() < 8e-3, "{hertz:e} Hz: {found} within the half-width of {part}");
         }
     }
 }
@@ -210,6 +217,7 @@ fn slot(cell: f64) -> Scene {
 
 #[test]
 fn figures_at_a_slot_lie_within_their_error() {
+    let mut missed = Vec::new();
     for hertz in [1e5, 1e7] {
         let best = solve(&slot(0.075), hertz).figures;
         for cell in [0.3, 0.6] {
@@ -235,14 +243,15 @@ fn figures_at_a_slot_lie_within_their_error() {
                     "{hertz:e} Hz, cell {cell}: {name} {value:.4e}, off {off:+.1e}, error {:.1e}",
                     found.error
                 );
-                assert!(
-                    off.abs() <= found.error + best.error,
-                    "{name}: {value} +- {} against {reference}",
-                    found.error
-                );
+                if off.abs() > found.error + best.error {
+                    missed.push(format!(
+                        "{hertz:e} Hz, cell {cell}: {name} {value:.5e} against {reference:.5e}"
+                    ));
+                }
             }
         }
     }
+    assert!(missed.is_empty(), "{missed:#?}");
 }
 
 #[test]
@@ -270,4 +279,52 @@ fn landings_on_two_islands_are_refused() {
     let reason = result.maps[0].as_ref().unwrap_err();
     assert_eq!(reason.code.name, "landings-apart");
     assert!(reason.text.contains("via of U1.2") && reason.text.contains("L2-GND"), "{}", reason.text);
+}
+
+#[test]
+#[ignore = "a timing, printed for the notes"]
+fn time_of_a_chart() {
+    // 100 x 80 mm, some hundred antipads, a slot; cells of 0.2 mm, heights of 0.2 mm; four bands.
+    let mut voids = vec![rectangle(50.0, 20.0, 50.8, 60.0)];
+    for i in 0..320 {
+        let (x, y) = (4.1 + 4.87 * (i % 20) as f64, 3.3 + 4.61 * (i / 20) as f64);
+        if (x - 50.4).abs() > 1.5 || !(18.0..62.0).contains(&y) {
+            voids.push(disc(x, y, 0.45));
+        }
+    }
+    let scene = Scene {
+        width: 100.0,
+        height: 80.0,
+        track: vec![(12.0, 24.0), (46.0, 24.0), (66.0, 44.0), (66.0, 70.0)],
+        voids,
+        ..Scene::default()
+    };
+    let (board, net) = (scene.board(), scene.net());
+    for tolerance in [1e-5, 1e-8] {
+        let workshop = Workshop::new(&board, Model::Sheet).with_tolerance(tolerance);
+        let started = std::time::Instant::now();
+        let bench = workshop.bench(&net, &net.charts[0]).unwrap();
+        eprintln!("set up: {:.2} s", started.elapsed().as_secs_f64());
+        drop(bench);
+        let bands: Vec<_> = [1e5, 1e6, 1e7, 1e8].map(band).into();
+        let last = std::sync::Mutex::new(std::time::Instant::now());
+        let result = chart(&workshop, &net, &net.charts[0], &bands, &|progress| {
+            let mut last = last.lock().unwrap();
+            eprintln!("{}: {:.2} s", progress.band, last.elapsed().as_secs_f64());
+            *last = std::time::Instant::now();
+        });
+        for charted in result.maps {
+            let Charted { map, figures, .. } = charted.unwrap();
+            eprintln!(
+                "{} cells, {}: residual {:.1e}, share {:?}, path {:?}, L {:?}, extra L {:?}",
+                map.grid.len(),
+                map.band,
+                map.residual.unwrap(),
+                figures.share_3h,
+                figures.extra_path_m,
+                figures.loop_inductance_h,
+                figures.extra_loop_inductance_h
+            );
+        }
+    }
 }
