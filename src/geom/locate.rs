@@ -1,49 +1,70 @@
 //! Fast answers to where a point or a line lies among many polygons.
 
 use super::{Bounds, Point, Polygon};
-use rstar::primitives::{GeomWithData, Line};
-use rstar::{AABB, RTree};
 
-/// An edge of a polygon with the polygon's index.
-type Edge = GeomWithData<Line<[f64; 2]>, u32>;
+/// Most bands of a locator.
+const MOST_BANDS: usize = 8192;
+
+/// An edge of a polygon, its lower end first.
+#[derive(Clone, Copy, Debug)]
+struct Edge {
+    polygon: u32,
+    low: Point,
+    high: Point,
+}
 
 /// Polygons prepared for many questions; they are known by their index in the slice given.
+///
+/// Edges are sorted into horizontal bands. Bands are as narrow as they can be without storing more than a few
+/// entries for each edge.
 pub struct Locator {
-    tree: RTree<Edge>,
     bounds: Bounds,
     band_m: f64,
-    /// For each horizontal band the edges that cross it: polygon, lower end, upper end.
-    bands: Vec<Vec<(u32, Point, Point)>>,
+    /// Where the edges of each band begin in `edges`; one more entry than bands.
+    starts: Vec<usize>,
+    edges: Vec<Edge>,
 }
 
 impl Locator {
     /// Prepares `polygons`.
     pub fn new<'a>(polygons: impl IntoIterator<Item = &'a Polygon>) -> Self {
-        let mut edges = Vec::new();
+        let mut all = Vec::new();
         let mut bounds = Bounds::EMPTY;
-        let mut segments = Vec::new();
         for (index, polygon) in polygons.into_iter().enumerate() {
             bounds = bounds.union(polygon.bounds());
             for ring in polygon.rings() {
                 let mut previous = ring.last().copied().unwrap_or_default();
                 for &point in ring {
-                    let line = Line::new([previous.x, previous.y], [point.x, point.y]);
-                    edges.push(Edge::new(line, index as u32));
-                    segments.push((index as u32, previous, point));
+                    let (low, high) =
+                        if previous.y <= point.y { (previous, point) } else { (point, previous) };
+                    all.push(Edge { polygon: index as u32, low, high });
                     previous = point;
                 }
             }
         }
-        let n_bands = (segments.len() / 4).clamp(1, 4096);
-        let band_m = if bounds.is_empty() { 1.0 } else { (bounds.height() / n_bands as f64).max(1e-9) };
-        let mut this =
-            Self { tree: RTree::bulk_load(edges), bounds, band_m, bands: vec![Vec::new(); n_bands] };
-        for (index, a, b) in segments {
-            let (low, high) = if a.y <= b.y { (a, b) } else { (b, a) };
-            if low.y < high.y {
-                for band in this.band(low.y)..=this.band(high.y) {
-                    this.bands[band].push((index, low, high));
-                }
+        let height_m = if bounds.is_empty() { 0.0 } else { bounds.height() };
+        // An edge of height y lies in about 1 + y / band entries.
+        let climbed_m: f64 = all.iter().map(|edge| edge.high.y - edge.low.y).sum();
+        let n_bands =
+            if climbed_m > 0.0 { (4.0 * all.len() as f64 * height_m / climbed_m) as usize } else { 1 };
+        let n_bands = n_bands.clamp(1, MOST_BANDS);
+        let band_m = (height_m / n_bands as f64).max(1e-9);
+        let mut this = Self { bounds, band_m, starts: vec![0; n_bands + 1], edges: Vec::new() };
+        for edge in &all {
+            for band in this.band(edge.low.y)..=this.band(edge.high.y) {
+                this.starts[band + 1] += 1;
+            }
+        }
+        for band in 0..n_bands {
+            this.starts[band + 1] += this.starts[band];
+        }
+        let mut next = this.starts.clone();
+        let nothing = Edge { polygon: 0, low: Point::default(), high: Point::default() };
+        this.edges = vec![nothing; this.starts[n_bands]];
+        for edge in &all {
+            for band in this.band(edge.low.y)..=this.band(edge.high.y) {
+                this.edges[next[band]] = *edge;
+                next[band] += 1;
             }
         }
         this
@@ -51,7 +72,11 @@ impl Locator {
 
     fn band(&self, y: f64) -> usize {
         let band = ((y - self.bounds.min.y) / self.band_m).max(0.0) as usize;
-        band.min(self.bands.len() - 1)
+        band.min(self.starts.len() - 2)
+    }
+
+    fn edges_of(&self, band: usize) -> &[Edge] {
+        &self.edges[self.starts[band]..self.starts[band + 1]]
     }
 
     /// The polygons that `point` lies on (rims by the even-odd rule), by index.
@@ -60,11 +85,12 @@ impl Locator {
             return Vec::new();
         }
         let mut crossed = Vec::new();
-        for &(index, low, high) in &self.bands[self.band(point.y)] {
+        for edge in self.edges_of(self.band(point.y)) {
+            let (low, high) = (edge.low, edge.high);
             if low.y <= point.y && point.y < high.y {
                 let x = low.x + (point.y - low.y) / (high.y - low.y) * (high.x - low.x);
                 if x > point.x {
-                    crossed.push(index);
+                    crossed.push(edge.polygon);
                 }
             }
         }
@@ -78,12 +104,22 @@ impl Locator {
         let mut found = Vec::new();
         let mut look = |from: Point, to: Point| {
             let reach = Bounds::of([from, to]).grown(distance_m);
-            let envelope = AABB::from_corners([reach.min.x, reach.min.y], [reach.max.x, reach.max.y]);
-            for edge in self.tree.locate_in_envelope_intersecting(envelope) {
-                let (a, b) = (edge.geom().from, edge.geom().to);
-                let rim = (Point::new(a[0], a[1]), Point::new(b[0], b[1]));
-                if !found.contains(&(edge.data as usize)) && segment_distance((from, to), rim) <= distance_m {
-                    found.push(edge.data as usize);
+            if !reach.meets(self.bounds) {
+                return;
+            }
+            for band in self.band(reach.min.y)..=self.band(reach.max.y) {
+                for edge in self.edges_of(band) {
+                    let (left, right) = (edge.low.x.min(edge.high.x), edge.low.x.max(edge.high.x));
+                    let apart = left > reach.max.x
+                        || right < reach.min.x
+                        || edge.low.y > reach.max.y
+                        || edge.high.y < reach.min.y;
+                    if !apart
+                        && !found.contains(&(edge.polygon as usize))
+                        && segment_distance((from, to), (edge.low, edge.high)) <= distance_m
+                    {
+                        found.push(edge.polygon as usize);
+                    }
                 }
             }
         };

@@ -28,7 +28,10 @@ pub struct DrillSet {
 pub fn add_holes(board: &mut Board, sets: &[DrillSet], messages: &mut Vec<Diagnostic>) {
     let n_layers = board.layers.len();
     let last = n_layers.saturating_sub(1);
-    let locators: Vec<Locator> = board.layers.iter().map(pad_locator).collect();
+    // Pads decide only where a file is silent, which is rare.
+    let silent =
+        sets.iter().any(|set| set.plating.is_none() && set.holes.iter().any(|hole| hole.plating.is_none()));
+    let locators: Vec<Locator> = board.layers.iter().filter(|_| silent).map(pad_locator).collect();
     for set in sets {
         let place = |line: u32| Place {
             file: Some(set.file.clone()),

@@ -92,8 +92,13 @@ impl Attributes {
             }
             "P" => {
                 let number = values.get(1).map(String::as_str).unwrap_or_default();
+                tags.pin = None;
+                if number.is_empty() && !first.is_empty() && values.len() > 1 {
+                    // Pads without a number, as fiducials and mounting pads have, belong to a part but are no pin.
+                    tags.part = Some(first.to_owned());
+                    return Ok(());
+                }
                 if first.is_empty() || number.is_empty() {
-                    tags.pin = None;
                     return Err("object attribute `.P` must give a part and a pin number".to_owned());
                 }
                 let function = values.get(2).filter(|text| !text.is_empty()).cloned();
