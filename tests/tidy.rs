@@ -37,6 +37,7 @@ const ARROWS: &[(&str, &str, bool, &str)] = &[
     ("spread", "review", false, "closed forms know no board"),
     ("sheet", "board", false, "the solver knows no board"),
     ("sheet", "review", false, "the solver knows no board"),
+    ("read", "signal", true, "the name of a band stands for its limits"),
     ("signal", "board", false, "bands know no board"),
     ("draw", "sheet", false, "drawing sees results only"),
     ("draw", "spread", false, "drawing sees results only"),

@@ -4,8 +4,12 @@
 //! always the unit. A hint is a second line that says what to do.
 
 pub mod code;
+mod near;
+mod snippet;
 
 pub use code::Code;
+pub use near::nearest;
+pub use snippet::{Ink, render};
 
 /// How much a message matters.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord)]

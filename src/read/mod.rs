@@ -1,4 +1,4 @@
-//! Reads fabrication data into a board: folder or archive, Gerber and drill files, job file.
+//! From files to plain data: fabrication data (folder or archive, Gerber and drill files, job file) and reviews.
 
 mod build;
 mod compose;
@@ -9,6 +9,7 @@ mod holes;
 pub mod job;
 pub mod log;
 mod outline;
+pub mod review;
 mod set;
 mod source;
 mod stackup;
@@ -16,3 +17,4 @@ pub mod style;
 mod ties;
 
 pub use build::read_board;
+pub use review::{ReviewFile, parse_review, read_review};

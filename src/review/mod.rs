@@ -8,6 +8,8 @@ use std::path::PathBuf;
 /// A review: one board, the nets to chart and the bands to chart them in.
 #[derive(Clone, Debug, Default)]
 pub struct Review {
+    /// Name of the review's file, for messages.
+    pub file: String,
     /// Folder or ZIP with the fabrication data, resolved against the review's folder.
     pub files: PathBuf,
     /// Title for the pictures; empty takes the job file's.
@@ -60,6 +62,19 @@ pub struct NetRequest {
     pub receiver_landing: Option<LandingRequest>,
     /// Line of the entry in the review, from 1.
     pub line: u32,
+    /// Where its keys stand in the file.
+    pub marks: Marks,
+}
+
+/// Where keys of an entry stand in the review: key, line from 1, byte range of the value.
+#[derive(Clone, Debug, Default, PartialEq)]
+pub struct Marks(pub Vec<(&'static str, u32, std::ops::Range<usize>)>);
+
+impl Marks {
+    /// Line and byte range of a key's value.
+    pub fn get(&self, key: &str) -> Option<(u32, std::ops::Range<usize>)> {
+        self.0.iter().find(|mark| mark.0 == key).map(|mark| (mark.1, mark.2.clone()))
+    }
 }
 
 /// Where the user wants a landing.
