@@ -1,4 +1,5 @@
 //! Small numerical tools without board words: quadrature, Fourier filters, special functions.
 
 pub mod filter;
+pub mod measure;
 pub mod quadrature;

@@ -2,6 +2,8 @@
 //!
 //! Nothing here reads a file; `read::review` does.
 
+pub mod drive;
+
 use crate::geom::{Point, Ring};
 use std::path::PathBuf;
 
