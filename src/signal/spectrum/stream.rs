@@ -43,7 +43,7 @@ pub fn sequence_line(stream: &Stream, length: u64, k: u64) -> f64 {
         let mean = 0.5 * (n + 1.0) / n;
         return mean * mean;
     }
-    if k % length == 0 {
+    if k.is_multiple_of(length) {
         return 0.0;
     }
     let bits = k as f64 / n;
