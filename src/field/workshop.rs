@@ -112,14 +112,13 @@ impl Bench<'_, '_> {
     pub fn solve(&self, band: &Band, frequency_hz: f64) -> Result<Solved, Diagnostic> {
         let Some(fine) = &self.fine else { return Ok(self.spread(band, frequency_hz)) };
         let track = self.track_impedance_ohm(frequency_hz);
+        let sheet = |prepared: &(Arc<Stage>, Vec<Injection>)| self.sheet(band, frequency_hz, track, prepared);
         let pair = |pair: &Pair| {
-            let kept = self.sheet(band, frequency_hz, track, &pair.kept)?;
-            let filled = if Arc::ptr_eq(&pair.kept.0, &pair.filled.0) {
-                kept.clone()
-            } else {
-                self.sheet(band, frequency_hz, track, &pair.filled)?
-            };
-            Ok::<_, Diagnostic>((kept, filled))
+            if Arc::ptr_eq(&pair.kept.0, &pair.filled.0) {
+                return sheet(&pair.kept).map(|map| (map.clone(), map));
+            }
+            let (kept, filled) = rayon::join(|| sheet(&pair.kept), || sheet(&pair.filled));
+            Ok((kept?, filled?))
         };
         let (map, without_voids) = pair(fine)?;
         let coarse = self.coarse.as_ref().map(pair).transpose()?;
@@ -136,6 +135,7 @@ impl Bench<'_, '_> {
                     if halving > 0 {
                         self.notes.push(self.halved(cell_m));
                     }
+                    self.notes.extend(self.mended());
                     return Ok(cell_m);
                 }
                 Err(Misfit::Other(reason)) => return Err(*reason),
@@ -281,6 +281,20 @@ impl Bench<'_, '_> {
             self.chart.cell_m * 1e3
         );
         Diagnostic::note(code::CELL_HALVED, text)
+    }
+
+    /// What the cells do not show as it is drawn.
+    fn mended(&self) -> Option<Diagnostic> {
+        let mask = &self.fine.as_ref()?.kept.0.mask;
+        let mut parts = Vec::new();
+        if mask.neck_cells > 0 {
+            parts.push(format!("{} cells stand for necks narrower than a cell", mask.neck_cells));
+        }
+        if mask.crumbs > 0 {
+            parts.push(format!("{} pieces of copper smaller than half a cell are left out", mask.crumbs));
+        }
+        let text = format!("plane `{}` on cells of {:.4} mm: ", self.chart.plane, mask.grid.cell_m * 1e3);
+        (!parts.is_empty()).then(|| Diagnostic::note(code::PLANE_ON_CELLS, text + &parts.join("; ")))
     }
 
     fn failed(&self, failure: &SolveFailure, band: &Band) -> Diagnostic {

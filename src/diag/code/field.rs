@@ -32,6 +32,14 @@ pub const CELL_HALVED: Code = Code {
               The map is solved on smaller cells.",
 };
 
+/// Cells show the plane with small changes.
+pub const PLANE_ON_CELLS: Code = Code {
+    name: "plane-on-cells",
+    meaning: "Necks narrower than a cell are kept a cell wide, so that what is connected stays connected; their \
+              resistance comes out too low. Loose pieces of copper smaller than half a cell are left out. Set a \
+              smaller `cell` under `[solver]` where such a neck carries the return.",
+};
+
 /// The iteration did not converge.
 pub const NOT_CONVERGED: Code = Code {
     name: "solve-not-converged",
@@ -46,5 +54,12 @@ pub const NOT_FACTORED: Code = Code {
 };
 
 /// All codes of this room.
-pub const ALL: &[Code] =
-    &[LANDINGS_APART, LANDING_OFF_COPPER, CELL_TOO_LARGE, CELL_HALVED, NOT_CONVERGED, NOT_FACTORED];
+pub const ALL: &[Code] = &[
+    LANDINGS_APART,
+    LANDING_OFF_COPPER,
+    CELL_TOO_LARGE,
+    CELL_HALVED,
+    PLANE_ON_CELLS,
+    NOT_CONVERGED,
+    NOT_FACTORED,
+];
