@@ -1,5 +1,20 @@
 //! From a board and a review to what will be solved: tracks, planes, landings, voids and cells, before any solve.
 
+mod build;
+mod cell;
+mod copper;
+mod graph;
+mod landing;
+mod request;
+mod route;
+mod stretch;
+mod terrain;
+mod touch;
+mod void;
+
+pub use build::build;
+pub use request::{apply_review, matches};
+
 use crate::diag::Diagnostic;
 use crate::field::PlaneId;
 use crate::geom::{Point, Polygon};

@@ -5,8 +5,10 @@ mod json;
 mod look;
 mod manifest;
 pub mod numbers;
+mod plan;
 
 pub use findings::{Findings, Subject};
 pub use json::json;
 pub use look::Look;
 pub use manifest::{Manifest, sha256_hex};
+pub use plan::PlanAccount;

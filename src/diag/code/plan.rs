@@ -2,5 +2,197 @@
 
 use super::Code;
 
+/// A net of the review that the board lacks.
+pub const NET_UNKNOWN: Code = Code {
+    name: "net-unknown",
+    meaning: "The review names a net, or a pattern, that fits no net of the board. Names are compared letter by \
+              letter, `*` stands for any text. `ebbmap look BOARD` lists the nets.",
+};
+
+/// A reference net shall be charted.
+pub const NET_IS_REFERENCE: Code = Code {
+    name: "net-is-reference",
+    meaning: "A net under `[reference]` carries the return of the others, so it cannot be charted as a signal. \
+              Remove it from one of the two places.",
+};
+
+/// A net with fewer than two pins.
+pub const NET_FEW_PINS: Code = Code {
+    name: "net-few-pins",
+    meaning: "A current needs a pin to start from and a pin to end at; the net has fewer than two pins in the \
+              fabrication data, so there is nothing to chart.",
+};
+
+/// A driver or receiver that is not on the net.
+pub const PIN_UNKNOWN: Code = Code {
+    name: "pin-unknown",
+    meaning: "A pin that the review names does not exist or is on another net. Pins are written as part, dot, \
+              number, for example `U5.19`; the message lists those of the net.",
+};
+
+/// A net with more than two pins needs its ends named.
+pub const PINS_NEEDED: Code = Code {
+    name: "net-pins-needed",
+    meaning: "The net has more than two pins, so where its current starts and ends must be said with `driver` and \
+              `receiver`. Only a net with exactly two pins needs neither.",
+};
+
+/// No copper between the pins.
+pub const TRACK_OPEN: Code = Code {
+    name: "track-open",
+    meaning: "The copper of the net does not lead from driver to receiver: a piece is missing in the fabrication \
+              data, or the two are joined by a part and are two nets. The nearest gap is named.",
+};
+
+/// Part of the way crosses a pour.
+pub const TRACK_ACROSS_AREA: Code = Code {
+    name: "track-across-area",
+    meaning: "Part of the signal's way runs across filled copper of its own net. There the current spreads; a \
+              straight line across the area with the area's width stands for it, which is coarse.",
+};
+
+/// Further pins on the net.
+pub const TRACK_FURTHER_PINS: Code = Code {
+    name: "track-further-pins",
+    meaning: "The net has more pins than driver and receiver. The whole current is taken to flow from driver to \
+              receiver; what the other pins draw is not in the map.",
+};
+
+/// A pin that no copper reaches.
+pub const TRACK_PIN_APART: Code = Code {
+    name: "track-pin-apart",
+    meaning: "A pin of the net has no copper way to the charted track in the fabrication data. The charted way is \
+              not affected, but the data may be incomplete.",
+};
+
+/// An open branch.
+pub const TRACK_BRANCH: Code = Code {
+    name: "track-branch",
+    meaning: "Copper of the net leaves the way from driver to receiver and ends open. It carries no current in \
+              this map; at high frequencies its capacitance would draw some.",
+};
+
+/// A loop in the copper of the net.
+pub const TRACK_LOOP: Code = Code {
+    name: "track-loop",
+    meaning: "The copper of the net offers a second way beside the shortest one. The current would divide between \
+              them; here all of it is taken along the shortest way.",
+};
+
+/// No copper above or below.
+pub const PLANE_NONE: Code = Code {
+    name: "plane-none",
+    meaning: "No copper area lies above or below the track on any layer, so its return has no plane to be charted \
+              on. No map is drawn.",
+};
+
+/// The nearest area is not of a reference net.
+pub const PLANE_NOT_REFERENCE: Code = Code {
+    name: "plane-not-reference",
+    meaning: "The copper area nearest to the track is not of a net under `[reference]`, for example a supply. The \
+              return flows on that area first, so a map on the reference behind it would be wrong by a large \
+              factor and is not drawn. If that net does carry the return, name it under `[reference]`; if it does \
+              not, `plane` in the net's entry chooses another plane on your word.",
+};
+
+/// The plane of the review is not there.
+pub const PLANE_UNKNOWN: Code = Code {
+    name: "plane-unknown",
+    meaning: "The plane that the review names does not exist on the board, or the track itself runs on its layer. \
+              Planes are written as layer and net, for example `L2-GND`.",
+};
+
+/// The review chose another plane.
+pub const PLANE_CHOSEN: Code = Code {
+    name: "plane-chosen",
+    meaning: "The review names a plane that is not the nearest copper area of the track. It is charted as asked, \
+              but part of the return flows on the nearer area, which is not in the map.",
+};
+
+/// The track lies between two planes.
+pub const PLANE_BETWEEN: Code = Code {
+    name: "plane-between",
+    meaning: "Copper areas lie above and below the track at comparable distance, so they share the return. The map \
+              is of the nearer one alone and shows more than its part.",
+};
+
+/// Reference copper beside the track.
+pub const POUR_BESIDE: Code = Code {
+    name: "pour-beside",
+    meaning: "Reference copper on the track's own layer lies within three times the height over the plane and \
+              takes a part of the return (about 45 % at a gap of one height, 24 % at 2.5). That part is not in a \
+              map of one plane, which shows too much on the plane there.",
+};
+
+/// No landing.
+pub const LANDING_NONE: Code = Code {
+    name: "landing-none",
+    meaning: "Where the return enters or leaves the plane is not known: the part has no pin of the plane's net that \
+              leads to the plane, and no via of it lies within 3 mm. Name a pin or a point with `driver_landing` \
+              or `receiver_landing` in the net's entry.",
+};
+
+/// A landing of the review cannot be used.
+pub const LANDING_BAD: Code = Code {
+    name: "landing-bad",
+    meaning: "The landing that the review names does not lead to the plane: the pin does not exist, is of another \
+              net, or has no via to the plane, or the point is not on the plane's copper.",
+};
+
+/// A landing was found away from the part.
+pub const LANDING_NEAREST_VIA: Code = Code {
+    name: "landing-nearest-via",
+    meaning: "The part has no reference pin of its own that leads to the plane, so the nearest via of the plane's \
+              net is taken as the place where the return leaves it. Name the true place with `driver_landing` or \
+              `receiver_landing` if it is another.",
+};
+
+/// Two planes without a joint.
+pub const PLANES_APART: Code = Code {
+    name: "planes-apart",
+    meaning: "The track changes from one plane to another and no via near the change joins the two, or one of them \
+              is not charted. The return then finds its way through parts, ties or the capacitance between planes, \
+              which needs all of them to be solved together. No map is drawn.",
+};
+
+/// The landings lie on two islands.
+pub const LANDINGS_ON_ISLANDS: Code = Code {
+    name: "landings-on-islands",
+    meaning: "The return would enter the plane on one piece of copper and leave it on another, which are not \
+              connected on this layer. A map of one of them alone has no solution, so none is drawn.",
+};
+
+/// The cell was enlarged for memory.
+pub const CELL_ENLARGED: Code = Code {
+    name: "cell-enlarged",
+    meaning: "Cells as small as the height of the track would take too much memory on this board, so larger ones \
+              are planned; the numerical error beside each figure grows accordingly. `cell` under `[solver]` or \
+              `--cell` forces another size.",
+};
+
 /// All codes of this room.
-pub const ALL: &[Code] = &[];
+pub const ALL: &[Code] = &[
+    NET_UNKNOWN,
+    NET_IS_REFERENCE,
+    NET_FEW_PINS,
+    PIN_UNKNOWN,
+    PINS_NEEDED,
+    TRACK_OPEN,
+    TRACK_ACROSS_AREA,
+    TRACK_FURTHER_PINS,
+    TRACK_PIN_APART,
+    TRACK_BRANCH,
+    TRACK_LOOP,
+    PLANE_NONE,
+    PLANE_NOT_REFERENCE,
+    PLANE_UNKNOWN,
+    PLANE_CHOSEN,
+    PLANE_BETWEEN,
+    POUR_BESIDE,
+    LANDING_NONE,
+    LANDING_BAD,
+    LANDING_NEAREST_VIA,
+    PLANES_APART,
+    LANDINGS_ON_ISLANDS,
+    CELL_ENLARGED,
+];

@@ -1,0 +1,149 @@
+//! The board prepared for the plan's questions: what copper lies at a point, which of it is an area, what is reference.
+
+use crate::board::{Board, CopperKind, NetId, ObjectFunction, Plating};
+use crate::field::PlaneId;
+use crate::geom::locate::Locator;
+use crate::geom::{Point, Polygon, Region};
+
+/// Copper without any pour in it counts as an area from this size on, in square metres, ...
+const AREA_M2: f64 = 4e-6;
+/// ... if it is this wide on average (twice its area over the length of its rims), in metres.
+const AREA_WIDTH_M: f64 = 0.4e-3;
+
+/// A board with its copper prepared.
+pub struct Terrain<'b> {
+    /// The board.
+    pub board: &'b Board,
+    layers: Vec<Layer>,
+    reference: Vec<bool>,
+}
+
+struct Layer {
+    locator: Locator,
+    /// Whether each piece of copper is an area (a plane or a pour, with whatever hangs on it) and not just tracks.
+    is_area: Vec<bool>,
+}
+
+/// A plated hole that reaches a plane.
+#[derive(Clone, Copy, Debug)]
+pub struct Via {
+    /// Index of the hole.
+    pub hole: usize,
+    /// Index of the plane's area that the barrel touches.
+    pub area: usize,
+}
+
+impl<'b> Terrain<'b> {
+    /// Prepares `board`; `reference` are the names of its reference nets.
+    pub fn new(board: &'b Board, reference: &[String]) -> Self {
+        let layers = (0..board.layers.len()).map(|layer| Layer::new(board, layer)).collect();
+        let is_reference = |net: &crate::board::Net| reference.contains(&net.name);
+        Self { board, layers, reference: board.nets.iter().map(is_reference).collect() }
+    }
+
+    /// Whether a net is a reference net.
+    pub fn is_reference(&self, net: Option<NetId>) -> bool {
+        net.is_some_and(|net| self.reference.get(net.0 as usize) == Some(&true))
+    }
+
+    /// Pieces of copper of a layer at a point, by index.
+    pub fn copper_at(&self, layer: usize, point: Point) -> Vec<usize> {
+        self.layers[layer].locator.containing(point)
+    }
+
+    /// Pieces of copper of a layer within `distance_m` of a line, by index.
+    pub fn copper_near(&self, layer: usize, path: &[Point], distance_m: f64) -> Vec<usize> {
+        self.layers[layer].locator.touching(path, distance_m)
+    }
+
+    /// The area of a layer at a point, by index.
+    pub fn area_at(&self, layer: usize, point: Point) -> Option<usize> {
+        self.copper_at(layer, point).into_iter().find(|&index| self.layers[layer].is_area[index])
+    }
+
+    /// Net of a piece of copper.
+    pub fn net_of(&self, layer: usize, index: usize) -> Option<NetId> {
+        self.board.layers[layer].areas[index].net
+    }
+
+    /// The piece of copper of `net` at a point of a layer.
+    pub fn copper_of_net(&self, layer: usize, point: Point, net: NetId) -> Option<usize> {
+        self.copper_at(layer, point).into_iter().find(|&index| self.net_of(layer, index) == Some(net))
+    }
+
+    /// Name of a net in texts.
+    pub fn net_name(&self, net: Option<NetId>) -> &str {
+        net.map_or("(no net)", |net| self.board.net_name(net))
+    }
+
+    /// Plated holes that touch the plane, in the order of the board.
+    pub fn vias_to(&self, plane: &PlaneId) -> Vec<Via> {
+        let mut vias = Vec::new();
+        for (hole, drilled) in self.board.holes.iter().enumerate() {
+            if drilled.plating != Plating::Plated {
+                continue;
+            }
+            let contact = drilled.contacts.iter().find(|(layer, area)| {
+                *layer == plane.layer && self.net_name(self.net_of(*layer, *area)) == plane.net
+            });
+            if let Some(&(_, area)) = contact {
+                vias.push(Via { hole, area });
+            }
+        }
+        vias
+    }
+}
+
+impl Layer {
+    fn new(board: &Board, layer: usize) -> Self {
+        let copper = &board.layers[layer];
+        let locator = Locator::new(copper.areas.iter().map(|area| &area.shape));
+        let mut is_area: Vec<bool> = copper.areas.iter().map(|area| wide(&area.shape)).collect();
+        for object in copper.objects.iter().filter(|object| object.dark) {
+            let inside = match &object.kind {
+                CopperKind::Fill { shape } if object.function == ObjectFunction::Area => inner_point(shape),
+                CopperKind::Draw { path, .. } if object.function == ObjectFunction::AreaStroke => {
+                    path.first().copied()
+                }
+                _ => None,
+            };
+            let Some(point) = inside else { continue };
+            for index in locator.containing(point) {
+                is_area[index] |= copper.areas[index].net == object.net;
+            }
+        }
+        Self { locator, is_area }
+    }
+}
+
+fn wide(shape: &Polygon) -> bool {
+    let area_m2 = shape.area();
+    let rims_m: f64 = shape.rings().map(|ring| rim_length_m(ring)).sum();
+    area_m2 >= AREA_M2 && 2.0 * area_m2 >= AREA_WIDTH_M * rims_m
+}
+
+/// Length of a ring in metres.
+pub fn rim_length_m(ring: &[Point]) -> f64 {
+    (0..ring.len()).map(|i| ring[i].distance(ring[(i + 1) % ring.len()])).sum()
+}
+
+/// A point inside a region, near a rim.
+pub fn inner_point(shape: &Region) -> Option<Point> {
+    const STEP_M: f64 = 5e-6;
+    for polygon in &shape.0 {
+        let ring = &polygon.outer;
+        for i in 0..ring.len() {
+            let (from, to) = (ring[i], ring[(i + 1) % ring.len()]);
+            let length = from.distance(to);
+            if length < STEP_M {
+                continue;
+            }
+            let along = (to - from) * (STEP_M / length);
+            let point = (from + to) * 0.5 + Point::new(-along.y, along.x);
+            if polygon.contains(point) {
+                return Some(point);
+            }
+        }
+    }
+    None
+}

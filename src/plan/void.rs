@@ -1,0 +1,239 @@
+//! Voids of a plane: what is missing of it inside the outline.
+//!
+//! The plane's pull-back from the outline is taken off first: it is the distance that nine tenths of the outline keep
+//! from the plane's copper. Voids with webs narrower than 2h between them count as one; the webs are filled by growing
+//! and shrinking by h.
+
+use super::Void;
+use super::terrain::rim_length_m;
+use crate::board::{Board, Plating};
+use crate::field::PlaneId;
+use crate::geom::locate::{Locator, point_segment_distance};
+use crate::geom::polygon::ring_area;
+use crate::geom::{Bounds, Point, Polygon, Region, Ring, boolean, stroke};
+use std::collections::BTreeMap;
+
+/// No pull-back is wider than this, in metres.
+const WIDEST_PULL_BACK_M: f64 = 2e-3;
+/// Smaller voids are left out, in square metres.
+const SMALLEST_M2: f64 = 1e-9;
+/// Slivers along the pull-back narrower than this are no voids, in metres.
+const SLIVER_M: f64 = 0.1e-3;
+
+/// The copper of a plane on its layer.
+pub fn plane_copper(board: &Board, plane: &PlaneId) -> Region {
+    let areas = board.layers[plane.layer].areas.iter();
+    let of_plane = areas.filter(|area| area.net.is_some_and(|net| board.net_name(net) == plane.net));
+    Region(of_plane.map(|area| area.shape.clone()).collect())
+}
+
+/// Voids before any are joined: disjoint polygons.
+pub fn missing(board: &Board, plane: &PlaneId) -> Region {
+    let copper = plane_copper(board, plane);
+    let outline = if board.outline.0.is_empty() { filled(&copper) } else { board.outline.clone() };
+    let pull_back_m = pull_back(&outline, &copper);
+    let inside = boolean::offset(&outline, -pull_back_m);
+    let mut drilled = Vec::new();
+    for hole in &board.holes {
+        let (first, last) = hole.layers;
+        if hole.plating == Plating::NonPlated && (first..=last).contains(&plane.layer) {
+            drilled.extend(stroke::capsules(&hole.path, hole.diameter_m));
+        }
+    }
+    let open = boolean::difference(&inside, &copper);
+    let open = if drilled.is_empty() {
+        open
+    } else {
+        let drilled = boolean::intersection(&boolean::union_with([], &drilled), &inside);
+        boolean::union([&open, &drilled])
+    };
+    let rim = Locator::new(&inside.0);
+    let mut kept = Vec::new();
+    for polygon in open.0 {
+        if polygon.area() < SMALLEST_M2 {
+            continue;
+        }
+        let at_rim = polygon.outer.iter().any(|&point| !rim.rims_near(&[point], 1e-6).is_empty());
+        if !at_rim {
+            kept.push(polygon);
+            continue;
+        }
+        let whole = Region(vec![polygon]);
+        let core = boolean::offset(&whole, -0.5 * SLIVER_M);
+        let opened = boolean::intersection(&boolean::offset(&core, 0.5 * SLIVER_M), &whole);
+        kept.extend(opened.0.into_iter().filter(|polygon| polygon.area() >= SMALLEST_M2));
+    }
+    Region(kept)
+}
+
+fn filled(copper: &Region) -> Region {
+    boolean::union_with([], &copper.0.iter().map(|polygon| polygon.outer.clone()).collect::<Vec<Ring>>())
+}
+
+/// Distance that the plane keeps from the outline, in metres.
+fn pull_back(outline: &Region, copper: &Region) -> f64 {
+    const STEP_M: f64 = 1e-3;
+    let reach = WIDEST_PULL_BACK_M;
+    // Only rims that come near the outline matter.
+    let near = |side: &(Point, Point)| {
+        let bounds = Bounds::of([side.0, side.1]).grown(reach);
+        outline.0.iter().flat_map(Polygon::rings).any(|ring| {
+            (0..ring.len()).any(|i| bounds.meets(Bounds::of([ring[i], ring[(i + 1) % ring.len()]])))
+        })
+    };
+    let sides = copper.0.iter().flat_map(|polygon| {
+        let ring = &polygon.outer;
+        (0..ring.len()).map(move |i| (ring[i], ring[(i + 1) % ring.len()]))
+    });
+    let sides: Vec<(Point, Point)> = sides.filter(near).collect();
+    let mut distances = Vec::new();
+    for ring in outline.0.iter().flat_map(Polygon::rings) {
+        for i in 0..ring.len() {
+            let (from, to) = (ring[i], ring[(i + 1) % ring.len()]);
+            let n = (from.distance(to) / STEP_M).ceil() as usize;
+            for k in 0..n {
+                let at = from + (to - from) * ((k as f64 + 0.5) / n as f64);
+                let distance = sides.iter().map(|&side| point_segment_distance(at, side));
+                let distance = distance.fold(f64::INFINITY, f64::min);
+                if distance <= reach {
+                    distances.push(distance);
+                }
+            }
+        }
+    }
+    distances.sort_by(f64::total_cmp);
+    // One micrometre more, so that a rim that follows the outline leaves no slivers of rounding.
+    distances.get(distances.len() * 9 / 10).map_or(0.0, |distance| distance + 1e-6)
+}
+
+/// Joins voids whose webs are narrower than 2h, and names them by layer and centre.
+pub fn voids(missing: &Region, plane: &PlaneId, height_m: f64, origin: Point) -> Vec<Void> {
+    let mut found: Vec<Polygon> = Vec::new();
+    for group in groups(missing, 2.0 * height_m) {
+        if let [only] = group[..] {
+            found.push(missing.0[only].clone());
+        } else {
+            found.extend(joined(missing, &group, height_m));
+        }
+    }
+    let mut named: Vec<(Point, Polygon)> = found.into_iter().map(|shape| (centroid(&shape), shape)).collect();
+    named.sort_by(|a, b| a.0.y.total_cmp(&b.0.y).then(a.0.x.total_cmp(&b.0.x)));
+    let mut uses: BTreeMap<String, usize> = BTreeMap::new();
+    let name = |(centre, shape): (Point, Polygon)| {
+        let at = (centre - origin) * 1e3;
+        let tenths = |value: f64| (value * 10.0).round() / 10.0 + 0.0;
+        let id = format!("L{}-void-{:.1}-{:.1}", plane.layer + 1, tenths(at.x), tenths(at.y));
+        let count = uses.entry(id.clone()).or_default();
+        *count += 1;
+        Void { id: if *count > 1 { format!("{id}-{count}") } else { id }, shape }
+    };
+    named.into_iter().map(name).collect()
+}
+
+/// Indices of voids that lie within `distance_m` of each other, directly or through others.
+fn groups(missing: &Region, distance_m: f64) -> Vec<Vec<usize>> {
+    let n = missing.0.len();
+    let locator = Locator::new(&missing.0);
+    let mut root: Vec<usize> = (0..n).collect();
+    fn find(root: &mut [usize], mut at: usize) -> usize {
+        while root[at] != at {
+            root[at] = root[root[at]];
+            at = root[at];
+        }
+        at
+    }
+    for (index, polygon) in missing.0.iter().enumerate() {
+        for ring in polygon.rings() {
+            let mut path = ring.clone();
+            path.extend(ring.first().copied());
+            for other in locator.rims_near(&path, distance_m - boolean::GRID_M) {
+                let (a, b) = (find(&mut root, index), find(&mut root, other));
+                root[a.max(b)] = a.min(b);
+            }
+        }
+    }
+    let mut by_root: BTreeMap<usize, Vec<usize>> = BTreeMap::new();
+    for index in 0..n {
+        let at = find(&mut root, index);
+        by_root.entry(at).or_default().push(index);
+    }
+    by_root.into_values().collect()
+}
+
+/// One polygon of several voids: webs filled by growing and shrinking, what is still apart joined by a thin strip.
+fn joined(missing: &Region, group: &[usize], height_m: f64) -> Vec<Polygon> {
+    let members = Region(group.iter().map(|&index| missing.0[index].clone()).collect());
+    let coarse = Region(members.0.iter().map(|polygon| simplified(polygon, 0.02 * height_m)).collect());
+    let grown = boolean::offset(&coarse, height_m);
+    let closed = boolean::offset(&grown, -height_m);
+    let mut whole = boolean::union([&closed, &members]);
+    while whole.0.len() > 1 {
+        let mut best = (f64::INFINITY, Point::default(), Point::default());
+        for &a in &whole.0[0].outer {
+            for &b in whole.0[1..].iter().flat_map(|polygon| &polygon.outer) {
+                let distance = a.distance(b);
+                if distance < best.0 {
+                    best = (distance, a, b);
+                }
+            }
+        }
+        let strip = stroke::capsule(best.1, best.2, 0.1 * height_m);
+        let count = whole.0.len();
+        whole = boolean::union_with([&whole], &[strip]);
+        if whole.0.len() >= count {
+            break;
+        }
+    }
+    whole.0
+}
+
+/// A polygon with fewer corners, none farther than `tolerance_m` from where it was.
+fn simplified(polygon: &Polygon, tolerance_m: f64) -> Polygon {
+    let outer = simplified_ring(&polygon.outer, tolerance_m);
+    let holes = polygon.holes.iter().map(|ring| simplified_ring(ring, tolerance_m));
+    Polygon { outer, holes: holes.filter(|ring| ring.len() > 2).collect() }
+}
+
+fn simplified_ring(ring: &[Point], tolerance_m: f64) -> Ring {
+    if ring.len() < 8 {
+        return ring.to_vec();
+    }
+    let half = ring.len() / 2;
+    let mut kept = vec![false; ring.len()];
+    (kept[0], kept[half]) = (true, true);
+    let mut open = vec![(0, half), (half, ring.len())];
+    while let Some((from, to)) = open.pop() {
+        let ends = (ring[from], ring[to % ring.len()]);
+        let farthest = (from + 1..to)
+            .map(|index| (point_segment_distance(ring[index], ends), index))
+            .max_by(|a, b| a.0.total_cmp(&b.0));
+        if let Some((distance, index)) = farthest
+            && distance > tolerance_m
+        {
+            kept[index] = true;
+            open.push((from, index));
+            open.push((index, to));
+        }
+    }
+    let simple: Ring = ring.iter().zip(kept).filter(|(_, kept)| *kept).map(|(&point, _)| point).collect();
+    if simple.len() > 2 { simple } else { ring.to_vec() }
+}
+
+/// Centre of the area inside a polygon's outer rim.
+fn centroid(polygon: &Polygon) -> Point {
+    let ring = &polygon.outer;
+    let Some(&origin) = ring.first() else { return Point::default() };
+    let mut sum = Point::default();
+    for pair in ring.windows(2) {
+        let (a, b) = (pair[0] - origin, pair[1] - origin);
+        sum = sum + (a + b) * (a.cross(b) / 6.0);
+    }
+    let area = ring_area(ring);
+    if area.abs() > 0.0 { origin + sum * (1.0 / area) } else { polygon.bounds().centre() }
+}
+
+/// Width of a void: twice its area over the length of its rims, in metres.
+pub fn mean_width_m(void: &Void) -> f64 {
+    let rims: f64 = void.shape.rings().map(|ring| rim_length_m(ring)).sum();
+    2.0 * void.shape.area() / rims
+}
