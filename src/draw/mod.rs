@@ -6,12 +6,17 @@
 pub mod contour;
 pub mod density;
 mod font;
+pub mod frame;
+pub mod map;
 mod number;
+pub mod panel;
 mod path;
+pub mod place;
 pub mod png;
 mod scale;
 mod scene;
 pub mod svg;
+pub mod ticket;
 mod text;
 mod view;
 
@@ -20,5 +25,5 @@ pub use number::{grouped, significant, with_prefix};
 pub use path::PathData;
 pub use scale::DensityScale;
 pub use scene::{Group, Image, Item, Scene, Shape, TextBox};
-pub use text::{Anchor, Text, italic, plain, raised, shortened, wrapped};
+pub use text::{Span, Anchor, Text, italic, plain, raised, shortened, wrapped};
 pub use view::View;

@@ -1,0 +1,486 @@
+//! The map itself: heat, contours, what is not copper, zones, track, pins and landings, and labels on it.
+
+use super::contour::{Contour, SHARES, contours, from_segment, simplified};
+use super::density::{Density, heat_png};
+use super::path::PathData;
+use super::place::{Placer, Rect};
+use super::scale::DensityScale;
+use super::scene::{Group, Image, Item, Shape};
+use super::text::{Anchor, Text, shortened};
+use super::view::View;
+use crate::geom::{Point, Polygon, Region, Ring};
+use crate::style::{Face, Rgb, Style};
+
+/// Size of a pin's square in mm.
+pub const PIN: f64 = 2.0;
+/// Radius of a landing's ring in mm.
+pub const LANDING: f64 = 1.0;
+/// Halo round lines in mm, both sides together.
+const HALO: f64 = 0.5;
+/// Largest deviation of drawn outlines in mm.
+const OUTLINE: f64 = 0.02;
+
+/// A piece of the track.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct MapLeg {
+    /// Start, towards the driver.
+    pub from: Point,
+    /// End, towards the receiver.
+    pub to: Point,
+    /// Whether this plane carries its return.
+    pub charted: bool,
+}
+
+/// An end of the net.
+#[derive(Clone, Debug, PartialEq)]
+pub struct MapPin {
+    /// Pin, as `U5.19`.
+    pub name: String,
+    /// Its place.
+    pub at: Point,
+}
+
+/// What a map shows.
+#[derive(Clone, Debug)]
+pub struct MapData {
+    /// Density.
+    pub density: Density,
+    /// Copper of the plane that was solved.
+    pub plane: Vec<Polygon>,
+    /// Copper of the same net on this layer that was not solved, since no return reaches it.
+    pub idle: Vec<Polygon>,
+    /// Outline of the board.
+    pub outline: Region,
+    /// Zones: name and outline.
+    pub zones: Vec<(String, Ring)>,
+    /// Track.
+    pub track: Vec<MapLeg>,
+    /// Driving pin; none when the charted part starts elsewhere.
+    pub driver: Option<MapPin>,
+    /// Receiving pin.
+    pub receiver: Option<MapPin>,
+    /// Where the return leaves and enters the plane.
+    pub landings: Vec<Point>,
+    /// Densities that enclose 50, 80 and 95 %.
+    pub levels: [f64; 3],
+}
+
+/// A drawn map.
+#[derive(Clone, Debug)]
+pub struct DrawnMap {
+    /// Layers as named groups.
+    pub group: Group,
+    /// The contours; those without lines are not shown.
+    pub contours: [Contour; 3],
+    /// For placing more labels.
+    pub placer: Placer,
+}
+
+/// How a map is drawn.
+#[derive(Clone, Copy, Debug)]
+pub struct MapLook<'a> {
+    /// Style.
+    pub style: &'a Style,
+    /// Scale of the density.
+    pub scale: DensityScale,
+    /// Pixels of the heat image for each mm.
+    pub px_per_mm: f64,
+    /// Whether this is a small cell of a set: no labels, thinner lines, the 80 % contour alone.
+    pub small: bool,
+}
+
+impl MapLook<'_> {
+    fn weight(&self) -> f64 {
+        if self.small { 0.5 } else { 1.0 }
+    }
+}
+
+/// Draws `data` in `view`.
+pub fn draw_map(data: &MapData, view: &View, look: &MapLook, label: &str) -> DrawnMap {
+    let mut group = Group::new("map").labeled("graphics-object", label);
+    let (width, height) = (view.width(), view.height());
+    group.group(heat(data, view, look, label));
+    let lines: Vec<((f64, f64), (f64, f64))> =
+        data.track.iter().map(|leg| (view.place(leg.from), view.place(leg.to))).collect();
+    let cover = 0.5 * look.style.line.track_case * look.weight() + 0.25;
+    let hidden = |at: (f64, f64)| lines.iter().any(|&(a, b)| from_segment(at, a, b) < cover);
+    let levels = if look.small { [0.0, data.levels[1], 0.0] } else { data.levels };
+    let contours = contours(&data.density, view, &look.scale, levels, &hidden);
+
+    let mut vectors = Group::new("layers").clipped(view.x, view.y, width, height);
+    vectors.group(contour_lines(&contours, look));
+    vectors.group(not_copper(data, view, look));
+    vectors.group(zone_lines(data, view, look));
+    vectors.group(edges(data, view, look));
+    vectors.group(track(data, view, look));
+    group.group(vectors);
+    group.group(pins(data, view, look));
+    let placer = placer(data, view, look);
+    let mut drawn = DrawnMap { group, contours, placer };
+    if !look.small {
+        labels(&mut drawn, data, view, look);
+    }
+    drawn
+}
+
+fn heat(data: &MapData, view: &View, look: &MapLook, label: &str) -> Group {
+    let pixels = |mm: f64| ((mm * look.px_per_mm).round() as usize).max(1);
+    let raster = data.density.raster(view, pixels(view.width()), pixels(view.height()), &look.scale);
+    let png = heat_png(&raster, &look.scale, &look.style.density.gradient, look.style.color.over);
+    let mut group = Group::new("density");
+    group.items.push(Item::Image(Image {
+        x: view.x,
+        y: view.y,
+        width: view.width(),
+        height: view.height(),
+        png,
+        label: label.to_owned(),
+    }));
+    group
+}
+
+/// Ink for a contour of the map: the one of two that stands out more from the level's color.
+pub fn contour_ink(style: &Style, scale: &DensityScale, density: f64) -> Rgb {
+    let ground = style.density.gradient.at(scale.place(scale.level_db(density)));
+    ground.ink_of(style.color.on_dark, style.color.on_light)
+}
+
+fn contour_lines(contours: &[Contour; 3], look: &MapLook) -> Group {
+    let mut group = Group::new("contours");
+    for (rank, contour) in contours.iter().enumerate() {
+        let mut path = PathData::coarse();
+        for line in &contour.lines {
+            path.line(line);
+        }
+        let ink = contour_ink(look.style, &look.scale, contour.density);
+        let width = look.style.line.contour[rank] * if look.small { 0.7 } else { 1.0 };
+        group.shape(Shape::stroked(path, ink, width).dashed(&look.style.line.contour_dash[rank]));
+    }
+    group
+}
+
+fn ring_on_sheet(ring: &Ring, view: &View) -> Vec<(f64, f64)> {
+    let mut points: Vec<(f64, f64)> = ring.iter().map(|&point| view.place(point)).collect();
+    if let Some(&first) = points.first() {
+        points.push(first);
+        points = simplified(&points, OUTLINE);
+        points.pop();
+    }
+    points
+}
+
+fn in_view(ring: &Ring, view: &View) -> bool {
+    crate::geom::Bounds::of(ring.iter().copied()).meets(view.window)
+}
+
+/// Everything that is not solved copper, in the color of the page.
+fn not_copper(data: &MapData, view: &View, look: &MapLook) -> Group {
+    let mut group = Group::new("not-copper");
+    let mut rest = PathData::coarse();
+    let margin = 1.0;
+    rest.rect(view.x - margin, view.y - margin, view.width() + 2.0 * margin, view.height() + 2.0 * margin);
+    for ring in data.plane.iter().flat_map(Polygon::rings).filter(|ring| in_view(ring, view)) {
+        rest.ring(&ring_on_sheet(ring, view));
+    }
+    let mut shape = Shape::filled(rest, look.style.color.page);
+    shape.even_odd = true;
+    group.shape(shape);
+    let mut idle = PathData::coarse();
+    for ring in data.idle.iter().flat_map(Polygon::rings).filter(|ring| in_view(ring, view)) {
+        idle.ring(&ring_on_sheet(ring, view));
+    }
+    let mut shape = Shape::filled(idle, look.style.color.hair);
+    shape.even_odd = true;
+    group.shape(shape);
+    group
+}
+
+/// Rims of voids and of the plane, and the board's outline.
+fn edges(data: &MapData, view: &View, look: &MapLook) -> Group {
+    let style = look.style;
+    let mut group = Group::new("edges");
+    let (mut voids, mut plane, mut board) = (PathData::coarse(), PathData::coarse(), PathData::coarse());
+    for polygon in data.plane.iter().filter(|polygon| polygon.bounds().meets(view.window)) {
+        plane.ring(&ring_on_sheet(&polygon.outer, view));
+        for hole in polygon.holes.iter().filter(|hole| in_view(hole, view)) {
+            voids.ring(&ring_on_sheet(hole, view));
+        }
+    }
+    for ring in data.outline.0.iter().flat_map(Polygon::rings).filter(|ring| in_view(ring, view)) {
+        board.ring(&ring_on_sheet(ring, view));
+    }
+    let weight = look.weight();
+    group.shape(Shape::stroked(board, style.color.part, style.line.part));
+    group.shape(Shape::stroked(voids, style.color.void_edge, style.line.void_edge * weight));
+    group.shape(Shape::stroked(plane, style.color.plane_edge, style.line.plane_edge * weight));
+    group
+}
+
+/// Boundaries of zones inside the board.
+fn zone_lines(data: &MapData, view: &View, look: &MapLook) -> Group {
+    let style = look.style;
+    let mut group = Group::new("zones");
+    let mut path = PathData::coarse();
+    for (index, (_, outline)) in data.zones.iter().enumerate() {
+        for run in inner_edges(outline, &data.zones[..index], &data.outline) {
+            let points: Vec<(f64, f64)> = run.into_iter().map(|point| view.place(point)).collect();
+            path.line(&simplified(&points, OUTLINE));
+        }
+    }
+    let width = style.line.boundary * if look.small { 0.7 } else { 1.0 };
+    group.shape(Shape::stroked(path.clone(), style.color.page, width + HALO * look.weight()));
+    group.shape(Shape::stroked(path, style.color.boundary, width).dashed(&style.line.boundary_dash));
+    group
+}
+
+/// The parts of a zone's outline that run inside the board, each shared part once.
+fn inner_edges(outline: &Ring, earlier: &[(String, Ring)], board: &Region) -> Vec<Vec<Point>> {
+    const STEP_M: f64 = 0.25e-3;
+    const NEAR_M: f64 = 0.3e-3;
+    let near = |ring: &Ring, point: Point| {
+        ring.iter().zip(ring.iter().cycle().skip(1)).any(|(a, b)| {
+            from_segment((point.x, point.y), (a.x, a.y), (b.x, b.y)) < NEAR_M
+        })
+    };
+    let shown = |point: Point| {
+        board.contains(point)
+            && !board.0.iter().any(|polygon| near(&polygon.outer, point))
+            && !earlier.iter().any(|(_, ring)| near(ring, point))
+    };
+    let mut runs = Vec::new();
+    for (&from, &to) in outline.iter().zip(outline.iter().cycle().skip(1)) {
+        let steps = ((from.distance(to) / STEP_M).ceil() as usize).clamp(1, 4000);
+        let mut run: Vec<Point> = Vec::new();
+        for step in 0..=steps {
+            let point = from + (to - from) * (step as f64 / steps as f64);
+            if shown(point) {
+                run.push(point);
+            } else if run.len() > 1 {
+                runs.push(std::mem::take(&mut run));
+            } else {
+                run.clear();
+            }
+        }
+        if run.len() > 1 {
+            runs.push(run);
+        }
+    }
+    runs
+}
+
+/// Continuous runs of legs, charted or not.
+fn runs(data: &MapData, view: &View, charted: bool) -> Vec<Vec<(f64, f64)>> {
+    let mut all: Vec<Vec<(f64, f64)>> = Vec::new();
+    let mut end: Option<Point> = None;
+    for leg in &data.track {
+        if leg.charted != charted {
+            end = None;
+            continue;
+        }
+        let joins = end.is_some_and(|end| end.distance(leg.from) < 1e-9);
+        match all.last_mut() {
+            Some(run) if joins => run.push(view.place(leg.to)),
+            _ => all.push(vec![view.place(leg.from), view.place(leg.to)]),
+        }
+        end = Some(leg.to);
+    }
+    all
+}
+
+fn track(data: &MapData, view: &View, look: &MapLook) -> Group {
+    let style = look.style;
+    let mut group = Group::new("track");
+    let path_of = |charted| {
+        let mut path = PathData::coarse();
+        for run in runs(data, view, charted) {
+            path.line(&simplified(&run, 0.01));
+        }
+        path
+    };
+    let (case, core) = (style.line.track_case * look.weight(), style.line.track * look.weight());
+    let other = path_of(false);
+    group.shape(Shape::stroked(other.clone(), style.color.page, 0.9 * look.weight()).rounded());
+    group.shape(Shape::stroked(other, style.color.track_case, 0.4 * look.weight()).dashed(&[1.2, 0.8]));
+    let own = path_of(true);
+    group.shape(Shape::stroked(own.clone(), style.color.track_case, case).rounded());
+    group.shape(Shape::stroked(own, style.color.track, core).rounded());
+    group
+}
+
+/// Square of a pin: filled for a driver, open for a receiver.
+pub fn pin_shape(at: (f64, f64), filled: bool, style: &Style, size: f64) -> Vec<Shape> {
+    let square = |side: f64| {
+        let mut path = PathData::new();
+        path.rect(at.0 - 0.5 * side, at.1 - 0.5 * side, side, side);
+        path
+    };
+    let inner = if filled { style.color.track_case } else { style.color.track };
+    vec![
+        Shape::filled(square(size + 0.5), style.color.page),
+        Shape::filled(square(size), style.color.track_case),
+        Shape::filled(square(size - 0.7 * size / PIN), inner),
+    ]
+}
+
+/// Ring with a dot where the return enters or leaves the plane.
+pub fn landing_shape(at: (f64, f64), style: &Style, radius: f64) -> Vec<Shape> {
+    let circle = |radius: f64| {
+        let mut path = PathData::new();
+        path.circle(at, radius);
+        path
+    };
+    vec![
+        Shape::filled(circle(radius + 0.25), style.color.page),
+        Shape::filled(circle(radius), style.color.track_case),
+        Shape::filled(circle(0.7 * radius), style.color.track),
+        Shape::filled(circle(0.3 * radius), style.color.track_case),
+    ]
+}
+
+fn pins(data: &MapData, view: &View, look: &MapLook) -> Group {
+    let mut group = Group::new("pins").clipped(view.x - 2.0, view.y - 2.0, view.width() + 4.0, view.height() + 4.0);
+    let factor = if look.small { 0.55 } else { 1.0 };
+    for &at in data.landings.iter().filter(|&&at| view.window.contains(at)) {
+        for shape in landing_shape(view.place(at), look.style, LANDING * factor) {
+            group.shape(shape);
+        }
+    }
+    for (pin, filled) in [(&data.driver, true), (&data.receiver, false)] {
+        let Some(pin) = pin.as_ref().filter(|pin| view.window.contains(pin.at)) else { continue };
+        for shape in pin_shape(view.place(pin.at), filled, look.style, PIN * factor) {
+            group.shape(shape);
+        }
+    }
+    group
+}
+
+/// Costs of the map for labels.
+fn placer(data: &MapData, view: &View, look: &MapLook) -> Placer {
+    let area = [view.x, view.y, view.x + view.width(), view.y + view.height()];
+    let mut placer = Placer::new(area);
+    let raster = data.density.raster(view, (view.width() as usize).max(1), (view.height() as usize).max(1), &look.scale);
+    placer.add_density(&raster);
+    for charted in [true, false] {
+        for run in runs(data, view, charted) {
+            placer.add_line(&run, 1.2, 2.0);
+        }
+    }
+    for hole in data.plane.iter().flat_map(|polygon| &polygon.holes).filter(|hole| in_view(hole, view)) {
+        let mut points: Vec<(f64, f64)> = hole.iter().map(|&point| view.place(point)).collect();
+        points.extend(points.first().copied());
+        placer.add_line(&simplified(&points, 0.2), 0.4, 0.5);
+    }
+    for (_, outline) in &data.zones {
+        let mut points: Vec<(f64, f64)> = outline.iter().map(|&point| view.place(point)).collect();
+        points.extend(points.first().copied());
+        placer.add_line(&points, 0.5, 1.0);
+    }
+    let spots = data.landings.iter().copied();
+    let pins = [&data.driver, &data.receiver].into_iter().flatten().map(|pin| pin.at);
+    for at in spots.chain(pins) {
+        let (x, y) = view.place(at);
+        placer.add_box([x - 1.6, y - 1.6, x + 1.6, y + 1.6], 3.0);
+    }
+    placer
+}
+
+/// Names of pins, zones and contours.
+fn labels(drawn: &mut DrawnMap, data: &MapData, view: &View, look: &MapLook) {
+    let style = look.style;
+    let size = style.font.label;
+    let mut group = Group::new("labels");
+    for (pin, role) in [(&data.driver, "driver"), (&data.receiver, "receiver")] {
+        let Some(pin) = pin.as_ref().filter(|pin| view.window.contains(pin.at)) else { continue };
+        let name = shortened(Face::NarrowBold, size, &pin.name, 30.0);
+        let text = Text::new(0.0, 0.0, size, Face::NarrowBold, style.color.ink, &format!("{role} {name}"));
+        let spot = view.place(pin.at);
+        let Some(rect) = drawn.placer.label(spot, text.width(), 0.95 * size) else { continue };
+        group.group(leader(spot, rect, style));
+        group.text(placed(text, rect, style));
+    }
+    for (name, outline) in &data.zones {
+        let name = shortened(Face::NarrowBold, size, &name.to_uppercase(), 50.0);
+        let text = Text::new(0.0, 0.0, size, Face::NarrowBold, style.color.boundary, &name);
+        let candidates = zone_boxes(outline, view, text.width(), 0.95 * size);
+        if let Some(rect) = drawn.placer.cheapest(candidates) {
+            group.text(placed(text, rect, style));
+        }
+    }
+    for (rank, contour) in drawn.contours.iter().enumerate() {
+        let text = format!("{} %", SHARES[rank]);
+        let text = Text::new(0.0, 0.0, size, Face::NarrowBold, style.color.ink, &text);
+        let (width, height) = (text.width(), 0.95 * size);
+        let boxes = contour.lines.iter().flat_map(|line| along(line, 3.0)).map(|(x, y)| {
+            ([x - 0.5 * width, y - 0.5 * height, x + 0.5 * width, y + 0.5 * height], 0.0)
+        });
+        let boxes: Vec<(Rect, f64)> = boxes.collect();
+        if let Some(rect) = drawn.placer.cheapest(boxes) {
+            group.text(placed(text, rect, style));
+        }
+    }
+    drawn.group.group(group);
+}
+
+/// Points on a line every `step` mm.
+fn along(line: &[(f64, f64)], step: f64) -> Vec<(f64, f64)> {
+    let mut points = Vec::new();
+    let mut left = step;
+    for pair in line.windows(2) {
+        let (a, b) = (pair[0], pair[1]);
+        let length = libm::hypot(b.0 - a.0, b.1 - a.1);
+        let mut at = left;
+        while at < length {
+            let t = at / length;
+            points.push((a.0 + t * (b.0 - a.0), a.1 + t * (b.1 - a.1)));
+            at += step;
+        }
+        left = at - length;
+    }
+    points
+}
+
+/// A label in its box, baseline a quarter above the bottom.
+pub fn placed(mut text: Text, rect: Rect, style: &Style) -> Text {
+    text.x = rect[0];
+    text.y = rect[3] - 0.2 * text.size;
+    text.anchor = Anchor::Start;
+    text.with_halo(style.color.page)
+}
+
+/// A line from a spot to a box that lies apart from it.
+fn leader(spot: (f64, f64), rect: Rect, style: &Style) -> Group {
+    let mut group = Group::new("leader");
+    let end = (spot.0.clamp(rect[0], rect[2]), spot.1.clamp(rect[1], rect[3]));
+    let length = libm::hypot(end.0 - spot.0, end.1 - spot.1);
+    if length < 4.5 {
+        return group;
+    }
+    let t = 1.6 / length;
+    let start = (spot.0 + t * (end.0 - spot.0), spot.1 + t * (end.1 - spot.1));
+    let mut path = PathData::new();
+    path.line(&[start, end]);
+    group.shape(Shape::stroked(path.clone(), style.color.page, style.line.leader + HALO));
+    group.shape(Shape::stroked(path, style.color.ink, style.line.leader));
+    group
+}
+
+/// Boxes inside a zone, lower ones cheaper.
+fn zone_boxes(outline: &Ring, view: &View, width: f64, height: f64) -> Vec<(Rect, f64)> {
+    let zone = Polygon { outer: outline.clone(), holes: Vec::new() };
+    let (right, bottom) = (view.x + view.width(), view.y + view.height());
+    let mut boxes = Vec::new();
+    let mut y = bottom - height - 1.5;
+    while y > view.y + 1.0 {
+        let mut x = view.x + 1.5;
+        while x + width < right - 1.0 {
+            let rect = [x, y, x + width, y + height];
+            let corners = [(x, y), (x + width, y), (x, y + height), (x + width, y + height)];
+            if corners.iter().all(|&corner| zone.contains(view.back(corner))) {
+                boxes.push((rect, 0.004 * (bottom - y)));
+            }
+            x += 2.0;
+        }
+        y -= 3.0;
+    }
+    boxes
+}

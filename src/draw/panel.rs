@@ -1,0 +1,326 @@
+//! Panels beside a map: key figures, section at the track, locator, words explained.
+
+use super::number::significant;
+use super::path::PathData;
+use super::scale::DensityScale;
+use super::scene::{Group, Shape};
+use super::text::{Anchor, Text, italic, shortened, wrapped};
+use super::view::View;
+use crate::geom::{Bounds, Polygon, Region};
+use crate::style::{Face, Style};
+
+/// Width of a panel in mm.
+pub const WIDTH: f64 = 64.5;
+
+/// A panel drawn from (0, 0) is placed by its caller.
+#[derive(Clone, Debug)]
+pub struct Panel {
+    /// Height in mm.
+    pub height: f64,
+    /// Draws it with its upper left corner at a point.
+    pub kind: PanelKind,
+}
+
+/// What a panel shows.
+#[derive(Clone, Debug)]
+pub enum PanelKind {
+    /// Key figures.
+    Figures(Vec<KeyFigure>),
+    /// Section through the stackup at the track.
+    Section(Section),
+    /// The whole board with the window of the map.
+    Locator {
+        /// Board.
+        outline: Region,
+        /// Window of the map.
+        window: Bounds,
+    },
+    /// Heading and sentences.
+    Words(String, Vec<String>),
+}
+
+/// A figure as a panel shows it. Texts may carry marks.
+#[derive(Clone, Debug, Default, PartialEq)]
+pub struct KeyFigure {
+    /// Its name.
+    pub name: String,
+    /// Value with unit.
+    pub value: String,
+    /// Length of the bar, 0 to 1; none for a figure without a bar.
+    pub bar: Option<f64>,
+    /// Tick of the reference, 0 to 1.
+    pub tick: Option<f64>,
+    /// Lines below: reference in figures, which way is good.
+    pub notes: Vec<String>,
+    /// Rows of a small table: name, bar, tick, value, reference.
+    pub rows: Vec<KeyRow>,
+}
+
+/// A row of a small table.
+#[derive(Clone, Debug, Default, PartialEq)]
+pub struct KeyRow {
+    /// Its name.
+    pub name: String,
+    /// Value with unit.
+    pub value: String,
+    /// Reference with unit.
+    pub reference: String,
+    /// Length of the bar, 0 to 1.
+    pub bar: Option<f64>,
+    /// Tick of the reference, 0 to 1.
+    pub tick: Option<f64>,
+}
+
+/// A copper layer in a section.
+#[derive(Clone, Debug, PartialEq)]
+pub struct SectionLayer {
+    /// Name, as `L2 GND`.
+    pub name: String,
+    /// Whether the net's track lies on it.
+    pub track: bool,
+    /// Whether it is the charted plane.
+    pub plane: bool,
+}
+
+/// A section through the board at the track.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Section {
+    /// Layers shown, from the top.
+    pub layers: Vec<SectionLayer>,
+    /// Height of the track over the plane in meters.
+    pub height_m: f64,
+    /// Width of the track in meters.
+    pub width_m: f64,
+    /// Scale of the density, for the colors of the spread.
+    pub scale: DensityScale,
+}
+
+const HEAD: f64 = 6.6;
+const NOTE: f64 = 4.0;
+
+impl Panel {
+    /// Key figures.
+    pub fn figures(figures: Vec<KeyFigure>) -> Self {
+        let height = HEAD + figures.iter().map(figure_height).sum::<f64>();
+        Self { height, kind: PanelKind::Figures(figures) }
+    }
+
+    /// A section.
+    pub fn section(section: Section) -> Self {
+        Self { height: HEAD + 5.0 + section_pitch(&section) * section.layers.len() as f64, kind: PanelKind::Section(section) }
+    }
+
+    /// A locator.
+    pub fn locator(outline: Region, window: Bounds) -> Self {
+        let board = outline.bounds();
+        let view = View::filling(board, 0.0, 0.0, 40.0, 30.0);
+        let height = if view.turned { 30.0 } else { view.height() };
+        Self { height: HEAD + height + 3.0, kind: PanelKind::Locator { outline, window } }
+    }
+
+    /// Sentences under a heading.
+    pub fn words(heading: &str, sentences: Vec<String>, style: &Style) -> Self {
+        let size = style.font.tick;
+        let lines: usize = sentences.iter().map(|s| wrapped(Face::Narrow, size, s, WIDTH).len()).sum();
+        let height = HEAD + NOTE * lines as f64 + 0.8 * sentences.len() as f64;
+        Self { height, kind: PanelKind::Words(heading.to_owned(), sentences) }
+    }
+
+    /// Draws the panel.
+    pub fn draw(&self, x: f64, y: f64, style: &Style) -> Group {
+        match &self.kind {
+            PanelKind::Figures(figures) => draw_figures(x, y, figures, style),
+            PanelKind::Section(section) => draw_section(x, y, section, style),
+            PanelKind::Locator { outline, window } => draw_locator(x, y, outline, *window, style),
+            PanelKind::Words(heading, sentences) => draw_words(x, y, heading, sentences, style),
+        }
+    }
+}
+
+fn heading(group: &mut Group, x: f64, y: f64, text: &str, style: &Style) {
+    group.text(Text::new(x, y + 3.0, style.font.body, Face::Bold, style.color.ink, text));
+    let mut rule = PathData::new();
+    rule.line(&[(x, y + 4.6), (x + WIDTH, y + 4.6)]);
+    group.shape(Shape::stroked(rule, style.color.rule, style.line.rule));
+}
+
+fn figure_height(figure: &KeyFigure) -> f64 {
+    let bar = if figure.bar.is_some() || figure.tick.is_some() { 3.0 } else { 0.6 };
+    let rows = if figure.rows.is_empty() { 0.0 } else { 4.9 * figure.rows.len() as f64 };
+    5.2 + bar + NOTE * figure.notes.len() as f64 + rows + 2.0
+}
+
+fn bar(group: &mut Group, (x, y, width): (f64, f64, f64), value: Option<f64>, tick: Option<f64>, style: &Style) {
+    let mut ground = PathData::new();
+    ground.rect(x, y, width, 1.8);
+    group.shape(Shape::filled(ground, style.color.hair));
+    if let Some(value) = value {
+        let mut path = PathData::new();
+        path.rect(x, y, width * value.clamp(0.0, 1.0), 1.8);
+        group.shape(Shape::filled(path, style.color.mark));
+    }
+    if let Some(tick) = tick {
+        let at = x + width * tick.clamp(0.0, 1.0);
+        let mut path = PathData::new();
+        path.line(&[(at, y - 0.8), (at, y + 2.6)]);
+        group.shape(Shape::stroked(path.clone(), style.color.page, 1.3));
+        group.shape(Shape::stroked(path, style.color.ink, 0.6));
+    }
+}
+
+fn draw_figures(x: f64, y: f64, figures: &[KeyFigure], style: &Style) -> Group {
+    let mut group = Group::new("key-figures").labeled("group", "key figures");
+    heading(&mut group, x, y, "Key figures", style);
+    let color = style.color;
+    let mut top = y + HEAD;
+    for figure in figures {
+        let base = top + 4.0;
+        group.text(Text::new(x, base, style.font.body, Face::Narrow, color.ink, &figure.name));
+        let value = Text::new(x + WIDTH, base, style.font.value, Face::Bold, color.ink, &figure.value);
+        group.text(value.anchored(Anchor::End));
+        let mut row = top + 5.2;
+        if figure.bar.is_some() || figure.tick.is_some() {
+            bar(&mut group, (x, row + 0.5, WIDTH), figure.bar, figure.tick, style);
+            row += 3.0;
+        } else {
+            row += 0.6;
+        }
+        for note in &figure.notes {
+            row += NOTE;
+            group.text(Text::new(x, row - 0.2, style.font.tick, Face::Narrow, color.ink_soft, note));
+        }
+        for entry in &figure.rows {
+            row += 4.9;
+            let base = row - 1.0;
+            group.text(Text::new(x, base, style.font.label, Face::Narrow, color.ink, &entry.name));
+            bar(&mut group, (x + 9.0, base - 2.0, 20.0), entry.bar, entry.tick, style);
+            let value = Text::new(x + 46.0, base, style.font.label, Face::NarrowBold, color.ink, &entry.value);
+            group.text(value.anchored(Anchor::End));
+            let reference =
+                Text::new(x + WIDTH, base, style.font.tick, Face::Narrow, color.ink_soft, &entry.reference);
+            group.text(reference.anchored(Anchor::End));
+        }
+        top += figure_height(figure);
+    }
+    group
+}
+
+fn draw_words(x: f64, y: f64, title: &str, sentences: &[String], style: &Style) -> Group {
+    let mut group = Group::new("words").labeled("group", title);
+    heading(&mut group, x, y, title, style);
+    let mut base = y + HEAD + 2.4;
+    for sentence in sentences {
+        for line in wrapped(Face::Narrow, style.font.tick, sentence, WIDTH) {
+            group.text(Text::new(x, base, style.font.tick, Face::Narrow, style.color.ink_soft, &line));
+            base += NOTE;
+        }
+        base += 0.8;
+    }
+    group
+}
+
+fn draw_locator(x: f64, y: f64, outline: &Region, window: Bounds, style: &Style) -> Group {
+    let mut group = Group::new("locator").labeled("graphics-object", "place of the map on the board");
+    heading(&mut group, x, y, "Place on the board", style);
+    let mut view = View::filling(outline.bounds(), x, y + HEAD + 1.0, 40.0, 30.0);
+    view = View { x, y: y + HEAD + 1.0, turned: false, ..view };
+    let fit = (40.0 / view.width()).min(30.0 / view.height());
+    view.scale *= fit;
+    let mut board = PathData::coarse();
+    for ring in outline.0.iter().flat_map(Polygon::rings) {
+        let points: Vec<(f64, f64)> = ring.iter().map(|&point| view.place(point)).collect();
+        board.ring(&super::contour::simplified(&points, 0.05));
+    }
+    let mut shape = Shape::filled(board, style.color.panel).outlined(style.color.rule, 0.25);
+    shape.even_odd = true;
+    group.shape(shape);
+    let (a, b) = (view.place(window.min), view.place(window.max));
+    let mut path = PathData::new();
+    path.rect(a.0.min(b.0), a.1.min(b.1), (b.0 - a.0).abs(), (b.1 - a.1).abs());
+    group.shape(Shape::stroked(path, style.color.mark, 0.6));
+    group
+}
+
+fn section_pitch(section: &Section) -> f64 {
+    if section.layers.len() > 4 { 4.6 } else { 5.4 }
+}
+
+/// Profile of a uniform strip over an endless plane relative to the peak of a thin track: (h/w)[atan((u + w/2)/h) -
+/// atan((u - w/2)/h)] (textbook image result).
+fn spread(u: f64, width: f64, height: f64) -> f64 {
+    if width < 1e-3 * height {
+        return 1.0 / (1.0 + (u / height) * (u / height));
+    }
+    height / width * (libm::atan((u + 0.5 * width) / height) - libm::atan((u - 0.5 * width) / height))
+}
+
+fn draw_section(x: f64, y: f64, section: &Section, style: &Style) -> Group {
+    let height_mm = significant(section.height_m * 1e3, 3);
+    let label = format!("section at the track, height {height_mm} mm");
+    let mut group = Group::new("section").labeled("graphics-object", label);
+    heading(&mut group, x, y, "Section at the track, not to scale", style);
+    let color = style.color;
+    let (left, right) = (x + 19.0, x + 47.0);
+    let middle = 0.5 * (left + right);
+    let pitch = section_pitch(section);
+    let row = |index: usize| y + HEAD + 4.6 + pitch * index as f64;
+    let last = section.layers.len().saturating_sub(1);
+    let mut ground = PathData::new();
+    ground.rect(left, row(0) - 0.9, right - left, row(last) - row(0) + 1.8);
+    group.shape(Shape::filled(ground, color.panel));
+    let track = section.layers.iter().position(|layer| layer.track);
+    let plane = section.layers.iter().position(|layer| layer.plane);
+    if let (Some(track), Some(plane)) = (track, plane) {
+        let up = if track < plane { -1.0 } else { 1.0 };
+        spread_shape(&mut group, section, (left, right, row(plane) + 0.6 * up), 0.8 * up * pitch, style);
+    }
+    for (index, layer) in section.layers.iter().enumerate() {
+        let at = row(index);
+        let mut path = PathData::new();
+        if layer.track {
+            path.rect(middle - 2.2, at - 0.6, 4.4, 1.2);
+        } else {
+            path.rect(left, at - if layer.plane { 0.6 } else { 0.35 }, right - left, if layer.plane { 1.2 } else { 0.7 });
+        }
+        let main = layer.track || layer.plane;
+        group.shape(Shape::filled(path, if main { color.ink } else { color.rule }));
+        let (face, ink) = if main { (Face::NarrowBold, color.ink) } else { (Face::Narrow, color.ink_soft) };
+        let name = shortened(face, style.font.tick, &layer.name, left - x - 1.4);
+        group.text(Text::new(x, at + 1.15, style.font.tick, face, ink, &name));
+    }
+    if let (Some(track), Some(plane)) = (track, plane) {
+        let (a, b) = (row(track.min(plane)) + 0.6, row(track.max(plane)) - 0.6);
+        let at = right + 2.4;
+        let mut path = PathData::new();
+        path.line(&[(right + 0.6, a), (at + 1.2, a)]).line(&[(right + 0.6, b), (at + 1.2, b)]).line(&[(at, a), (at, b)]);
+        group.shape(Shape::stroked(path, color.ink, 0.25));
+        let text = format!("{} = {height_mm} mm", italic("h"));
+        group.text(Text::new(at + 2.0, 0.5 * (a + b) + 1.2, style.font.tick, Face::Narrow, color.ink, &text));
+    }
+    group
+}
+
+/// The spread of the return drawn on the plane: slices in the colors of the scale. `rise` is the height of the peak in
+/// mm, negative upwards.
+fn spread_shape(
+    group: &mut Group,
+    section: &Section,
+    (left, right, base): (f64, f64, f64),
+    rise: f64,
+    style: &Style,
+) {
+    const SLICES: usize = 56;
+    let reach = 6.0 * section.height_m;
+    let peak = spread(0.0, section.width_m, section.height_m);
+    let step = (right - left) / SLICES as f64;
+    let anchor = 1.0 / (std::f64::consts::PI * section.height_m);
+    for slice in 0..SLICES {
+        let u = ((slice as f64 + 0.5) / SLICES as f64 * 2.0 - 1.0) * reach;
+        let value = spread(u, section.width_m, section.height_m);
+        let color = style.density.gradient.at(section.scale.place(section.scale.level_db(value * anchor)));
+        let high = rise * value / peak;
+        let mut path = PathData::coarse();
+        path.rect(left + slice as f64 * step, base.min(base + high), step, high.abs());
+        group.shape(Shape::filled(path, color).outlined(color, 0.05));
+    }
+}

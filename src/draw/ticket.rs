@@ -1,0 +1,164 @@
+//! The ticket map: one net, one plane, one frequency, on one A4 page that says the result in words.
+
+use super::frame::{LegendEntry, caution, color_scale, legend, rulers, scale_bar, title_strip};
+use super::map::{MapData, MapLook, draw_map};
+use super::panel::{Panel, WIDTH};
+use super::scale::DensityScale;
+use super::scene::{Group, Scene};
+use super::text::{Text, italic, marked_width, wrapped};
+use super::view::View;
+use crate::geom::{Bounds, Point};
+use crate::style::{Face, Style};
+
+/// Everything on a ticket map, in words and data.
+#[derive(Clone, Debug)]
+pub struct TicketSheet {
+    /// The result in one line; may carry marks.
+    pub headline: String,
+    /// What is drawn; may carry marks.
+    pub lead: String,
+    /// The map.
+    pub map: MapData,
+    /// Part of the board that is drawn.
+    pub window: Bounds,
+    /// Point that the rulers count from.
+    pub origin: Point,
+    /// Scale of the set.
+    pub scale: DensityScale,
+    /// Panels in reading order.
+    pub panels: Vec<Panel>,
+    /// Fields of the title strip.
+    pub fields: Vec<(&'static str, String)>,
+    /// Caution.
+    pub caution: String,
+    /// Title of the file.
+    pub title: String,
+    /// The result in sentences.
+    pub description: String,
+    /// Picture number.
+    pub number: String,
+    /// Machine-readable facts.
+    pub facts: Vec<(String, String)>,
+    /// Address of the contact sheet, relative to this picture.
+    pub index: Option<String>,
+}
+
+const MAP_X: f64 = 17.0;
+const MAP_Y: f64 = 28.5;
+const MAP_WIDTH: f64 = 198.0;
+const MAP_HEIGHT: f64 = 125.0;
+const STRIP_Y: f64 = 188.4;
+const GAP: f64 = 9.0;
+
+/// The scene of a ticket map.
+pub fn scene(sheet: &TicketSheet, style: &Style) -> Scene {
+    let (width, margin) = (style.ticket.width, style.ticket.margin[0]);
+    let right = width - margin;
+    let mut scene = Scene {
+        width,
+        height: style.ticket.height,
+        px: style.ticket.px,
+        page: style.color.page,
+        fallback: style.font.fallback.clone(),
+        title: sheet.title.clone(),
+        description: sheet.description.clone(),
+        caution: sheet.caution.clone(),
+        number: sheet.number.clone(),
+        facts: sheet.facts.clone(),
+        items: Vec::new(),
+    };
+    scene.group(head(sheet, margin, right - margin, style));
+    let view = View::fitted(sheet.window, MAP_X, MAP_Y, MAP_WIDTH, MAP_HEIGHT);
+    let look = MapLook { style, scale: sheet.scale, px_per_mm: style.ticket.px_per_mm(), small: false };
+    let drawn = draw_map(&sheet.map, &view, &look, &sheet.title);
+    scene.group(drawn.group);
+    scene.group(rulers(&view, sheet.origin, style));
+
+    let block = view.width().max(110.0);
+    let mut y = MAP_Y + view.height() + 11.0;
+    let mut caption = Group::new("scale-caption");
+    let anchor = super::number::significant(sheet.scale.anchor(), 3);
+    let text = format!(
+        "Return current density per ampere in the net. 0 dB is 1/(\u{3c0}{}) = {anchor} A/m per A, the density under a straight thin track over unbroken copper.",
+        italic("h")
+    );
+    for line in wrapped(Face::Narrow, style.font.label, &text, block) {
+        caption.text(Text::new(MAP_X, y, style.font.label, Face::Narrow, style.color.ink, &line));
+        y += 4.4;
+    }
+    scene.group(caption);
+    y += 2.6;
+    scene.group(color_scale(MAP_X, y, block - 24.0, &sheet.scale, &drawn.contours, style));
+    y += 13.6;
+    let (group, last) = legend(MAP_X, y, block - 42.0, &entries(&sheet.map), style);
+    scene.group(group);
+    scene.group(scale_bar(&view, MAP_X + block, y - 1.1, style));
+    let bottom = last + 3.0;
+
+    for (panel, (x, y)) in sheet.panels.iter().zip(slots(&sheet.panels, block, bottom, right)) {
+        scene.group(panel.draw(x, y, style));
+    }
+    scene.group(title_strip(margin, STRIP_Y, right - margin, &sheet.fields, style));
+    let lines = wrapped(Face::Narrow, style.font.tick, &sheet.caution, right - margin - 6.0).len();
+    let first = if lines > 1 { 203.2 } else { 204.6 };
+    scene.group(caution(margin, first, right - margin, &sheet.caution, style));
+    scene
+}
+
+fn head(sheet: &TicketSheet, x: f64, width: f64, style: &Style) -> Group {
+    let mut group = Group::new("headline");
+    if let Some(index) = &sheet.index {
+        group.link = Some(index.clone());
+    }
+    let wanted = marked_width(Face::Bold, style.font.headline, &sheet.headline);
+    let size = (style.font.headline * (width / wanted).min(1.0)).max(0.75 * style.font.headline);
+    group.text(Text::new(x, 14.6, size, Face::Bold, style.color.ink, &sheet.headline));
+    group.text(Text::new(x, 21.2, style.font.lead, Face::Regular, style.color.ink_soft, &sheet.lead));
+    group
+}
+
+fn entries(map: &MapData) -> Vec<LegendEntry> {
+    let mut all = vec![LegendEntry::Track];
+    if map.track.iter().any(|leg| !leg.charted) {
+        all.push(LegendEntry::OtherTrack);
+    }
+    all.push(LegendEntry::NoCopper);
+    if !map.idle.is_empty() {
+        all.push(LegendEntry::IdleCopper);
+    }
+    if !map.zones.is_empty() {
+        all.push(LegendEntry::Boundary);
+    }
+    if map.driver.is_some() {
+        all.push(LegendEntry::Driver);
+    }
+    if map.receiver.is_some() {
+        all.push(LegendEntry::Receiver);
+    }
+    all.push(LegendEntry::Landing);
+    all
+}
+
+/// Upper left corners of panels: columns to the right of the map, filled from the right-most room down; then columns
+/// under the map. A panel that fits nowhere is left out, later ones may still fit.
+fn slots(panels: &[Panel], block: f64, bottom: f64, right: f64) -> Vec<(f64, f64)> {
+    let start = MAP_X + block + GAP;
+    let count = (((right - start + GAP) / (WIDTH + GAP)).floor() as usize).max(1);
+    let mut columns: Vec<(f64, f64)> = (0..count)
+        .map(|index| (right - WIDTH - (count - 1 - index) as f64 * (WIDTH + GAP), MAP_Y))
+        .collect();
+    let below = ((block + GAP) / (WIDTH + GAP)).floor() as usize;
+    columns.extend((0..below).map(|index| (MAP_X + index as f64 * (WIDTH + GAP), bottom)));
+    let mut places = Vec::new();
+    for panel in panels {
+        let free = columns.iter_mut().find(|(_, y)| *y + panel.height <= STRIP_Y - 3.0);
+        match free {
+            Some((x, y)) => {
+                places.push((*x, *y));
+                *y += panel.height + 4.0;
+            }
+            None => break,
+        }
+    }
+    places
+}
