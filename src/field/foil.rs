@@ -3,7 +3,7 @@
 //! gamma = (1 + j)/delta, delta = sqrt(2/(w mu0 sigma)), Zs = (gamma/(2 sigma)) coth(gamma t/2): equal field on both
 //! faces, total current (Wheeler 1942; Ramo, Whinnery, Van Duzer, from memory). sigma follows the temperature.
 //! Range: smooth copper; roughness adds loss above about 1 GHz and is not modelled.
-//! Checked by: `foil_matches_the_published_table`.
+//! Checked by: `foil_matches_the_published_table`, and `a_thick_foil_is_a_sheet_at_its_depth` in tests/field.
 
 use crate::unit::constants::{COPPER_ALPHA_20C, COPPER_SIGMA_20C, MU0};
 use num_complex::Complex64;
@@ -31,10 +31,16 @@ impl Foil {
         self.resistance_ohm() / self.tanh_ratio(frequency_hz)
     }
 
-    /// Distance in metres of the current's centroid from the face that the field is on: t/2 at low frequency, half
-    /// the skin depth at high; the real part of tanh(gamma t/2)/gamma.
-    pub fn current_depth_m(&self, frequency_hz: f64) -> f64 {
-        0.5 * self.thickness_m * self.tanh_ratio(frequency_hz).re
+    /// Depth in metres below the facing copper face at which a sheet stands for the foil, for a current at
+    /// `height_m` over that face: (t/2)/(1 + |lam| h), lam = j w mu0/(2 Zs).
+    ///
+    /// The field on the two faces gives the sheet law the factor S = (1 + e^{-kt})/2, so to first order in kt the
+    /// current of wave number k is e^{-kh} lam/(lam + k) times 1 - (kt/2) k/(lam + k), and k is about 1/h.
+    /// Range: within 3.5 % of the thick foil at the peak for t <= 0.35 h (the face alone errs by 7 %, mid-copper by
+    /// 14 %). Checked by: `a_thick_foil_is_a_sheet_at_its_depth` in tests/field.
+    pub fn current_depth_m(&self, frequency_hz: f64, height_m: f64) -> f64 {
+        let decay = std::f64::consts::PI * frequency_hz * MU0 / self.zs_ohm(frequency_hz).norm();
+        0.5 * self.thickness_m / (1.0 + decay * height_m)
     }
 
     /// tanh(z)/z with z = gamma t/2.
@@ -68,6 +74,6 @@ mod tests {
             assert!((zs.re / re - 1.0).abs() < 2e-9 && (zs.im / im - 1.0).abs() < 2e-8, "{zs} at {hertz}");
         }
         assert!((Foil::new(34.3e-6, 85.0).resistance_ohm() / 0.000631069669 - 1.0).abs() < 1e-8);
-        assert!((Foil::new(35e-6, 20.0).current_depth_m(0.0) - 17.5e-6).abs() < 1e-12);
+        assert!((Foil::new(35e-6, 20.0).current_depth_m(0.0, 1e-3) - 17.5e-6).abs() < 1e-12);
     }
 }

@@ -1,9 +1,9 @@
 //! What drives the plane: the track as source strips at their heights, and the landings as patches of cells.
 //!
-//! Height: the current lies at mid-copper while it fills the foil and at the facing surface once the skin depth is
-//! small; in between at Re[tanh(gamma t/2)/gamma] below the face, the centroid of the one-sided profile
-//! cosh(gamma (t - z)). Profile: even across the width while the skin depth exceeds sqrt(w t/2), that is below
-//! f = 2 Rs/(pi mu0 w) (the strip's own crossover, w/2 against the decay length 2 Rs/(w mu0)), edge-crowded above.
+//! Height: the current lies at mid-copper at low frequency and at the facing surface at high; see
+//! [`Foil::current_depth_m`], which is applied to plane and track alike.
+//! Profile: even across the width below f = 2 Rs/(pi mu0 w), where the skin depth is sqrt(w t/2) and half the width
+//! is the decay length 2 Rs/(w mu0) of the track's own foil; edge-crowded above.
 
 use super::foil::Foil;
 use super::mask::{Mask, NO_ISLAND};
@@ -36,9 +36,9 @@ impl<'a> Source<'a> {
 
     /// Height of a leg's current over the plane's current in metres.
     pub fn height_m(&self, leg: &TrackLeg, frequency_hz: f64) -> f64 {
-        self.board.stackup.gap_m(leg.layer, self.plane_layer)
-            + self.foil(leg.layer).current_depth_m(frequency_hz)
-            + self.foil(self.plane_layer).current_depth_m(frequency_hz)
+        let gap_m = self.board.stackup.gap_m(leg.layer, self.plane_layer);
+        let depth_m = |layer| self.foil(layer).current_depth_m(frequency_hz, gap_m);
+        gap_m + depth_m(leg.layer) + depth_m(self.plane_layer)
     }
 
     /// Length-weighted mean of [`Self::height_m`] in metres.

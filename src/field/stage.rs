@@ -43,7 +43,7 @@ impl Stage {
 }
 
 /// Most cells of all stages that are kept; the least recently used go first.
-const KEPT_CELLS: usize = 3_000_000;
+const KEPT_CELLS: usize = 1_500_000;
 
 /// Keeps stages. Several threads may ask; each stage is made once.
 #[derive(Debug, Default)]

@@ -118,6 +118,30 @@ fn the_formula_here_matches_the_table() {
 }
 
 #[test]
+fn a_thick_foil_is_a_sheet_at_its_depth() {
+    // Source: two-port of a foil of 35 um under a filament h over its face, exact integral, K(0)/I in 1/m.
+    for (h, hertz, re, im) in [
+        (0.1e-3, 1e3, 3.98804244, 16.3160114),
+        (0.1e-3, 1e5, 329.839626, 492.983618),
+        (0.1e-3, 1e6, 1646.98271, 1009.55282),
+        (0.1e-3, 1e7, 2897.76015, 394.982955),
+        (0.1e-3, 1e8, 3076.07143, 104.025481),
+        (0.2e-3, 1e4, 38.0170691, 89.3183028),
+        (0.2e-3, 1e6, 1136.2116, 478.211083),
+        (0.2e-3, 1e7, 1532.55374, 105.207765),
+        (0.2e-3, 1e8, 1564.87891, 26.1559074),
+        (1.0e-3, 1e6, 307.583555, 36.9824297),
+    ] {
+        let foil = ebbmap::field::Foil::new(35e-6, 20.0);
+        let height = h + foil.current_depth_m(hertz, h);
+        let found = sheet_formula(0.0, height, 0.0, 0.0, hertz, foil.zs_ohm(hertz));
+        let exact = Complex64::new(re, im);
+        let error = (found - exact).norm() / exact.norm();
+        assert!(error < 0.035, "h {h:e} m at {hertz:e} Hz: {error}");
+    }
+}
+
+#[test]
 fn shares_and_half_widths_of_a_straight_track() {
     for hertz in [1e6, 1e8] {
         let mut scene = wide(0.2, 160.0, 0.5);
