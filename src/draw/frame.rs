@@ -16,10 +16,17 @@ use crate::style::{Face, Gradient, Style};
 pub fn rulers(view: &View, origin: Point, style: &Style) -> Group {
     let mut group = Group::new("rulers").labeled("graphics-object", "rulers in millimeters");
     let step = round_step(11.0 / view.scale);
-    let minor = step / if (step / libm::pow(10.0, libm::floor(libm::log10(step) + 1e-9))).round() == 2.0 { 4.0 } else { 5.0 };
+    let minor = step
+        / if (step / libm::pow(10.0, libm::floor(libm::log10(step) + 1e-9))).round() == 2.0 {
+            4.0
+        } else {
+            5.0
+        };
     let (bottom, size) = (view.y + view.height(), style.font.tick);
     let mut ticks = PathData::coarse();
-    let range = |low: f64, high: f64| (libm::ceil(low / minor - 1e-6) as i64)..=(libm::floor(high / minor + 1e-6) as i64);
+    let range = |low: f64, high: f64| {
+        (libm::ceil(low / minor - 1e-6) as i64)..=(libm::floor(high / minor + 1e-6) as i64)
+    };
     let major = |n: i64| n.rem_euclid((step / minor).round() as i64) == 0;
     let number = |n: i64| {
         let text = coordinate(n as f64 * minor);
@@ -38,7 +45,14 @@ pub fn rulers(view: &View, origin: Point, style: &Style) -> Group {
         let y = bottom - (n as f64 * minor - low.y) * view.scale;
         ticks.line(&[(view.x, y), (view.x - if major(n) { 1.5 } else { 0.8 }, y)]);
         if major(n) {
-            let text = Text::new(view.x - 2.2, y + 0.35 * size, size, Face::Narrow, style.color.ink_soft, &number(n));
+            let text = Text::new(
+                view.x - 2.2,
+                y + 0.35 * size,
+                size,
+                Face::Narrow,
+                style.color.ink_soft,
+                &number(n),
+            );
             group.text(text.anchored(Anchor::End));
         }
     }
@@ -49,7 +63,11 @@ pub fn rulers(view: &View, origin: Point, style: &Style) -> Group {
 /// The smallest of 1, 2, 5, 10, ... that is at least `least`.
 pub fn round_step(least: f64) -> f64 {
     let decade = libm::pow(10.0, libm::floor(libm::log10(least)));
-    [1.0, 2.0, 5.0, 10.0].into_iter().map(|factor| factor * decade).find(|step| *step >= least * 0.999).unwrap_or(10.0 * decade)
+    [1.0, 2.0, 5.0, 10.0]
+        .into_iter()
+        .map(|factor| factor * decade)
+        .find(|step| *step >= least * 0.999)
+        .unwrap_or(10.0 * decade)
 }
 
 /// A bar that shows a round length of the board, right-aligned at `right`, and the scale in figures.
@@ -72,12 +90,20 @@ pub fn scale_bar(view: &View, right: f64, y: f64, style: &Style) -> Group {
 
 /// The color scale from `x` to `x + width` at `y`, 5.2 mm high: densities above, dB below, contours inside. The pointed
 /// end at the right is the color of what lies above the scale.
-pub fn color_scale(x: f64, y: f64, width: f64, scale: &DensityScale, contours: &[Contour], style: &Style) -> Group {
+pub fn color_scale(
+    x: f64,
+    y: f64,
+    width: f64,
+    scale: &DensityScale,
+    contours: &[Contour],
+    style: &Style,
+) -> Group {
     const HEIGHT: f64 = 5.2;
     let label = format!("color scale from {} dB to 0 dB", coordinate(-scale.range_db));
     let mut group = Group::new("color-scale").labeled("graphics-object", label.clone());
     let indices: Vec<u8> = (0..Gradient::LEVELS as u8).collect();
-    let palette = style.density.gradient.colors().iter().flat_map(|color| [color.0, color.1, color.2]).collect();
+    let palette =
+        style.density.gradient.colors().iter().flat_map(|color| [color.0, color.1, color.2]).collect();
     let png = indexed_png(Gradient::LEVELS as u32, 1, &indices, palette);
     group.items.push(Item::Image(Image { x, y, width, height: HEIGHT, png, label }));
     let mut point = PathData::new();
@@ -234,10 +260,14 @@ fn legend_sample(group: &mut Group, entry: LegendEntry, (x, y): (f64, f64), widt
             group.shape(Shape::stroked(line, style.color.track_case, 0.4).dashed(&[1.2, 0.8]));
         }
         LegendEntry::NoCopper => {
-            group.shape(Shape::filled(area, style.color.page).outlined(style.color.void_edge, style.line.void_edge));
+            group.shape(
+                Shape::filled(area, style.color.page).outlined(style.color.void_edge, style.line.void_edge),
+            );
         }
         LegendEntry::IdleCopper => {
-            group.shape(Shape::filled(area, style.color.hair).outlined(style.color.rule, style.line.void_edge));
+            group.shape(
+                Shape::filled(area, style.color.hair).outlined(style.color.rule, style.line.void_edge),
+            );
         }
         LegendEntry::Boundary => {
             let shape = Shape::stroked(line, style.color.boundary, style.line.boundary);

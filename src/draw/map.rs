@@ -238,9 +238,9 @@ fn inner_edges(outline: &Ring, earlier: &[(String, Ring)], board: &Region) -> Ve
     const STEP_M: f64 = 0.25e-3;
     const NEAR_M: f64 = 0.3e-3;
     let near = |ring: &Ring, point: Point| {
-        ring.iter().zip(ring.iter().cycle().skip(1)).any(|(a, b)| {
-            from_segment((point.x, point.y), (a.x, a.y), (b.x, b.y)) < NEAR_M
-        })
+        ring.iter()
+            .zip(ring.iter().cycle().skip(1))
+            .any(|(a, b)| from_segment((point.x, point.y), (a.x, a.y), (b.x, b.y)) < NEAR_M)
     };
     let shown = |point: Point| {
         board.contains(point)
@@ -338,7 +338,8 @@ pub fn landing_shape(at: (f64, f64), style: &Style, radius: f64) -> Vec<Shape> {
 }
 
 fn pins(data: &MapData, view: &View, look: &MapLook) -> Group {
-    let mut group = Group::new("pins").clipped(view.x - 2.0, view.y - 2.0, view.width() + 4.0, view.height() + 4.0);
+    let mut group =
+        Group::new("pins").clipped(view.x - 2.0, view.y - 2.0, view.width() + 4.0, view.height() + 4.0);
     let factor = if look.small { 0.55 } else { 1.0 };
     for &at in data.landings.iter().filter(|&&at| view.window.contains(at)) {
         for shape in landing_shape(view.place(at), look.style, LANDING * factor) {
@@ -358,7 +359,12 @@ fn pins(data: &MapData, view: &View, look: &MapLook) -> Group {
 fn placer(data: &MapData, view: &View, look: &MapLook) -> Placer {
     let area = [view.x, view.y, view.x + view.width(), view.y + view.height()];
     let mut placer = Placer::new(area);
-    let raster = data.density.raster(view, (view.width() as usize).max(1), (view.height() as usize).max(1), &look.scale);
+    let raster = data.density.raster(
+        view,
+        (view.width() as usize).max(1),
+        (view.height() as usize).max(1),
+        &look.scale,
+    );
     placer.add_density(&raster);
     for charted in [true, false] {
         for run in runs(data, view, charted) {
@@ -410,9 +416,11 @@ fn labels(drawn: &mut DrawnMap, data: &MapData, view: &View, look: &MapLook) {
         let text = format!("{} %", SHARES[rank]);
         let text = Text::new(0.0, 0.0, size, Face::NarrowBold, style.color.ink, &text);
         let (width, height) = (text.width(), 0.95 * size);
-        let boxes = contour.lines.iter().flat_map(|line| along(line, 3.0)).map(|(x, y)| {
-            ([x - 0.5 * width, y - 0.5 * height, x + 0.5 * width, y + 0.5 * height], 0.0)
-        });
+        let boxes = contour
+            .lines
+            .iter()
+            .flat_map(|line| along(line, 3.0))
+            .map(|(x, y)| ([x - 0.5 * width, y - 0.5 * height, x + 0.5 * width, y + 0.5 * height], 0.0));
         let boxes: Vec<(Rect, f64)> = boxes.collect();
         if let Some(rect) = drawn.placer.cheapest(boxes) {
             group.text(placed(text, rect, style));

@@ -16,8 +16,8 @@ pub mod png;
 mod scale;
 mod scene;
 pub mod svg;
-pub mod ticket;
 mod text;
+pub mod ticket;
 mod view;
 
 pub use font::width_mm;
@@ -25,5 +25,5 @@ pub use number::{grouped, significant, with_prefix};
 pub use path::PathData;
 pub use scale::DensityScale;
 pub use scene::{Group, Image, Item, Scene, Shape, TextBox};
-pub use text::{Span, Anchor, Text, italic, plain, raised, shortened, wrapped};
+pub use text::{Anchor, Span, Text, italic, plain, raised, shortened, wrapped};
 pub use view::View;

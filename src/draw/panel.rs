@@ -107,7 +107,10 @@ impl Panel {
 
     /// A section.
     pub fn section(section: Section) -> Self {
-        Self { height: HEAD + 5.0 + section_pitch(&section) * section.layers.len() as f64, kind: PanelKind::Section(section) }
+        Self {
+            height: HEAD + 5.0 + section_pitch(&section) * section.layers.len() as f64,
+            kind: PanelKind::Section(section),
+        }
     }
 
     /// A locator.
@@ -150,7 +153,13 @@ fn figure_height(figure: &KeyFigure) -> f64 {
     5.2 + bar + NOTE * figure.notes.len() as f64 + rows + 2.0
 }
 
-fn bar(group: &mut Group, (x, y, width): (f64, f64, f64), value: Option<f64>, tick: Option<f64>, style: &Style) {
+fn bar(
+    group: &mut Group,
+    (x, y, width): (f64, f64, f64),
+    value: Option<f64>,
+    tick: Option<f64>,
+    style: &Style,
+) {
     let mut ground = PathData::new();
     ground.rect(x, y, width, 1.8);
     group.shape(Shape::filled(ground, style.color.hair));
@@ -194,7 +203,8 @@ fn draw_figures(x: f64, y: f64, figures: &[KeyFigure], style: &Style) -> Group {
             let base = row - 1.0;
             group.text(Text::new(x, base, style.font.label, Face::Narrow, color.ink, &entry.name));
             bar(&mut group, (x + 9.0, base - 2.0, 20.0), entry.bar, entry.tick, style);
-            let value = Text::new(x + 46.0, base, style.font.label, Face::NarrowBold, color.ink, &entry.value);
+            let value =
+                Text::new(x + 46.0, base, style.font.label, Face::NarrowBold, color.ink, &entry.value);
             group.text(value.anchored(Anchor::End));
             let reference =
                 Text::new(x + WIDTH, base, style.font.tick, Face::Narrow, color.ink_soft, &entry.reference);
@@ -280,7 +290,12 @@ fn draw_section(x: f64, y: f64, section: &Section, style: &Style) -> Group {
         if layer.track {
             path.rect(middle - 2.2, at - 0.6, 4.4, 1.2);
         } else {
-            path.rect(left, at - if layer.plane { 0.6 } else { 0.35 }, right - left, if layer.plane { 1.2 } else { 0.7 });
+            path.rect(
+                left,
+                at - if layer.plane { 0.6 } else { 0.35 },
+                right - left,
+                if layer.plane { 1.2 } else { 0.7 },
+            );
         }
         let main = layer.track || layer.plane;
         group.shape(Shape::filled(path, if main { color.ink } else { color.rule }));
@@ -292,7 +307,9 @@ fn draw_section(x: f64, y: f64, section: &Section, style: &Style) -> Group {
         let (a, b) = (row(track.min(plane)) + 0.6, row(track.max(plane)) - 0.6);
         let at = right + 2.4;
         let mut path = PathData::new();
-        path.line(&[(right + 0.6, a), (at + 1.2, a)]).line(&[(right + 0.6, b), (at + 1.2, b)]).line(&[(at, a), (at, b)]);
+        path.line(&[(right + 0.6, a), (at + 1.2, a)])
+            .line(&[(right + 0.6, b), (at + 1.2, b)])
+            .line(&[(at, a), (at, b)]);
         group.shape(Shape::stroked(path, color.ink, 0.25));
         let text = format!("{} = {height_mm} mm", italic("h"));
         group.text(Text::new(at + 2.0, 0.5 * (a + b) + 1.2, style.font.tick, Face::Narrow, color.ink, &text));

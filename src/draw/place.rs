@@ -52,12 +52,8 @@ impl Placer {
     pub fn add_line(&mut self, points: &[(f64, f64)], reach: f64, cost: f64) {
         for pair in points.windows(2) {
             let (a, b) = (pair[0], pair[1]);
-            let rect = [
-                a.0.min(b.0) - reach,
-                a.1.min(b.1) - reach,
-                a.0.max(b.0) + reach,
-                a.1.max(b.1) + reach,
-            ];
+            let rect =
+                [a.0.min(b.0) - reach, a.1.min(b.1) - reach, a.0.max(b.0) + reach, a.1.max(b.1) + reach];
             self.each(rect, |cell, at| {
                 if super::contour::from_segment(at, a, b) <= reach {
                     *cell += cost;
@@ -77,7 +73,8 @@ impl Placer {
     }
 
     fn each(&mut self, rect: Rect, mut change: impl FnMut(&mut f64, (f64, f64))) {
-        let index = |value: f64, low: f64, count: usize| (((value - low) / STEP).max(0.0) as usize).min(count);
+        let index =
+            |value: f64, low: f64, count: usize| (((value - low) / STEP).max(0.0) as usize).min(count);
         let (x0, x1) = (index(rect[0], self.area[0], self.nx), index(rect[2] + STEP, self.area[0], self.nx));
         let (y0, y1) = (index(rect[1], self.area[1], self.ny), index(rect[3] + STEP, self.area[1], self.ny));
         for iy in y0..y1 {

@@ -144,9 +144,8 @@ fn entries(map: &MapData) -> Vec<LegendEntry> {
 fn slots(panels: &[Panel], block: f64, bottom: f64, right: f64) -> Vec<(f64, f64)> {
     let start = MAP_X + block + GAP;
     let count = (((right - start + GAP) / (WIDTH + GAP)).floor() as usize).max(1);
-    let mut columns: Vec<(f64, f64)> = (0..count)
-        .map(|index| (right - WIDTH - (count - 1 - index) as f64 * (WIDTH + GAP), MAP_Y))
-        .collect();
+    let mut columns: Vec<(f64, f64)> =
+        (0..count).map(|index| (right - WIDTH - (count - 1 - index) as f64 * (WIDTH + GAP), MAP_Y)).collect();
     let below = ((block + GAP) / (WIDTH + GAP)).floor() as usize;
     columns.extend((0..below).map(|index| (MAP_X + index as f64 * (WIDTH + GAP), bottom)));
     let mut places = Vec::new();

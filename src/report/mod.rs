@@ -6,9 +6,14 @@ mod look;
 mod manifest;
 pub mod numbers;
 mod plan;
+mod picture;
+mod ticket;
+mod words;
 
 pub use findings::{Findings, Subject};
 pub use json::json;
 pub use look::Look;
 pub use manifest::{Manifest, sha256_hex};
 pub use plan::PlanAccount;
+pub use picture::Picture;
+pub use ticket::{TicketInput, ticket, ticket_scene};
