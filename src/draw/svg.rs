@@ -95,9 +95,11 @@ impl Writer {
         }
         let stack = |family: &str| format!("font-family:\"{family}\",{}", legal(&scene.fallback));
         self.text.push_str("text{font-kerning:none;font-variant-ligatures:none;stroke-linejoin:round}\n");
-        self.text.push_str(&format!(".s,.n{{font-weight:400;font-style:normal}}.s{{{}}}.n{{{}}}",
+        self.text.push_str(&format!(
+            ".s,.n{{font-weight:400;font-style:normal}}.s{{{}}}.n{{{}}}",
             stack("Ebbmap Sans"),
-            stack("Ebbmap Narrow")));
+            stack("Ebbmap Narrow")
+        ));
         self.text.push_str(".b{font-weight:600}.i{font-style:italic}\n</style>\n");
         self.text.push_str("<rect");
         self.attribute("width", &width);

@@ -5,8 +5,8 @@ mod json;
 mod look;
 mod manifest;
 pub mod numbers;
-mod plan;
 mod picture;
+mod plan;
 mod ticket;
 mod words;
 
@@ -14,6 +14,6 @@ pub use findings::{Findings, Subject};
 pub use json::json;
 pub use look::Look;
 pub use manifest::{Manifest, sha256_hex};
-pub use plan::PlanAccount;
 pub use picture::Picture;
+pub use plan::PlanAccount;
 pub use ticket::{TicketInput, ticket, ticket_scene};
