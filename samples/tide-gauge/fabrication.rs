@@ -199,7 +199,8 @@ fn profile(design: &Design) -> Sheet {
 }
 
 fn drill(design: &Design, plated: bool) -> String {
-    let function = if plated { format!("Plated,1,{N_LAYERS},PTH") } else { format!("NonPlated,1,{N_LAYERS},NPTH") };
+    let function =
+        if plated { format!("Plated,1,{N_LAYERS},PTH") } else { format!("NonPlated,1,{N_LAYERS},NPTH") };
     // Tools: diameter in micrometres, function, places.
     let mut tools: Vec<(i64, &str, Vec<Xy>)> = Vec::new();
     let mut add = |diameter: f64, function: &'static str, at: Xy| {
@@ -239,7 +240,9 @@ fn job(design: &Design, listed: &[(String, String, &str)]) -> String {
     let dielectric: f64 = DIELECTRICS.iter().map(|sheet| sheet.0).sum();
     let thickness = dielectric + FOIL * N_LAYERS as f64 + 0.04;
     let mut text = String::from("{\n  \"Header\": {\n    \"GenerationSoftware\": {\n");
-    text.push_str("      \"Vendor\": \"Saltmarsh Instruments\",\n      \"Application\": \"board generator\",\n");
+    text.push_str(
+        "      \"Vendor\": \"Saltmarsh Instruments\",\n      \"Application\": \"board generator\",\n",
+    );
     text.push_str("      \"Version\": \"1\"\n    }\n  },\n  \"GeneralSpecs\": {\n");
     let _ = writeln!(
         text,
@@ -259,7 +262,8 @@ fn job(design: &Design, listed: &[(String, String, &str)]) -> String {
     text.push_str("    { \"Type\": \"SolderMask\", \"Thickness\": 0.02, \"Name\": \"top mask\" },\n");
     for layer in 0..N_LAYERS {
         let number = layer + 1;
-        let _ = writeln!(text, "    {{ \"Type\": \"Copper\", \"Thickness\": {FOIL}, \"Name\": \"L{number}\" }},");
+        let _ =
+            writeln!(text, "    {{ \"Type\": \"Copper\", \"Thickness\": {FOIL}, \"Name\": \"L{number}\" }},");
         if let Some((thickness, permittivity, name)) = DIELECTRICS.get(layer) {
             let _ = writeln!(
                 text,
@@ -269,6 +273,8 @@ fn job(design: &Design, listed: &[(String, String, &str)]) -> String {
             );
         }
     }
-    text.push_str("    { \"Type\": \"SolderMask\", \"Thickness\": 0.02, \"Name\": \"bottom mask\" }\n  ]\n}\n");
+    text.push_str(
+        "    { \"Type\": \"SolderMask\", \"Thickness\": 0.02, \"Name\": \"bottom mask\" }\n  ]\n}\n",
+    );
     text
 }

@@ -30,7 +30,9 @@ fn main() {
 fn files() -> Vec<(String, String)> {
     let mut all = Vec::new();
     for (folder, design) in [("small/fab", small::small())] {
-        all.extend(fabrication::files(&design).into_iter().map(|(name, text)| (format!("{folder}/{name}"), text)));
+        all.extend(
+            fabrication::files(&design).into_iter().map(|(name, text)| (format!("{folder}/{name}"), text)),
+        );
     }
     all
 }

@@ -21,7 +21,8 @@ pub enum Body {
 fn point_segment(p: Xy, a: Xy, b: Xy) -> f64 {
     let (dx, dy) = (b.0 - a.0, b.1 - a.1);
     let length2 = dx * dx + dy * dy;
-    let t = if length2 > 0.0 { (((p.0 - a.0) * dx + (p.1 - a.1) * dy) / length2).clamp(0.0, 1.0) } else { 0.0 };
+    let t =
+        if length2 > 0.0 { (((p.0 - a.0) * dx + (p.1 - a.1) * dy) / length2).clamp(0.0, 1.0) } else { 0.0 };
     (p.0 - a.0 - t * dx).hypot(p.1 - a.1 - t * dy)
 }
 

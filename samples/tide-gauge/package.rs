@@ -66,7 +66,11 @@ fn pattern(package: &str) -> Pattern {
             body: (3.2, 2.5),
         },
         "SOT23" => Pattern {
-            pads: vec![smd(1, -1.0, 0.95, 1.1, 0.6), smd(2, -1.0, -0.95, 1.1, 0.6), smd(3, 1.0, 0.0, 1.1, 0.6)],
+            pads: vec![
+                smd(1, -1.0, 0.95, 1.1, 0.6),
+                smd(2, -1.0, -0.95, 1.1, 0.6),
+                smd(3, 1.0, 0.0, 1.1, 0.6),
+            ],
             body: (1.4, 2.9),
         },
         "SOT23-5" => {
@@ -101,7 +105,15 @@ pub fn tidy(value: f64) -> f64 {
 
 impl Design {
     /// Places a part on the top side, turned by `quarters` quarter turns; `nets` in the order of the pins, `-` for none.
-    pub fn place(&mut self, reference: &str, package: &'static str, value: &str, at: Xy, quarters: u8, nets: &str) {
+    pub fn place(
+        &mut self,
+        reference: &str,
+        package: &'static str,
+        value: &str,
+        at: Xy,
+        quarters: u8,
+        nets: &str,
+    ) {
         let pattern = pattern(package);
         let nets: Vec<&str> = nets.split_whitespace().collect();
         assert_eq!(nets.len(), pattern.pads.len(), "{reference}: one net per pin");

@@ -76,7 +76,8 @@ fn offset(region: &Region, distance: f64) -> Region {
 fn region(design: &Design, pour: &Pour) -> Region {
     let outline: Ring = pour.outline.iter().map(|&at| point(at)).collect();
     let limits = fill([&outline], Filling::NonZero);
-    let (mut foreign, mut rings_of_relief, mut spokes, mut anchors) = (Vec::new(), Vec::new(), Vec::new(), Vec::new());
+    let (mut foreign, mut rings_of_relief, mut spokes, mut anchors) =
+        (Vec::new(), Vec::new(), Vec::new(), Vec::new());
     for track in design.tracks.iter().filter(|track| track.layer == pour.layer && track.net != pour.net) {
         let legs = track.path.windows(2);
         foreign.extend(legs.map(|leg| capsule(leg[0], leg[1], 0.5 * track.width + pour.clearance)));
@@ -146,7 +147,8 @@ pub fn contours(design: &Design, pour: &Pour) -> Vec<Vec<Xy>> {
 /// Joins holes to the rim, each by a horizontal cut-in from its leftmost corner to what lies left of it.
 fn keyhole(mut rim: Vec<Xy>, mut holes: Vec<Vec<Xy>>) -> Vec<Xy> {
     for hole in &mut holes {
-        let leftmost = (0..hole.len()).min_by(|&a, &b| hole[a].partial_cmp(&hole[b]).unwrap_or(std::cmp::Ordering::Equal));
+        let leftmost = (0..hole.len())
+            .min_by(|&a, &b| hole[a].partial_cmp(&hole[b]).unwrap_or(std::cmp::Ordering::Equal));
         hole.rotate_left(leftmost.unwrap_or(0));
     }
     holes.sort_by(|a, b| a[0].partial_cmp(&b[0]).unwrap_or(std::cmp::Ordering::Equal));

@@ -365,7 +365,8 @@ fn tighten(maps: &Maps, cells: &[Cell]) -> Vec<Cell> {
     while at + 1 < cells.len() {
         let mut best = (at + 1, Vec::new());
         for next in ((at + 1)..cells.len()).rev() {
-            let worst = cells[at..=next].iter().map(|c| maps.tracks[c.0][maps.index(c.1, c.2)]).max().unwrap_or(0);
+            let worst =
+                cells[at..=next].iter().map(|c| maps.tracks[c.0][maps.index(c.1, c.2)]).max().unwrap_or(0);
             let ways = doglegs(cells[at], cells[next]);
             let free = ways.into_iter().find(|way| {
                 let inside = &way[..];
@@ -429,7 +430,12 @@ fn is_free(maps: &Maps, way: &[Cell], worst: u8) -> bool {
 
 /// Takes the pads of `nets` without hole down to their planes: a short track and a via next to each pad. `inside` says
 /// whether a net has its plane at a place.
-pub fn fan_out(design: &mut Design, nets: &[&str], width: f64, inside: &dyn Fn(&str, Xy) -> bool) -> Vec<String> {
+pub fn fan_out(
+    design: &mut Design,
+    nets: &[&str],
+    width: f64,
+    inside: &dyn Fn(&str, Xy) -> bool,
+) -> Vec<String> {
     let mut failed = Vec::new();
     let parts = design.parts.clone();
     for part in &parts {
@@ -437,9 +443,9 @@ pub fn fan_out(design: &mut Design, nets: &[&str], width: f64, inside: &dyn Fn(&
             let things = obstacles(design, 0, 0);
             let (w, h) = pad.shape.size();
             let width = width.min(w).min(h);
-            let done = things.iter().any(|thing| {
-                thing.net == pad.net && !thing.pad && thing.body.from_point(pad.at) < 0.0
-            });
+            let done = things
+                .iter()
+                .any(|thing| thing.net == pad.net && !thing.pad && thing.body.from_point(pad.at) < 0.0);
             if done {
                 continue;
             }

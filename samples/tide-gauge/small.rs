@@ -77,7 +77,8 @@ fn parts(d: &mut Design) {
 /// Tracks laid by hand, supply pins taken down to their planes, the rest routed.
 fn tracks(d: &mut Design) {
     // The clock crosses the slot, the rest of the bus passes below it.
-    let clock: &[Xy] = &[(16.35, 16.975), (17.3, 16.975), (18.8, 18.475), (21.4, 18.475), (22.675, 17.2), (23.3, 17.2)];
+    let clock: &[Xy] =
+        &[(16.35, 16.975), (17.3, 16.975), (18.8, 18.475), (21.4, 18.475), (22.675, 17.2), (23.3, 17.2)];
     d.track("ADC_SCK", TOP, W, clock);
     d.track("ADC_DOUT", TOP, W, &[(16.35, 16.325), (23.225, 16.325), (23.3, 16.4)]);
     d.track("ADC_CS", TOP, W, &[(16.35, 15.675), (23.225, 15.675), (23.3, 15.6)]);
