@@ -14,7 +14,7 @@ use crate::style::{Face, Rgb, Style};
 /// Size of a pin's square in mm.
 pub const PIN: f64 = 2.0;
 /// Radius of a landing's ring in mm.
-pub const LANDING: f64 = 1.0;
+pub const LANDING: f64 = 1.2;
 /// Halo round lines in mm, both sides together.
 const HALO: f64 = 0.5;
 /// Largest deviation of drawn outlines in mm.
@@ -368,7 +368,7 @@ fn placer(data: &MapData, view: &View, look: &MapLook) -> Placer {
     placer.add_density(&raster);
     for charted in [true, false] {
         for run in runs(data, view, charted) {
-            placer.add_line(&run, 1.2, 2.0);
+            placer.add_line(&run, 1.0, 6.0);
         }
     }
     for hole in data.plane.iter().flat_map(|polygon| &polygon.holes).filter(|hole| in_view(hole, view)) {
@@ -416,11 +416,14 @@ fn labels(drawn: &mut DrawnMap, data: &MapData, view: &View, look: &MapLook) {
         let text = format!("{} %", SHARES[rank]);
         let text = Text::new(0.0, 0.0, size, Face::NarrowBold, style.color.ink, &text);
         let (width, height) = (text.width(), 0.95 * size);
-        let boxes = contour
-            .lines
-            .iter()
-            .flat_map(|line| along(line, 3.0))
-            .map(|(x, y)| ([x - 0.5 * width, y - 0.5 * height, x + 0.5 * width, y + 0.5 * height], 0.0));
+        // On the line, or beside it where the line runs too close to the track.
+        let shifts = [(0.0, 0.0), (1.0, 0.15), (-1.0, 0.15)];
+        let boxes = contour.lines.iter().flat_map(|line| along(line, 3.0)).flat_map(|((x, y), (nx, ny))| {
+            shifts.map(|(side, extra)| {
+                let (cx, cy) = (x + side * nx * (0.5 * width + 0.8), y + side * ny * (0.5 * height + 0.8));
+                ([cx - 0.5 * width, cy - 0.5 * height, cx + 0.5 * width, cy + 0.5 * height], extra)
+            })
+        });
         let boxes: Vec<(Rect, f64)> = boxes.collect();
         if let Some(rect) = drawn.placer.cheapest(boxes) {
             group.text(placed(text, rect, style));
@@ -429,8 +432,8 @@ fn labels(drawn: &mut DrawnMap, data: &MapData, view: &View, look: &MapLook) {
     drawn.group.group(group);
 }
 
-/// Points on a line every `step` mm.
-fn along(line: &[(f64, f64)], step: f64) -> Vec<(f64, f64)> {
+/// Points on a line every `step` mm, each with the normal of the line.
+fn along(line: &[(f64, f64)], step: f64) -> Vec<((f64, f64), (f64, f64))> {
     let mut points = Vec::new();
     let mut left = step;
     for pair in line.windows(2) {
@@ -439,7 +442,8 @@ fn along(line: &[(f64, f64)], step: f64) -> Vec<(f64, f64)> {
         let mut at = left;
         while at < length {
             let t = at / length;
-            points.push((a.0 + t * (b.0 - a.0), a.1 + t * (b.1 - a.1)));
+            let normal = ((a.1 - b.1) / length, (b.0 - a.0) / length);
+            points.push(((a.0 + t * (b.0 - a.0), a.1 + t * (b.1 - a.1)), normal));
             at += step;
         }
         left = at - length;

@@ -1,6 +1,6 @@
 //! Panels beside a map: key figures, section at the track, locator, words explained.
 
-use super::number::significant;
+use super::number::coordinate;
 use super::path::PathData;
 use super::scale::DensityScale;
 use super::scene::{Group, Shape};
@@ -265,7 +265,7 @@ fn spread(u: f64, width: f64, height: f64) -> f64 {
 }
 
 fn draw_section(x: f64, y: f64, section: &Section, style: &Style) -> Group {
-    let height_mm = significant(section.height_m * 1e3, 3);
+    let height_mm = coordinate(section.height_m * 1e3);
     let label = format!("section at the track, height {height_mm} mm");
     let mut group = Group::new("section").labeled("graphics-object", label);
     heading(&mut group, x, y, "Section at the track, not to scale", style);

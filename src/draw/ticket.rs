@@ -45,8 +45,10 @@ pub struct TicketSheet {
 
 const MAP_X: f64 = 17.0;
 const MAP_Y: f64 = 28.5;
-const MAP_WIDTH: f64 = 198.0;
-const MAP_HEIGHT: f64 = 125.0;
+/// Room for the map in mm.
+pub const MAP_WIDTH: f64 = 198.0;
+/// Room for the map in mm.
+pub const MAP_HEIGHT: f64 = 121.0;
 const STRIP_Y: f64 = 188.4;
 const GAP: f64 = 9.0;
 
@@ -75,24 +77,26 @@ pub fn scene(sheet: &TicketSheet, style: &Style) -> Scene {
     scene.group(rulers(&view, sheet.origin, style));
 
     let block = view.width().max(110.0);
-    let mut y = MAP_Y + view.height() + 11.0;
+    let first = columns(block, right).first().map_or(right, |column| column.0);
+    let room = first - 5.0 - MAP_X;
+    let mut y = MAP_Y + view.height() + 10.4;
     let mut caption = Group::new("scale-caption");
     let anchor = super::number::significant(sheet.scale.anchor(), 3);
     let text = format!(
         "Return current density per ampere in the net. 0 dB is 1/(\u{3c0}{}) = {anchor} A/m per A, the density under a straight thin track over unbroken copper.",
         italic("h")
     );
-    for line in wrapped(Face::Narrow, style.font.label, &text, block) {
+    for line in wrapped(Face::Narrow, style.font.label, &text, room) {
         caption.text(Text::new(MAP_X, y, style.font.label, Face::Narrow, style.color.ink, &line));
         y += 4.4;
     }
     scene.group(caption);
-    y += 2.6;
+    y += 2.2;
     scene.group(color_scale(MAP_X, y, block - 24.0, &sheet.scale, &drawn.contours, style));
-    y += 13.6;
-    let (group, last) = legend(MAP_X, y, block - 42.0, &entries(&sheet.map), style);
+    y += 13.4;
+    let (group, last) = legend(MAP_X, y, room - 40.0, &entries(&sheet.map), style);
     scene.group(group);
-    scene.group(scale_bar(&view, MAP_X + block, y - 1.1, style));
+    scene.group(scale_bar(&view, MAP_X + room, y - 1.1, style));
     let bottom = last + 3.0;
 
     for (panel, (x, y)) in sheet.panels.iter().zip(slots(&sheet.panels, block, bottom, right)) {
@@ -139,13 +143,17 @@ fn entries(map: &MapData) -> Vec<LegendEntry> {
     all
 }
 
+/// Upper left corners of the columns right of the map.
+fn columns(block: f64, right: f64) -> Vec<(f64, f64)> {
+    let start = MAP_X + block + GAP;
+    let count = (((right - start + GAP) / (WIDTH + GAP)).floor() as usize).max(1);
+    (0..count).map(|index| (right - WIDTH - (count - 1 - index) as f64 * (WIDTH + GAP), MAP_Y)).collect()
+}
+
 /// Upper left corners of panels: columns to the right of the map, filled from the right-most room down; then columns
 /// under the map. A panel that fits nowhere is left out, later ones may still fit.
 fn slots(panels: &[Panel], block: f64, bottom: f64, right: f64) -> Vec<(f64, f64)> {
-    let start = MAP_X + block + GAP;
-    let count = (((right - start + GAP) / (WIDTH + GAP)).floor() as usize).max(1);
-    let mut columns: Vec<(f64, f64)> =
-        (0..count).map(|index| (right - WIDTH - (count - 1 - index) as f64 * (WIDTH + GAP), MAP_Y)).collect();
+    let mut columns = columns(block, right);
     let below = ((block + GAP) / (WIDTH + GAP)).floor() as usize;
     columns.extend((0..below).map(|index| (MAP_X + index as f64 * (WIDTH + GAP), bottom)));
     let mut places = Vec::new();

@@ -1,13 +1,13 @@
 //! The ticket map of one net, plane and frequency: from plan, map and figures to a picture.
 
 use super::Picture;
-use super::words::{band_range, hertz, hints_at_hazard, millimeters, percent, power_of_ten};
+use super::words::{band_range, given_millimeters, hertz, hints_at_hazard, millimeters, percent, power_of_ten};
 use crate::board::Board;
 use crate::draw::density::Density;
 use crate::draw::map::{MapData, MapLeg, MapPin};
 use crate::draw::panel::{KeyFigure, KeyRow, Panel, Section, SectionLayer};
 use crate::draw::png::RenderFault;
-use crate::draw::ticket::{TicketSheet, scene};
+use crate::draw::ticket::{MAP_HEIGHT, MAP_WIDTH, TicketSheet, scene};
 use crate::draw::{DensityScale, Scene, View, italic, plain, shortened, with_prefix};
 use crate::field::ReturnMap;
 use crate::figure::{Figure, Figures};
@@ -187,7 +187,7 @@ pub(super) fn window(board: Bounds, data: &MapData, height_m: f64) -> Bounds {
         min: Point::new(wanted.min.x.max(whole.min.x), wanted.min.y.max(whole.min.y)),
         max: Point::new(wanted.max.x.min(whole.max.x), wanted.max.y.min(whole.max.y)),
     };
-    let scale = |window: Bounds| View::fitted(window, 0.0, 0.0, 198.0, 125.0).scale;
+    let scale = |window: Bounds| View::fitted(window, 0.0, 0.0, MAP_WIDTH, MAP_HEIGHT).scale;
     let too_small = 3.0 * height_m * 1e3 * scale(whole) < 0.6;
     if too_small || scale(wanted) >= 2.0 * scale(whole) { wanted } else { whole }
 }
@@ -409,7 +409,7 @@ fn words(input: &TicketInput) -> Vec<String> {
             .to_owned(),
         format!(
             "{h} is the gap from track to plane; 3{h} reaches {} to each side of the track.",
-            millimeters(3.0 * height)
+            given_millimeters(3.0 * height)
         ),
         "Lines enclose 50, 80 and 95 % of the density.".to_owned(),
     ];
@@ -450,9 +450,9 @@ fn fields(input: &TicketInput, number: &str) -> Vec<(&'static str, String)> {
             format!("{}, {}, at {}{over}", plain(&band.name), band_range(band), hertz(map.frequency_hz)),
         ),
         ("Plane", plain(&chart.plane.to_string())),
-        ("Height h", millimeters(chart.height_m)),
+        ("Height h", given_millimeters(chart.height_m)),
         ("Model", model.to_owned()),
-        ("Cell", millimeters(map.grid.cell_m)),
+        ("Cell", given_millimeters(map.grid.cell_m)),
         ("Numerical error", error),
         ("Picture no.", number.to_owned()),
         ("Sheet", format!("{} of {}", input.sheet.0, input.sheet.1)),

@@ -15,6 +15,11 @@ pub(super) fn millimeters(meters: f64) -> String {
     format!("{} mm", significant(meters * 1e3, 3))
 }
 
+/// A length that was given or chosen, in millimeters without needless zeros.
+pub(super) fn given_millimeters(meters: f64) -> String {
+    format!("{} mm", bare(meters * 1e3))
+}
+
 /// A frequency without needless zeros, for example `10 MHz`.
 pub(super) fn hertz(value_hz: f64) -> String {
     let (factor, unit) = match value_hz {

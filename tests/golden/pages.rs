@@ -39,6 +39,14 @@ fn ticket_pages() {
         let style = style(name);
         let start = std::time::Instant::now();
         let picture = ticket(&input(&gauge, &style)).expect("a picture");
+        let scene = ebbmap::report::ticket_scene(&input(&gauge, &style));
+        let t0 = start.elapsed();
+        let svg = ebbmap::draw::svg::write(&scene);
+        let t1 = start.elapsed();
+        let pixels = ebbmap::draw::png::render(&scene, &svg).expect("pixels");
+        let t2 = start.elapsed();
+        ebbmap::draw::png::encode(&scene, &pixels).expect("a file");
+        println!("until scene {t0:?} svg {:?} render {:?} encode {:?}", t1 - t0, t2 - t1, start.elapsed() - t2);
         println!("{name}: {:?}, svg {} png {}", start.elapsed(), picture.svg.len(), picture.png.len());
         std::fs::write(out(&format!("ticket-{name}.svg")), &picture.svg).expect("written");
         std::fs::write(out(&format!("ticket-{name}.png")), &picture.png).expect("written");
