@@ -188,3 +188,16 @@ pub enum Budget {
         lsb: f64,
     },
 }
+
+/// What the user says of the signal of a net, path or pair.
+#[derive(Clone, Debug, Default, PartialEq)]
+pub struct SignalRequest {
+    /// Drive; none is 1 A at the frequency of each band.
+    pub drive: Option<Drive>,
+    /// Load; none leaves the current the same all along the track.
+    pub load: Option<Load>,
+    /// Where the driver's return lands.
+    pub landing: DriverReturn,
+    /// Noise that the path bears as a victim.
+    pub budget: Option<Budget>,
+}

@@ -3,6 +3,7 @@
 //! Nothing here reads a file; `read::review` does.
 
 pub mod drive;
+pub mod path;
 
 use crate::geom::{Point, Ring};
 use std::path::PathBuf;
@@ -26,6 +27,10 @@ pub struct Review {
     pub reference_nets: Vec<String>,
     /// Nets to chart, patterns still unexpanded, in the order of the file.
     pub nets: Vec<NetRequest>,
+    /// Paths to chart, in the order of the file.
+    pub paths: Vec<path::PathRequest>,
+    /// Pairs to chart, in the order of the file.
+    pub pairs: Vec<path::PairRequest>,
     /// Zones of the board.
     pub zones: Vec<Zone>,
     /// Bands, in the order of the file; the default bands where the file has none.
@@ -62,6 +67,8 @@ pub struct NetRequest {
     pub driver_landing: Option<LandingRequest>,
     /// The same at the receiver.
     pub receiver_landing: Option<LandingRequest>,
+    /// Drive, load, landing of the driver, budget.
+    pub signal: drive::SignalRequest,
     /// Line of the entry in the review, from 1.
     pub line: u32,
     /// Where its keys stand in the file.

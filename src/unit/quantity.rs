@@ -26,10 +26,12 @@ pub enum Dimension {
     Current,
     /// Seconds.
     Time,
+    /// Bits per second.
+    BitRate,
 }
 
 use Dimension::{
-    Capacitance, Current, Frequency, Inductance, Length, Resistance, Temperature, Time, Voltage,
+    BitRate, Capacitance, Current, Frequency, Inductance, Length, Resistance, Temperature, Time, Voltage,
 };
 
 /// Unit, what it measures, power of ten, and the factor that is left (1 but for inches).
@@ -74,6 +76,10 @@ const UNITS: &[(&str, Dimension, i32, f64)] = &[
     ("us", Time, -6, 1.0),
     ("ms", Time, -3, 1.0),
     ("s", Time, 0, 1.0),
+    ("bit/s", BitRate, 0, 1.0),
+    ("kbit/s", BitRate, 3, 1.0),
+    ("Mbit/s", BitRate, 6, 1.0),
+    ("Gbit/s", BitRate, 9, 1.0),
 ];
 
 impl Dimension {
@@ -89,6 +95,7 @@ impl Dimension {
             Voltage => "voltage",
             Current => "current",
             Time => "time",
+            BitRate => "bit rate",
         }
     }
 
@@ -109,6 +116,7 @@ impl Dimension {
             Voltage => "3.3V",
             Current => "20mA",
             Time => "2ns",
+            BitRate => "10Mbit/s",
         }
     }
 }

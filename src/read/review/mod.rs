@@ -6,7 +6,9 @@
 
 mod bands;
 mod desk;
+mod drives;
 mod nets;
+mod paths;
 mod zones;
 
 use crate::diag::Diagnostic;
@@ -70,7 +72,8 @@ pub fn parse_review(text: &str, name: &str, folder: &Path) -> ReviewFile {
     ReviewFile { name: name.into(), text: text.into(), review: usable.then_some(review), messages }
 }
 
-const TABLES: &[&str] = &["schema", "board", "stackup", "reference", "net", "zone", "band", "solver"];
+const TABLES: &[&str] =
+    &["schema", "board", "stackup", "reference", "net", "path", "pair", "zone", "band", "solver"];
 
 /// `whole` is false after a syntax error: what is missing then may only have been lost.
 fn fill(desk: &mut Desk<'_>, root: &DeTable<'_>, folder: &Path, review: &mut Review, whole: bool) {
@@ -92,6 +95,10 @@ fn fill(desk: &mut Desk<'_>, root: &DeTable<'_>, folder: &Path, review: &mut Rev
     }
     reference(desk, root, review, whole);
     review.nets = nets::read(desk, root, review.origin);
+    review.paths = paths::read_paths(desk, root, review.origin);
+    review.pairs = paths::read_pairs(desk, root);
+    paths::ensure_distinct(desk, root);
+    not_yet_charted(desk, root);
     if whole && root.get("net").is_none() {
         desk.error(code::REVIEW_MISSING_KEY, 0..0, "review must chart one net at least")
             .hints
@@ -101,6 +108,30 @@ fn fill(desk: &mut Desk<'_>, root: &DeTable<'_>, folder: &Path, review: &mut Rev
     review.bands = bands::read(desk, root);
     if let Some(table) = desk.table(root, "solver") {
         review.solver = solver(desk, table);
+    }
+}
+
+/// Keys and tables that are read and checked but that no map uses yet.
+const NOT_YET: &[(&str, &[&str])] = &[("net", drives::KEYS), ("path", &["name"]), ("pair", &["name"])];
+
+/// Says of what is read but not charted that it is not, so that nobody takes a map for what it is not.
+fn not_yet_charted(desk: &mut Desk<'_>, root: &DeTable<'_>) {
+    for (kind, keys) in NOT_YET {
+        let list = root.get(*kind).and_then(|value| value.get_ref().as_array());
+        for table in
+            list.into_iter().flat_map(|list| list.iter()).filter_map(|value| value.get_ref().as_table())
+        {
+            for key in *keys {
+                let Some(value) = table.get(*key) else { continue };
+                let text = if *key == "name" {
+                    format!("a {kind} is read and checked but not charted yet")
+                } else {
+                    format!("key `{key}` is read and checked but not used yet: maps are of 1 A")
+                };
+                let message = desk.place(Diagnostic::warning(code::REVIEW_NOT_USED, text), value.span());
+                desk.messages.push(message);
+            }
+        }
     }
 }
 

@@ -1,12 +1,26 @@
 //! The `[[net]]` entries of a review.
 
 use super::desk::{Desk, Value};
+use super::drives;
 use crate::diag::code::review as code;
 use crate::geom::Point;
 use crate::review::{LandingRequest, NetRequest};
 use toml::de::{DeTable, DeValue};
 
-const KEYS: &[&str] = &["name", "driver", "receiver", "plane", "driver_landing", "receiver_landing"];
+const KEYS: &[&str] = &[
+    "name",
+    "driver",
+    "receiver",
+    "plane",
+    "driver_landing",
+    "receiver_landing",
+    "drive",
+    "series",
+    "termination",
+    "load",
+    "landing",
+    "budget",
+];
 
 /// All nets in the order of the file; landings given as points are moved by `origin`.
 pub fn read(desk: &mut Desk<'_>, root: &DeTable<'_>, origin: Point) -> Vec<NetRequest> {
@@ -34,6 +48,7 @@ pub fn read(desk: &mut Desk<'_>, root: &DeTable<'_>, origin: Point) -> Vec<NetRe
             table.get("driver_landing").and_then(|value| landing(desk, value, "driver_landing", origin));
         net.receiver_landing =
             table.get("receiver_landing").and_then(|value| landing(desk, value, "receiver_landing", origin));
+        net.signal = drives::read(desk, table);
         if let (Some(driver), Some(receiver)) = (&net.driver, &net.receiver)
             && driver == receiver
         {
@@ -60,7 +75,7 @@ fn header(span: &std::ops::Range<usize>) -> std::ops::Range<usize> {
 }
 
 /// A pin, part and number joined by a dot.
-fn pin(desk: &mut Desk<'_>, value: &Value<'_>, name: &str) -> Option<String> {
+pub fn pin(desk: &mut Desk<'_>, value: &Value<'_>, name: &str) -> Option<String> {
     let text = desk.as_text(value, name)?;
     match text.split_once('.') {
         Some((part, number)) if !part.is_empty() && !number.is_empty() => Some(text.into()),
@@ -73,7 +88,7 @@ fn pin(desk: &mut Desk<'_>, value: &Value<'_>, name: &str) -> Option<String> {
 }
 
 /// A plane, layer and net joined by a hyphen.
-fn plane(desk: &mut Desk<'_>, value: &Value<'_>) -> Option<String> {
+pub fn plane(desk: &mut Desk<'_>, value: &Value<'_>) -> Option<String> {
     let text = desk.as_text(value, "plane")?;
     let number = text.strip_prefix('L').and_then(|rest| rest.split_once('-'));
     let good =
@@ -86,7 +101,8 @@ fn plane(desk: &mut Desk<'_>, value: &Value<'_>) -> Option<String> {
     Some(text.into())
 }
 
-fn landing(desk: &mut Desk<'_>, value: &Value<'_>, name: &str, origin: Point) -> Option<LandingRequest> {
+/// A landing: a pin, or a point moved by `origin`.
+pub fn landing(desk: &mut Desk<'_>, value: &Value<'_>, name: &str, origin: Point) -> Option<LandingRequest> {
     match value.get_ref() {
         DeValue::String(_) => pin(desk, value, name).map(LandingRequest::Pin),
         DeValue::Array(_) => desk.point(value, name).map(|point| LandingRequest::At(origin + point)),
