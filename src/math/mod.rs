@@ -1,5 +1,6 @@
 //! Small numerical tools without board words: quadrature, Fourier filters, special functions.
 
+pub mod exponential_integral;
 pub mod filter;
 pub mod measure;
 pub mod quadrature;

@@ -8,11 +8,12 @@
 //!
 //! Checked by: `dense_direct_solve_agrees`, `fast_operator_is_the_sum` in tests/physics.
 
-use super::branches::Branches;
+use super::branches::{Branches, EDGE_PART};
 use super::kernel;
 use super::projector::Projector;
 use super::{Problem, Vertical};
 use crate::math::filter::{Filter, Scratch};
+use crate::unit::constants::MU0;
 use num_complex::Complex64;
 
 /// Kernels of all pairs of sheets, as spectra for the padded and symbols for the unpadded filter.
@@ -72,6 +73,8 @@ pub struct Impedance<'a> {
     projector: &'a Projector,
     s: Complex64,
     zs: &'a [Complex64],
+    /// What an outermost face has more inductance than others, in H.
+    edge_h: f64,
     /// Impedance of each vertical in ohm.
     pub verticals: Vec<Complex64>,
     /// Preconditioner's division on verticals.
@@ -134,6 +137,7 @@ impl<'a> Impedance<'a> {
             projector,
             s,
             zs,
+            edge_h: EDGE_PART * MU0 * problem.grid.cell_m / 2.0,
             verticals,
             vertical_inverse,
             inverse,
@@ -171,6 +175,9 @@ impl<'a> Impedance<'a> {
                     mixed.iter().enumerate().for_each(|(p, mix)| columns[p * py + ky] = *mix);
                 }
             });
+        }
+        if self.s != Complex64::default() {
+            self.branches.add_edges(self.s * self.edge_h, currents, out);
         }
         for sheet in 0..sheets {
             for direction in 0..2 {
@@ -318,7 +325,7 @@ impl<'a> Impedance<'a> {
 pub fn typical(problem: &Problem, s: Complex64, zs: &[Complex64]) -> Complex64 {
     let resistive = zs.iter().sum::<Complex64>() / zs.len().max(1) as f64;
     // the spread of a current of a few cells
-    resistive + s * crate::unit::constants::MU0 * problem.grid.cell_m / 2.0
+    resistive + s * MU0 * problem.grid.cell_m / 2.0
 }
 
 /// Bilinear product, in rising order so that the bits never change.

@@ -148,6 +148,31 @@ impl System {
         Ok(self.solution(currents, &potential, impedance, residual, steps))
     }
 
+    /// Voltage in V that the currents of `solution` put into another path per ampere: EMF along its strips plus
+    /// potential difference of its landings. For the drive of the solution itself this is the sheets' impedance. The
+    /// direct mutual inductance of the two sources is not in it.
+    pub fn transfer_ohm(&self, solution: &Solution, frequency_hz: f64, other: &Prepared) -> Complex64 {
+        let s = Complex64::new(0.0, 2.0 * std::f64::consts::PI * frequency_hz);
+        let (nx, ny) = (self.branches.nx, self.branches.ny);
+        let mut flux = Complex64::default();
+        let mut landing = Complex64::default();
+        for sheet in 0..self.branches.sheets {
+            let along_x = &other.flux[self.branches.plane(sheet, 0)];
+            for (row, fluxes) in solution.jx[sheet].chunks_exact(nx + 1).zip(along_x.chunks_exact(nx)) {
+                flux += row.iter().zip(fluxes).map(|(i, a)| i * a).sum::<Complex64>();
+            }
+            let along_y = &other.flux[self.branches.plane(sheet, 1)];
+            flux += solution.jy[sheet].iter().zip(along_y).map(|(i, a)| i * a).sum::<Complex64>();
+            let nodes = &self.branches.node[sheet * nx * ny..(sheet + 1) * nx * ny];
+            for (&node, potential) in nodes.iter().zip(&solution.potential_v[sheet]) {
+                if node != NO_NODE {
+                    landing += potential * other.entering[node as usize];
+                }
+            }
+        }
+        s * flux + landing
+    }
+
     /// The prepared factor, or one with weights that suit the verticals at this frequency.
     fn projector_at(&self, s: Complex64, zs: &[Complex64]) -> Result<Arc<Projector>, SolveFailure> {
         let typical = typical(&self.problem, s, zs).norm();
