@@ -13,6 +13,9 @@ use i_overlay::i_shape::int::shape::IntShapes;
 /// Step of the grid on which set operations work, in metres.
 pub const GRID_M: f64 = 1e-9;
 
+/// Grid steps in a metre. Dividing by it gives the number nearest to the decimal, as readers of files get it.
+const PER_M: f64 = 1e9;
+
 /// How a ring that touches or crosses itself or others is filled.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub enum Filling {
@@ -97,12 +100,12 @@ fn add(overlay: &mut Overlay, region: &Region, kind: ShapeType) {
 
 /// Nearest grid point; what lies beyond 2 m is moved to the rim of the grid, readers refuse such coordinates.
 fn to_grid(point: Point) -> IntPoint {
-    IntPoint::new((point.x / GRID_M).round() as i32, (point.y / GRID_M).round() as i32)
+    IntPoint::new((point.x * PER_M).round() as i32, (point.y * PER_M).round() as i32)
 }
 
 fn from_grid(shapes: IntShapes) -> Region {
     let ring = |points: Vec<IntPoint>| -> Ring {
-        points.into_iter().map(|p| Point::new(f64::from(p.x) * GRID_M, f64::from(p.y) * GRID_M)).collect()
+        points.into_iter().map(|p| Point::new(f64::from(p.x) / PER_M, f64::from(p.y) / PER_M)).collect()
     };
     let polygon = |contours: Vec<Vec<IntPoint>>| {
         let mut rings = contours.into_iter().map(ring);

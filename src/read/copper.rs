@@ -186,6 +186,7 @@ fn objects(drawn: Vec<Object>, nets: &[Net], pin_ids: &PinIds) -> (Vec<CopperObj
         });
     }
     mark_outline_strokes(&mut objects);
+    mark_hatch(&mut objects);
     (objects, groups)
 }
 
@@ -249,6 +250,76 @@ fn mark_outline_strokes(objects: &mut [CopperObject]) {
         .collect();
     for index in marked {
         objects[index].function = ObjectFunction::AreaStroke;
+    }
+}
+
+/// Many parallel draws of one net that overlap side by side fill an area: some exporters draw planes so.
+fn mark_hatch(objects: &mut [CopperObject]) {
+    /// Fewer strokes side by side than this are tracks.
+    const LEAST_STROKES: usize = 8;
+    /// Directions are compared in steps of this many radians.
+    const TURN: f64 = 1e-3;
+    struct Stroke {
+        object: usize,
+        offset_m: f64,
+        from_m: f64,
+        to_m: f64,
+    }
+    let mut groups: BTreeMap<(NetId, i64, i64), Vec<Stroke>> = BTreeMap::new();
+    for (index, object) in objects.iter().enumerate() {
+        let (CopperKind::Draw { path, width_m }, Some(net)) = (&object.kind, object.net) else { continue };
+        if object.function != ObjectFunction::Track || path.len() != 2 || !object.dark {
+            continue;
+        }
+        let along = path[1] - path[0];
+        let turn = libm::atan2(along.y, along.x).rem_euclid(std::f64::consts::PI);
+        let step = (turn / TURN).round() as i64 % (std::f64::consts::PI / TURN).round() as i64;
+        let (sin, cos) = (libm::sin(step as f64 * TURN), libm::cos(step as f64 * TURN));
+        let unit = Point::new(cos, sin);
+        let (a, b) = (path[0].dot(unit), path[1].dot(unit));
+        let offset_m = unit.cross((path[0] + path[1]) * 0.5);
+        let stroke = Stroke { object: index, offset_m, from_m: a.min(b), to_m: a.max(b) };
+        groups.entry((net, (width_m * 1e9).round() as i64, step)).or_default().push(stroke);
+    }
+    for ((_, width_nm, _), mut strokes) in groups {
+        if strokes.len() < LEAST_STROKES {
+            continue;
+        }
+        let width_m = width_nm as f64 * 1e-9;
+        strokes.sort_by(|a, b| a.offset_m.total_cmp(&b.offset_m));
+        // Strokes that lie side by side and overlap over half of the shorter one belong together.
+        let mut leader: Vec<usize> = (0..strokes.len()).collect();
+        fn root(leader: &mut [usize], mut of: usize) -> usize {
+            while leader[of] != of {
+                leader[of] = leader[leader[of]];
+                of = leader[of];
+            }
+            of
+        }
+        for a in 0..strokes.len() {
+            for b in a + 1..strokes.len() {
+                let apart = strokes[b].offset_m - strokes[a].offset_m;
+                if apart > width_m {
+                    break;
+                }
+                let (one, other) = (&strokes[a], &strokes[b]);
+                let shared = one.to_m.min(other.to_m) - one.from_m.max(other.from_m);
+                let shorter = (one.to_m - one.from_m).min(other.to_m - other.from_m);
+                if apart > 1e-9 && shared >= 0.5 * shorter {
+                    let (a, b) = (root(&mut leader, a), root(&mut leader, b));
+                    leader[b.max(a)] = a.min(b);
+                }
+            }
+        }
+        let mut sizes = vec![0usize; strokes.len()];
+        for of in 0..strokes.len() {
+            sizes[root(&mut leader, of)] += 1;
+        }
+        for (of, stroke) in strokes.iter().enumerate() {
+            if sizes[root(&mut leader, of)] >= LEAST_STROKES {
+                objects[stroke.object].function = ObjectFunction::AreaStroke;
+            }
+        }
     }
 }
 

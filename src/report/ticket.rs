@@ -1,7 +1,9 @@
 //! The ticket map of one net, plane and frequency: from plan, map and figures to a picture.
 
 use super::Picture;
-use super::words::{band_range, given_millimeters, hertz, hints_at_hazard, millimeters, percent, power_of_ten};
+use super::words::{
+    band_range, given_millimeters, hertz, hints_at_hazard, millimeters, percent, power_of_ten,
+};
 use crate::board::Board;
 use crate::draw::density::Density;
 use crate::draw::map::{MapData, MapLeg, MapPin};

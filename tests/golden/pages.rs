@@ -46,7 +46,12 @@ fn ticket_pages() {
         let pixels = ebbmap::draw::png::render(&scene, &svg).expect("pixels");
         let t2 = start.elapsed();
         ebbmap::draw::png::encode(&scene, &pixels).expect("a file");
-        println!("until scene {t0:?} svg {:?} render {:?} encode {:?}", t1 - t0, t2 - t1, start.elapsed() - t2);
+        println!(
+            "until scene {t0:?} svg {:?} render {:?} encode {:?}",
+            t1 - t0,
+            t2 - t1,
+            start.elapsed() - t2
+        );
         println!("{name}: {:?}, svg {} png {}", start.elapsed(), picture.svg.len(), picture.png.len());
         std::fs::write(out(&format!("ticket-{name}.svg")), &picture.svg).expect("written");
         std::fs::write(out(&format!("ticket-{name}.png")), &picture.png).expect("written");

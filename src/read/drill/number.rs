@@ -55,7 +55,7 @@ impl Notation {
         if nm > 1e9 {
             return Err(format!("coordinate `{text}` must lie within 1 m of the origin"));
         }
-        Ok(if text.starts_with('-') { -nm * 1e-9 } else { nm * 1e-9 })
+        Ok(if text.starts_with('-') { -nm / 1e9 } else { nm / 1e9 })
     }
 }
 
@@ -68,15 +68,15 @@ mod tests {
         let metric = Notation { unit_m: Some(1e-3), ..Notation::default() };
         let leading = Notation { zeros: Some(Zeros::LeadingKept), ..metric };
         let trailing = Notation { zeros: Some(Zeros::TrailingKept), ..metric };
-        assert_eq!(leading.coordinate("0105"), Ok(10_500_000.0 * 1e-9));
-        assert_eq!(trailing.coordinate("10500"), Ok(10_500_000.0 * 1e-9));
-        assert_eq!(metric.coordinate("-010500"), Ok(-10_500_000.0 * 1e-9));
-        assert_eq!(trailing.coordinate("+.5"), Ok(500_000.0 * 1e-9));
+        assert_eq!(leading.coordinate("0105"), Ok(10_500_000.0 / 1e9));
+        assert_eq!(trailing.coordinate("10500"), Ok(10_500_000.0 / 1e9));
+        assert_eq!(metric.coordinate("-010500"), Ok(-10_500_000.0 / 1e9));
+        assert_eq!(trailing.coordinate("+.5"), Ok(500_000.0 / 1e9));
         assert!(metric.coordinate("10500").is_err());
         let wide = Notation { digits: Some((4, 4)), ..trailing };
-        assert_eq!(wide.coordinate("105000"), Ok(10_500_000.0 * 1e-9));
+        assert_eq!(wide.coordinate("105000"), Ok(10_500_000.0 / 1e9));
         let inch = Notation { unit_m: Some(25.4e-3), zeros: Some(Zeros::TrailingKept), digits: None };
-        assert_eq!(inch.coordinate("10000"), Ok(25_400_000.0 * 1e-9));
+        assert_eq!(inch.coordinate("10000"), Ok(25_400_000.0 / 1e9));
         for bad in ["", ".", "1.2.3", "1e3", "--1", "12345678", "9999.0"] {
             assert!(trailing.coordinate(bad).is_err(), "{bad}");
         }

@@ -478,7 +478,7 @@ impl State<'_> {
         let digits = if matches!(letter, 'X' | 'I') { format.x } else { format.y };
         match super::number::coordinate(text, digits, format.trailing_omitted, unit_nm) {
             Ok(nm) => {
-                operands.set(letter, nm * 1e-9);
+                operands.set(letter, nm / 1e9);
                 true
             }
             Err(text) => {
