@@ -289,12 +289,27 @@ fn legend_sample(group: &mut Group, entry: LegendEntry, (x, y): (f64, f64), widt
     }
 }
 
-/// A strip of fields (name, value) from `x` to `x + width`, 11 mm high. Fields get the width they need; where that is too
-/// much, the widest values are cut in their middle.
+/// A strip of fields (name, value) from `x` to `x + width`, 11 mm high, with rules above and below.
 pub fn title_strip(x: f64, y: f64, width: f64, fields: &[(&str, String)], style: &Style) -> Group {
+    let mut group = Group::new("title-strip").labeled("group", "title strip");
+    let mut rules = PathData::new();
+    rules.line(&[(x, y), (x + width, y)]).line(&[(x, y + 11.0), (x + width, y + 11.0)]);
+    group.shape(Shape::stroked(rules, style.color.ink, 0.35));
+    fields_row(&mut group, (x, y, width, 11.0), 0.0, fields, style);
+    group
+}
+
+/// One row of fields (name over value) in a box (x, y, width, height). Fields get the width they need; where that is too
+/// much, the widest values are cut in their middle. The first field is indented by `indent` mm.
+pub fn fields_row(
+    group: &mut Group,
+    (x, y, width, height): (f64, f64, f64, f64),
+    indent: f64,
+    fields: &[(&str, String)],
+    style: &Style,
+) {
     const PAD: f64 = 1.6;
     const LEAST: f64 = 12.0;
-    let mut group = Group::new("title-strip").labeled("group", "title strip");
     let color = style.color;
     let size = style.font.label;
     let needs: Vec<f64> = fields
@@ -305,24 +320,20 @@ pub fn title_strip(x: f64, y: f64, width: f64, fields: &[(&str, String)], style:
         })
         .collect();
     let widths = shared_widths(&needs, width, LEAST);
-    let mut rules = PathData::new();
-    rules.line(&[(x, y), (x + width, y)]).line(&[(x, y + 11.0), (x + width, y + 11.0)]);
-    group.shape(Shape::stroked(rules, color.ink, 0.35));
     let mut left = x;
     let mut bars = PathData::new();
     for (index, ((name, value), wide)) in fields.iter().zip(&widths).enumerate() {
-        let start = if index == 0 { left } else { left + PAD };
+        let start = if index == 0 { left + indent } else { left + PAD };
         if index > 0 {
-            bars.line(&[(left, y + 1.0), (left, y + 10.0)]);
+            bars.line(&[(left, y + 1.0), (left, y + height - 1.0)]);
         }
         let room = left + wide - start - 0.6;
-        group.text(Text::new(start, y + 4.0, style.font.field, Face::Narrow, color.ink_soft, name));
+        group.text(Text::new(start, y + 0.36 * height, style.font.field, Face::Narrow, color.ink_soft, name));
         let value = fitted(Face::Narrow, size, value, room);
-        group.text(Text::new(start, y + 8.6, size, Face::Narrow, color.ink, &value));
+        group.text(Text::new(start, y + 0.79 * height, size, Face::Narrow, color.ink, &value));
         left += wide;
     }
     group.shape(Shape::stroked(bars, color.rule, style.line.rule));
-    group
 }
 
 /// Marked text if it fits, else its plain form cut in the middle.

@@ -87,7 +87,7 @@ pub fn with_prefix(value: f64, unit: &str, digits: usize) -> String {
     let size = value.abs() * (1.0 + 0.5 * libm::pow(10.0, -(digits as f64)));
     let last = PREFIXES[PREFIXES.len() - 1];
     let (factor, prefix) = PREFIXES.into_iter().find(|(factor, _)| size >= *factor).unwrap_or(last);
-    format!("{} {prefix}{unit}", significant(value / factor, digits))
+    format!("{}\u{a0}{prefix}{unit}", significant(value / factor, digits))
 }
 
 #[cfg(test)]
@@ -128,8 +128,8 @@ mod tests {
         for (value, text) in cases {
             assert_eq!(significant(value, 3), text, "{value}");
         }
-        assert_eq!(with_prefix(999.96e3, "Hz", 3), "1.00 MHz");
-        assert_eq!(with_prefix(3.2e-9, "H", 3), "3.20 nH");
-        assert_eq!(with_prefix(-5e-15, "s", 2), "\u{2212}0.0050 ps");
+        assert_eq!(with_prefix(999.96e3, "Hz", 3), "1.00\u{a0}MHz");
+        assert_eq!(with_prefix(3.2e-9, "H", 3), "3.20\u{a0}nH");
+        assert_eq!(with_prefix(-5e-15, "s", 2), "\u{2212}0.0050\u{a0}ps");
     }
 }

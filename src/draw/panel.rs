@@ -270,7 +270,7 @@ fn draw_section(x: f64, y: f64, section: &Section, style: &Style) -> Group {
     let mut group = Group::new("section").labeled("graphics-object", label);
     heading(&mut group, x, y, "Section at the track, not to scale", style);
     let color = style.color;
-    let (left, right) = (x + 19.0, x + 47.0);
+    let (left, right) = (x + 17.0, x + 43.5);
     let middle = 0.5 * (left + right);
     let pitch = section_pitch(section);
     let row = |index: usize| y + HEAD + 4.6 + pitch * index as f64;

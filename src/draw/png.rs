@@ -78,7 +78,7 @@ pub fn encode(scene: &Scene, pixels: &Pixels) -> Result<Vec<u8>, RenderFault> {
     let mut encoder = png::Encoder::new(&mut bytes, pixels.width, pixels.height);
     encoder.set_color(png::ColorType::Rgb);
     encoder.set_depth(png::BitDepth::Eight);
-    encoder.set_compression(png::Compression::High);
+    encoder.set_compression(png::Compression::Balanced);
     encoder.set_source_srgb(png::SrgbRenderingIntent::Perceptual);
     let per_meter = (f64::from(pixels.width) / scene.width * 1000.0).round() as u32;
     encoder.set_pixel_dims(Some(png::PixelDimensions {

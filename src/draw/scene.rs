@@ -123,6 +123,8 @@ pub struct Group {
     pub link: Option<String>,
     /// Box that cuts the items off: x, y, width, height in mm.
     pub clip: Option<[f64; 4]>,
+    /// Moves the items, their clip included, to the right and down, in mm.
+    pub shift: Option<(f64, f64)>,
     /// Items.
     pub items: Vec<Item>,
 }
@@ -143,6 +145,12 @@ impl Group {
     /// The same group cut off by a box.
     pub fn clipped(mut self, x: f64, y: f64, width: f64, height: f64) -> Self {
         self.clip = Some([x, y, width, height]);
+        self
+    }
+
+    /// The same group moved by `(x, y)` mm.
+    pub fn shifted(mut self, x: f64, y: f64) -> Self {
+        self.shift = Some((x, y));
         self
     }
 
@@ -217,7 +225,7 @@ impl Scene {
         }
     }
 
-    /// All lines of text in reading order.
+    /// All lines of text in reading order, where their groups put them before any shift.
     pub fn texts(&self) -> Vec<&Text> {
         fn collect<'a>(items: &'a [Item], all: &mut Vec<&'a Text>) {
             for item in items {
@@ -235,7 +243,30 @@ impl Scene {
 
     /// Boxes of all lines of text.
     pub fn text_boxes(&self) -> Vec<TextBox> {
-        self.texts().into_iter().map(TextBox::of).collect()
+        fn collect(items: &[Item], (dx, dy): (f64, f64), all: &mut Vec<TextBox>) {
+            for item in items {
+                match item {
+                    Item::Text(text) => {
+                        let text = TextBox::of(text);
+                        all.push(TextBox {
+                            left: text.left + dx,
+                            right: text.right + dx,
+                            top: text.top + dy,
+                            bottom: text.bottom + dy,
+                            ..text
+                        });
+                    }
+                    Item::Group(group) => {
+                        let (x, y) = group.shift.unwrap_or((0.0, 0.0));
+                        collect(&group.items, (dx + x, dy + y), all);
+                    }
+                    Item::Shape(_) | Item::Image(_) => {}
+                }
+            }
+        }
+        let mut all = Vec::new();
+        collect(&self.items, (0.0, 0.0), &mut all);
+        all
     }
 }
 

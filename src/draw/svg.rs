@@ -234,6 +234,9 @@ impl Writer {
         if !group.label.is_empty() {
             self.attribute("aria-label", &group.label);
         }
+        if let Some((x, y)) = group.shift {
+            self.attribute("transform", &format!("translate({} {})", coordinate(x), coordinate(y)));
+        }
         if let Some(id) = clip {
             self.attribute("clip-path", &format!("url(#{id})"));
         }

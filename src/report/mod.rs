@@ -1,5 +1,6 @@
 //! The sheets a user gets: ticket map, contact sheet, tables and JSON, as bytes.
 
+mod contact;
 mod findings;
 mod json;
 mod look;
@@ -10,6 +11,7 @@ mod plan;
 mod ticket;
 mod words;
 
+pub use contact::{ContactCell, ContactInput, ContactRow, Thumbnail, contact, contact_scenes, thumbnail};
 pub use findings::{Findings, Subject};
 pub use json::json;
 pub use look::Look;

@@ -191,7 +191,23 @@ pub(super) fn window(board: Bounds, data: &MapData, height_m: f64) -> Bounds {
     };
     let scale = |window: Bounds| View::fitted(window, 0.0, 0.0, MAP_WIDTH, MAP_HEIGHT).scale;
     let too_small = 3.0 * height_m * 1e3 * scale(whole) < 0.6;
-    if too_small || scale(wanted) >= 2.0 * scale(whole) { wanted } else { whole }
+    let larger = scale(wanted) / scale(whole);
+    if larger >= 3.0 || (too_small && larger > 1.2) { widened(wanted, whole, scale(wanted)) } else { whole }
+}
+
+/// The window grown to fill the room for the map at its scale, as far as there is board.
+fn widened(window: Bounds, whole: Bounds, scale: f64) -> Bounds {
+    let stretch = |low: f64, high: f64, room_mm: f64, least: f64, most: f64| {
+        let size = (room_mm * 1e-3 / scale).min(most - least);
+        if size <= high - low {
+            return (low, high);
+        }
+        let start = (0.5 * (low + high - size)).clamp(least, most - size);
+        (start, start + size)
+    };
+    let (x0, x1) = stretch(window.min.x, window.max.x, MAP_WIDTH, whole.min.x, whole.max.x);
+    let (y0, y1) = stretch(window.min.y, window.max.y, MAP_HEIGHT, whole.min.y, whole.max.y);
+    Bounds { min: Point::new(x0, y0), max: Point::new(x1, y1) }
 }
 
 fn sheet(input: &TicketInput) -> TicketSheet {

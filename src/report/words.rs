@@ -7,17 +7,17 @@ use crate::review::Band;
 pub(super) fn percent(share: f64) -> String {
     let value = (share * 100.0).round();
     let text = format!("{:.0}", value.abs());
-    if value < 0.0 { format!("\u{2212}{text} %") } else { format!("{text} %") }
+    if value < 0.0 { format!("\u{2212}{text}\u{a0}%") } else { format!("{text}\u{a0}%") }
 }
 
 /// A length in millimeters with three significant digits.
 pub(super) fn millimeters(meters: f64) -> String {
-    format!("{} mm", significant(meters * 1e3, 3))
+    format!("{}\u{a0}mm", significant(meters * 1e3, 3))
 }
 
 /// A length that was given or chosen, in millimeters without needless zeros.
 pub(super) fn given_millimeters(meters: f64) -> String {
-    format!("{} mm", bare(meters * 1e3))
+    format!("{}\u{a0}mm", bare(meters * 1e3))
 }
 
 /// A frequency without needless zeros, for example `10 MHz`.
@@ -28,7 +28,7 @@ pub(super) fn hertz(value_hz: f64) -> String {
         v if v >= 1e3 => (1e3, "kHz"),
         _ => (1.0, "Hz"),
     };
-    format!("{} {unit}", bare(value_hz / factor))
+    format!("{}\u{a0}{unit}", bare(value_hz / factor))
 }
 
 /// A number with at most four significant digits and without trailing zeros.
@@ -97,11 +97,11 @@ mod tests {
 
     #[test]
     fn quantities_in_words() {
-        assert_eq!(percent(0.634), "63 %");
-        assert_eq!(percent(-0.02), "\u{2212}2 %");
-        assert_eq!(hertz(1e7), "10 MHz");
-        assert_eq!(hertz(1.5e5), "150 kHz");
-        assert_eq!(hertz(0.0), "0 Hz");
+        assert_eq!(percent(0.634), "63\u{a0}%");
+        assert_eq!(percent(-0.02), "\u{2212}2\u{a0}%");
+        assert_eq!(hertz(1e7), "10\u{a0}MHz");
+        assert_eq!(hertz(1.5e5), "150\u{a0}kHz");
+        assert_eq!(hertz(0.0), "0\u{a0}Hz");
         let band = |from_hz, to_hz| Band { from_hz, to_hz, ..Band::default() };
         assert_eq!(band_range(&band(3e6, 3e7)), "3 to 30 MHz");
         assert_eq!(band_range(&band(3e5, 3e6)), "300 to 3000 kHz");
