@@ -199,7 +199,7 @@ fn head(page: &SetPage, style: &Style) -> Group {
         group.text(Text::new(LEFT, y, style.font.lead, Face::Regular, color.ink_soft, line));
     }
     group.text(Text::new(LEFT, 42.0, 4.6, Face::Bold, color.ink, "Net"));
-    let note = "plot: return within 3h, 0 to 100 %; dashed without voids";
+    let note = "plot: return within 3h; dashed: no voids";
     group.text(Text::new(LEFT, 46.0, style.font.tick, Face::Narrow, color.ink_soft, note));
     for (index, column) in page.columns.iter().enumerate() {
         let x = CELL_X + PITCH.0 * index as f64;

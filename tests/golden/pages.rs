@@ -1,7 +1,11 @@
-//! Whole pages: nothing overlaps, nothing leaves the page, sizes stay small.
+//! Whole pages: nothing overlaps, nothing leaves the page, contrast holds, sizes stay small, bytes stay the same.
 
 use crate::gauge::{Gauge, Shape, gauge};
-use ebbmap::report::{TicketInput, ticket};
+use ebbmap::draw::{Scene, TextBox};
+use ebbmap::report::{
+    ContactCell, ContactInput, ContactRow, Picture, TicketInput, contact_scenes, thumbnail, ticket_scene,
+};
+use ebbmap::review::{Band, Model};
 use ebbmap::style::Style;
 use std::path::PathBuf;
 
@@ -21,39 +25,272 @@ fn input<'a>(gauge: &'a Gauge, style: &'a Style) -> TicketInput<'a> {
         scale_height_m: gauge.net.charts[0].height_m,
         style,
         input_hash: "0",
-        sheet: (1, 1),
-        index: None,
+        sheet: (1, 12),
+        index: Some("../contact-1.svg"),
     }
 }
 
-fn out(name: &str) -> PathBuf {
+/// Writes the page where a person can look at it, and gives the picture.
+fn shown(name: &str, scene: &Scene) -> Picture {
     let folder = PathBuf::from(env!("CARGO_MANIFEST_DIR")).join("target/golden/pages");
     std::fs::create_dir_all(&folder).expect("a folder");
-    folder.join(name)
+    let start = std::time::Instant::now();
+    let picture = Picture::of(scene).expect("a picture");
+    println!(
+        "{name}: {:?}, SVG {} kB, PNG {} kB",
+        start.elapsed(),
+        picture.svg.len() / 1000,
+        picture.png.len() / 1000
+    );
+    std::fs::write(folder.join(format!("{name}.svg")), &picture.svg).expect("written");
+    std::fs::write(folder.join(format!("{name}.png")), &picture.png).expect("written");
+    picture
+}
+
+/// What is wrong with the text of a page.
+fn text_faults(scene: &Scene) -> Vec<String> {
+    let boxes = scene.text_boxes();
+    let mut wrong = Vec::new();
+    for (index, a) in boxes.iter().enumerate() {
+        if a.left < 2.0 || a.top < 1.0 || a.right > scene.width - 2.0 || a.bottom > scene.height - 1.0 {
+            wrong.push(format!("leaves the page: {}", words(a)));
+        }
+        for b in &boxes[..index] {
+            if a.overlaps(b, 0.15) {
+                wrong.push(format!("overlap: {} and {}", words(a), words(b)));
+            }
+        }
+    }
+    wrong
+}
+
+fn words(text: &TextBox) -> String {
+    format!(
+        "`{}` at ({:.1}, {:.1}) to ({:.1}, {:.1})",
+        text.content, text.left, text.top, text.right, text.bottom
+    )
+}
+
+fn long_name() -> String {
+    "PROBE_\u{6c34}\u{4f4d}_".to_owned() + &"X".repeat(91)
+}
+
+/// Boards that stress the layout.
+fn shapes() -> Vec<(&'static str, Shape)> {
+    let tall = Shape {
+        width: 30.0,
+        height: 90.0,
+        track: vec![(20.0, 80.0), (20.0, 40.0), (8.0, 28.0), (8.0, 10.0)],
+        slot: Some([4.0, 49.0, 24.0, 50.0]),
+        cell: 0.2,
+        ..Shape::default()
+    };
+    let flat = Shape {
+        width: 120.0,
+        height: 18.0,
+        track: vec![(110.0, 9.0), (60.0, 9.0), (56.0, 13.0), (10.0, 13.0)],
+        slot: Some([70.0, 5.0, 70.6, 12.0]),
+        pins: 0,
+        cell: 0.2,
+        ..Shape::default()
+    };
+    let small_net = Shape {
+        width: 160.0,
+        height: 100.0,
+        track: vec![(88.0, 52.0), (84.0, 52.0), (80.0, 48.0), (76.0, 48.0)],
+        slot: Some([81.0, 44.0, 81.5, 56.0]),
+        cell: 0.2,
+        ..Shape::default()
+    };
+    let named = Shape { net: long_name(), cell: 0.2, ..Shape::default() };
+    let hazard = Shape { net: "MAINS_SENSE".to_owned(), cell: 0.2, frequency_hz: 3e8, ..Shape::default() };
+    let spread = Shape { model: Model::Spread, cell: 0.2, zones: false, ..Shape::default() };
+    vec![
+        ("plain", Shape::default()),
+        ("tall", tall),
+        ("flat", flat),
+        ("window", small_net),
+        ("long-name", named),
+        ("hazard", hazard),
+        ("spread", spread),
+    ]
 }
 
 #[test]
-fn ticket_pages() {
-    let gauge = gauge(&Shape::default());
+fn ticket_pages_keep_their_text_apart() {
+    for (name, shape) in shapes() {
+        let gauge = gauge(&shape);
+        let style = style(if name == "tall" { "screen" } else { "paper" });
+        let start = std::time::Instant::now();
+        let scene = ticket_scene(&input(&gauge, &style));
+        println!("{name}: scene in {:?}", start.elapsed());
+        let picture = shown(&format!("ticket-{name}"), &scene);
+        let wrong = text_faults(&scene);
+        assert!(wrong.is_empty(), "{name}:\n{}", wrong.join("\n"));
+        assert!(picture.png.len() <= 650_000, "{name}: PNG of {} bytes", picture.png.len());
+        assert!(picture.svg.len() <= 900_000, "{name}: SVG of {} bytes", picture.svg.len());
+        assert!(scene.text_boxes().iter().all(|text| text.size >= 3.0), "{name}: type too small");
+    }
+}
+
+/// Ink of text outside the map against the page, and the named inks against their grounds (`style::check` does the
+/// rest): WCAG 2.2, 4.5 : 1.
+#[test]
+fn text_has_contrast() {
     for name in ["paper", "screen"] {
         let style = style(name);
-        let start = std::time::Instant::now();
-        let picture = ticket(&input(&gauge, &style)).expect("a picture");
-        let scene = ebbmap::report::ticket_scene(&input(&gauge, &style));
-        let t0 = start.elapsed();
-        let svg = ebbmap::draw::svg::write(&scene);
-        let t1 = start.elapsed();
-        let pixels = ebbmap::draw::png::render(&scene, &svg).expect("pixels");
-        let t2 = start.elapsed();
-        ebbmap::draw::png::encode(&scene, &pixels).expect("a file");
-        println!(
-            "until scene {t0:?} svg {:?} render {:?} encode {:?}",
-            t1 - t0,
-            t2 - t1,
-            start.elapsed() - t2
-        );
-        println!("{name}: {:?}, svg {} png {}", start.elapsed(), picture.svg.len(), picture.png.len());
-        std::fs::write(out(&format!("ticket-{name}.svg")), &picture.svg).expect("written");
-        std::fs::write(out(&format!("ticket-{name}.png")), &picture.png).expect("written");
+        let gauge = gauge(&Shape { cell: 0.4, ..Shape::default() });
+        let scene = ticket_scene(&input(&gauge, &style));
+        let inside = ["50 %", "80 %", "95 %"];
+        for text in scene.text_boxes() {
+            let contrast = text.fill.contrast(style.color.page);
+            assert!(
+                contrast >= 4.5 || inside.contains(&&*text.content),
+                "{name}: `{}` {contrast:.1}",
+                text.content
+            );
+        }
     }
+}
+
+#[test]
+fn escapes_and_markup_survive_in_the_file() {
+    let mut shape = Shape { cell: 0.4, ..Shape::default() };
+    shape.net = "A<B>&\"C\"\u{1}".to_owned();
+    let gauge = gauge(&shape);
+    let style = style("paper");
+    let picture = Picture::of(&ticket_scene(&input(&gauge, &style))).expect("a picture");
+    assert!(picture.svg.contains("A&lt;B&gt;&amp;"));
+    assert!(picture.svg.contains("\\u0001"));
+    assert!(picture.description.contains("63"));
+    assert!(!picture.svg.contains("\"-0\"") && !picture.svg.contains("NaN"));
+}
+
+fn bands() -> Vec<Band> {
+    let band = |name: &str, at: f64| Band {
+        name: name.to_owned(),
+        from_hz: 0.3 * at,
+        to_hz: 3.0 * at,
+        at_hz: vec![at],
+        explicit: false,
+    };
+    vec![
+        band("VLF", 1e4),
+        band("LF", 1e5),
+        band("MF", 1e6),
+        band("HF", 1e7),
+        band("VHF", 1e8),
+        band("UHF", 1e9),
+    ]
+}
+
+fn contact_pages(style: &Style, shapes: &[Shape], bands: &[Band]) -> Vec<Scene> {
+    let gauges: Vec<Gauge> = shapes.iter().map(gauge).collect();
+    let rows = gauges.iter().enumerate().map(|(index, gauge)| {
+        let cells = bands.iter().enumerate().map(|(column, _)| {
+            if index == 1 && column == 2 {
+                let reason = "landing `via of U5.20` of net `ADC_SCK` must lie on plane `L2-GND`; no copper within two cells";
+                return ContactCell::Withheld(reason.to_owned());
+            }
+            let mut figures = gauge.figures.clone();
+            let part = (column + 1) as f64 / bands.len() as f64;
+            figures.share_3h.value = Some(0.634 * part);
+            figures.share_3h.without_voids = Some(0.78 * part);
+            if let Some(extra) = &mut figures.extra_loop_inductance_h {
+                extra.value = Some(3.2e-9 * part / (index + 1) as f64);
+            }
+            let map = thumbnail(
+                &gauge.board,
+                &gauge.review,
+                &gauge.net,
+                &gauge.net.charts[0],
+                &gauge.map,
+                &figures,
+                0.2e-3,
+                style,
+            );
+            ContactCell::Map(Box::new(map), Some(format!("maps/net-{index}-{column}.svg")))
+        });
+        ContactRow { net: &gauge.net, chart: &gauge.net.charts[0], cells: cells.collect() }
+    });
+    let input = ContactInput {
+        board: &gauges[0].board,
+        review: &gauges[0].review,
+        columns: bands.iter().map(|band| (band, band.at_hz[0])).collect(),
+        rows: rows.collect(),
+        scale_height_m: 0.2e-3,
+        style,
+        input_hash: "0",
+    };
+    contact_scenes(&input)
+}
+
+fn some_nets(count: usize, base: &Shape) -> Vec<Shape> {
+    let mut shapes: Vec<Shape> = (0..count)
+        .map(|n| {
+            let mut shape = base.clone();
+            shape.net = format!("LEVEL_{n}");
+            for point in &mut shape.track {
+                point.1 += 1.5 * n as f64;
+            }
+            shape
+        })
+        .collect();
+    if count > 3 {
+        shapes[3].net = long_name();
+    }
+    shapes
+}
+
+#[test]
+fn contact_sheets_keep_their_text_apart() {
+    let base = Shape { cell: 0.25, ..Shape::default() };
+    let tall = Shape {
+        width: 30.0,
+        height: 90.0,
+        track: vec![(20.0, 80.0), (20.0, 40.0), (8.0, 28.0), (8.0, 10.0)],
+        slot: Some([4.0, 49.0, 24.0, 50.0]),
+        ..base.clone()
+    };
+    for (name, base, look) in [("wide", &base, "paper"), ("tall", &tall, "screen")] {
+        let style = style(look);
+        let scenes = contact_pages(&style, &some_nets(6, base), &bands());
+        assert_eq!(scenes.len(), 4, "six rows and six columns make two by two pages");
+        for (index, scene) in scenes.iter().enumerate() {
+            let wrong = text_faults(scene);
+            assert!(wrong.is_empty(), "{name}, page {}:\n{}", index + 1, wrong.join("\n"));
+        }
+        let first = shown(&format!("contact-{name}"), &scenes[0]);
+        assert!(first.svg.contains("href=\"maps/net-0-0.svg\""));
+        assert!(first.description.contains("withheld"));
+        shown(&format!("contact-{name}-last"), &scenes[3]);
+    }
+}
+
+#[test]
+fn rows_are_ordered_by_loop_inductance_then_name() {
+    let base = Shape { cell: 0.5, ..Shape::default() };
+    let style = style("paper");
+    let scenes = contact_pages(&style, &some_nets(3, &base), &bands()[..2]);
+    let names: Vec<String> = scenes[0]
+        .text_boxes()
+        .into_iter()
+        .map(|text| text.content)
+        .filter(|text| text.starts_with("LEVEL_"))
+        .collect();
+    assert_eq!(names, ["LEVEL_0", "LEVEL_1", "LEVEL_2"]);
+}
+
+#[test]
+fn the_same_bytes_again_and_from_threads() {
+    let gauge = gauge(&Shape { cell: 0.4, ..Shape::default() });
+    let style = style("paper");
+    let once = || Picture::of(&ticket_scene(&input(&gauge, &style))).expect("a picture");
+    let first = once();
+    std::thread::scope(|scope| {
+        let all: Vec<_> = (0..3).map(|_| scope.spawn(once)).collect();
+        for thread in all {
+            assert_eq!(thread.join().expect("no panic"), first);
+        }
+    });
 }

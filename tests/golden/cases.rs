@@ -1,0 +1,246 @@
+//! The golden cases: one small scene for each thing that could break.
+
+use crate::compare::{Case, blessing, check, read_case, root};
+use crate::gauge::{Shape as Board, gauge};
+use ebbmap::draw::density::Density;
+use ebbmap::draw::frame::{LegendEntry, caution, color_scale, legend, rulers, scale_bar, title_strip};
+use ebbmap::draw::map::{MapData, MapLeg, MapLook, MapPin, draw_map};
+use ebbmap::draw::panel::{KeyFigure, KeyRow, Panel, Section, SectionLayer};
+use ebbmap::draw::plot::share_plot;
+use ebbmap::draw::{DensityScale, Group, Scene, Text, View, italic, plain, raised, shortened};
+use ebbmap::geom::{Bounds, Point};
+use ebbmap::style::{Face, Style};
+use std::collections::BTreeSet;
+
+/// A case: folder and scene.
+type Golden = (&'static str, fn() -> Scene);
+
+const CASES: &[Golden] = &[
+    ("map/paper", || map_scene("paper", false)),
+    ("map/screen", || map_scene("screen", false)),
+    ("map/turned", turned),
+    ("frame/color-scale", scale_scene),
+    ("frame/legend", legend_scene),
+    ("frame/rulers", rulers_scene),
+    ("frame/title-strip", strip_scene),
+    ("panel/figures", figures_scene),
+    ("panel/section", section_scene),
+    ("plot/share", plot_scene),
+    ("text/names", names_scene),
+];
+
+#[test]
+fn golden_cases_match() {
+    assert!(!CASES.is_empty());
+    let wrong: Vec<String> = CASES.iter().flat_map(|(path, scene)| check(path, &scene())).collect();
+    assert!(wrong.is_empty(), "\n{}", wrong.join("\n"));
+    assert!(!blessing(), "references were rewritten");
+}
+
+#[test]
+fn every_reference_has_its_case_and_titles_are_unique() {
+    let mut found = BTreeSet::new();
+    for group in
+        std::fs::read_dir(root()).expect("the folder").flatten().filter(|entry| entry.path().is_dir())
+    {
+        for case in std::fs::read_dir(group.path()).expect("a group").flatten() {
+            found.insert(format!("{}/{}", group.file_name().display(), case.file_name().display()));
+        }
+    }
+    let known: BTreeSet<String> = CASES.iter().map(|(path, _)| (*path).to_owned()).collect();
+    assert_eq!(found, known);
+    let cases: Vec<Case> = CASES.iter().map(|(path, _)| read_case(path).expect("a case")).collect();
+    let titles: BTreeSet<&str> = cases.iter().map(|case| case.title.as_str()).collect();
+    assert_eq!(titles.len(), CASES.len(), "titles must differ");
+    assert!(cases.iter().all(|case| !case.guards.is_empty() && case.large.as_deref() != Some("")));
+}
+
+fn style(name: &str) -> Style {
+    ebbmap::read::style::built_in(name).expect("a style of the program")
+}
+
+/// A small sheet, 240 pixels wide at most.
+fn small(style: &Style, width: f64, height: f64, group: Group) -> Scene {
+    let mut scene = Scene {
+        width,
+        height,
+        px: (width * 5.0).min(240.0) as u32,
+        page: style.color.page,
+        fallback: style.font.fallback.clone(),
+        title: "case".to_owned(),
+        ..Scene::default()
+    };
+    scene.group(group);
+    scene
+}
+
+const SCALE: DensityScale = DensityScale { height_m: 0.2e-3, range_db: 60.0 };
+
+fn board(shape: &Board) -> (MapData, Bounds) {
+    let gauge = gauge(shape);
+    let net = &gauge.net;
+    let pin = |name: &str, at: Point| Some(MapPin { name: name.to_owned(), at });
+    let plane = &gauge.board.layers[1].areas[0].shape;
+    let data = MapData {
+        density: Density::of(&gauge.map),
+        plane: vec![plane.clone()],
+        idle: Vec::new(),
+        outline: gauge.board.outline.clone(),
+        zones: gauge.review.zones.iter().map(|zone| (zone.name.clone(), zone.outline.clone())).collect(),
+        track: net.track.iter().map(|leg| MapLeg { from: leg.from, to: leg.to, charted: true }).collect(),
+        driver: pin("U5.19", net.track[0].from),
+        receiver: pin("U2.6", net.track[net.track.len() - 1].to),
+        landings: vec![net.charts[0].driver_landing.at, net.charts[0].receiver_landing.at],
+        levels: gauge.figures.contour_levels,
+    };
+    (data, gauge.board.outline.bounds())
+}
+
+fn little() -> Board {
+    Board {
+        width: 30.0,
+        height: 20.0,
+        track: vec![(24.0, 12.0), (18.0, 12.0), (15.0, 9.0), (7.0, 9.0)],
+        slot: Some([11.0, 6.0, 11.8, 15.0]),
+        pins: 4,
+        ..Board::default()
+    }
+}
+
+fn map_scene(name: &str, small_cell: bool) -> Scene {
+    let style = style(name);
+    let (data, bounds) = board(&little());
+    let view = View { window: bounds.grown(0.5e-3), x: 1.0, y: 1.0, scale: 1.5, turned: false };
+    let look = MapLook { style: &style, scale: SCALE, px_per_mm: 4.0, small: small_cell };
+    small(&style, 48.0, 33.0, draw_map(&data, &view, &look, "a map").group)
+}
+
+fn turned() -> Scene {
+    let style = style("paper");
+    let shape =
+        Board { width: 20.0, height: 30.0, track: vec![(10.0, 24.0), (10.0, 8.0)], slot: None, ..little() };
+    let (data, bounds) = board(&shape);
+    let view = View::filling(bounds, 1.0, 1.0, 46.0, 30.0);
+    let look = MapLook { style: &style, scale: SCALE, px_per_mm: 4.0, small: true };
+    small(&style, 48.0, 32.0, draw_map(&data, &view, &look, "a map").group)
+}
+
+fn scale_scene() -> Scene {
+    let style = style("paper");
+    let (data, bounds) = board(&little());
+    let view = View { window: bounds, x: 0.0, y: 0.0, scale: 3.0, turned: false };
+    let look = MapLook { style: &style, scale: SCALE, px_per_mm: 1.0, small: false };
+    let drawn = draw_map(&data, &view, &look, "a map");
+    small(&style, 96.0, 14.0, color_scale(4.0, 5.0, 68.0, &SCALE, &drawn.contours, &style))
+}
+
+fn legend_scene() -> Scene {
+    let style = style("paper");
+    let entries = [
+        LegendEntry::Track,
+        LegendEntry::OtherTrack,
+        LegendEntry::NoCopper,
+        LegendEntry::IdleCopper,
+        LegendEntry::Boundary,
+        LegendEntry::Driver,
+        LegendEntry::Receiver,
+        LegendEntry::Landing,
+        LegendEntry::Contour80,
+    ];
+    small(&style, 80.0, 30.0, legend(2.0, 5.0, 76.0, &entries, &style).0)
+}
+
+fn rulers_scene() -> Scene {
+    let style = style("screen");
+    let window = Bounds { min: Point::mm(72.0, -31.0), max: Point::mm(108.0, -9.0) };
+    let view = View { window, x: 9.0, y: 2.0, scale: 1.25, turned: false };
+    let mut group = rulers(&view, Point::mm(77.2, -20.0), &style);
+    group.group(scale_bar(&view, 54.0, 36.5, &style));
+    small(&style, 57.0, 40.0, group)
+}
+
+fn strip_scene() -> Scene {
+    let style = style("paper");
+    let fields = [
+        ("Board", "Saltmarsh tide gauge".to_owned()),
+        ("Net", "SENSOR_".repeat(14) + "P"),
+        ("Residual", format!("3.5 \u{d7} 10{}", raised("\u{2212}7"))),
+    ];
+    let mut group = title_strip(2.0, 2.0, 92.0, &fields, &style);
+    group.group(caution(2.0, 18.0, 92.0, "Quasi-static sheet model: no radiation, no parts.", &style));
+    small(&style, 96.0, 22.0, group)
+}
+
+fn figures_scene() -> Scene {
+    let style = style("paper");
+    let row = |name: &str, bar, tick| KeyRow {
+        name: name.to_owned(),
+        value: "1.17 mm".to_owned(),
+        reference: "0.616 mm".to_owned(),
+        bar: Some(bar),
+        tick: Some(tick),
+    };
+    let figures = vec![
+        KeyFigure {
+            name: format!("Return within 3{}", italic("h")),
+            value: "63 %".to_owned(),
+            bar: Some(0.63),
+            tick: Some(0.78),
+            notes: vec!["without voids 78 %; more is better".to_owned()],
+            rows: Vec::new(),
+        },
+        KeyFigure {
+            name: "Half-width that holds".to_owned(),
+            rows: vec![row("50 %", 0.1, 0.05), row("95 %", 1.0, 0.4)],
+            ..KeyFigure::default()
+        },
+    ];
+    let panel = Panel::figures(figures);
+    small(&style, 68.0, panel.height + 3.0, panel.draw(2.0, 1.0, &style))
+}
+
+fn section_scene() -> Scene {
+    let style = style("screen");
+    let layer = |name: &str, track, plane| SectionLayer { name: name.to_owned(), track, plane };
+    let section = Section {
+        layers: vec![layer("L2", false, false), layer("L3 GND", false, true), layer("L4 track", true, false)],
+        height_m: 0.2e-3,
+        width_m: 0.4e-3,
+        scale: SCALE,
+    };
+    let panel = Panel::section(section);
+    small(&style, 68.0, panel.height + 2.0, panel.draw(2.0, 1.0, &style))
+}
+
+fn plot_scene() -> Scene {
+    let style = style("paper");
+    let points = [
+        (1e4, Some(0.1), Some(0.12)),
+        (1e5, None, Some(0.5)),
+        (1e6, Some(0.6), Some(0.76)),
+        (1e7, Some(0.75), Some(0.78)),
+    ];
+    let words: Vec<String> = ["10 kHz", "100 kHz", "1 MHz", "10 MHz"].map(str::to_owned).to_vec();
+    small(&style, 62.0, 24.0, share_plot((3.0, 2.0, 44.0, 16.0), &points, &words, &style))
+}
+
+fn names_scene() -> Scene {
+    let style = style("paper");
+    let mut group = Group::new("names");
+    let long = "TIDE_".repeat(20);
+    let ink = style.color.ink;
+    let size = 3.4;
+    group.text(Text::new(
+        2.0,
+        5.0,
+        size,
+        Face::NarrowBold,
+        ink,
+        &shortened(Face::NarrowBold, size, &long, 44.0),
+    ));
+    group.text(Text::new(2.0, 10.0, size, Face::Narrow, ink, &plain("水位_\u{7}<&>\"")));
+    group.text(Text::new(2.0, 15.0, size, Face::Narrow, ink, "Уровень 3 m\u{3a9}"));
+    let marked = format!("{} = 3.5 \u{d7} 10{} m", italic("h"), raised("\u{2212}4"));
+    group.text(Text::new(2.0, 20.0, size, Face::Narrow, ink, &marked).with_halo(style.color.hair));
+    small(&style, 48.0, 23.0, group)
+}
