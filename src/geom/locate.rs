@@ -62,9 +62,10 @@ impl Locator {
         let nothing = Edge { polygon: 0, low: Point::default(), high: Point::default() };
         this.edges = vec![nothing; this.starts[n_bands]];
         for edge in &all {
-            for band in this.band(edge.low.y)..=this.band(edge.high.y) {
-                this.edges[next[band]] = *edge;
-                next[band] += 1;
+            let (first, last) = (this.band(edge.low.y), this.band(edge.high.y));
+            for slot in &mut next[first..=last] {
+                this.edges[*slot] = *edge;
+                *slot += 1;
             }
         }
         this

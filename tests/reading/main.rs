@@ -8,6 +8,8 @@
 //! - `mutation`: no input makes the reader panic.
 //! - `real`: areas, holes and counts of real boards against independent counts.
 
+#![allow(clippy::unwrap_used)]
+
 mod copper;
 mod holes;
 mod malformed;
