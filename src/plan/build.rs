@@ -254,9 +254,7 @@ impl<'b> Planner<'b> {
             for k in 0..n {
                 let at = leg.from + (leg.to - leg.from) * ((k as f64 + 0.5) / n as f64);
                 let reach = 0.5 * leg.width_m + BESIDE_HEIGHTS * height_m;
-                let near = self.terrain.copper_near(leg.layer, &[at], reach);
-                let mut nets = near.into_iter().map(|area| self.terrain.net_of(leg.layer, area));
-                if nets.any(|net| self.terrain.is_reference(net)) {
+                if self.terrain.reference_near(leg.layer, &[at], reach) {
                     beside_m += length / n as f64;
                 }
             }

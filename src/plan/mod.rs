@@ -11,6 +11,7 @@ mod stretch;
 mod terrain;
 mod touch;
 mod void;
+mod web;
 
 pub use build::build;
 pub use request::{apply_review, matches};

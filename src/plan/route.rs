@@ -14,6 +14,8 @@ use std::collections::{BTreeMap, BTreeSet};
 
 /// Off the way, copper shorter than this is no branch, in metres.
 const BRANCH_M: f64 = 0.5e-3;
+/// A second way shorter than this lies within pads and bends and is no loop, in metres.
+const LOOP_M: f64 = 1.5e-3;
 /// Most branches that a note lists.
 const LISTED: usize = 6;
 
@@ -287,7 +289,7 @@ impl Off<'_> {
         for (index, edge) in self.graph.edges.iter().enumerate() {
             let beside =
                 !self.way.contains(&index) && self.on_way.contains(&edge.a) && self.on_way.contains(&edge.b);
-            if beside && edge.run == Run::Track && edge.length_m > BRANCH_M {
+            if beside && edge.run == Run::Track && edge.length_m > LOOP_M {
                 let between = (self.along[&edge.a] - self.along[&edge.b]).abs();
                 if between > edge.width_m {
                     loops.push((edge.length_m, self.graph.nodes[edge.a].1, self.graph.nodes[edge.b].1));
@@ -311,7 +313,7 @@ impl Off<'_> {
         let last = feet.iter().max_by(|a, b| by_station(a).total_cmp(&by_station(b)));
         let (Some(&first), Some(&last)) = (first, last) else { return };
         let at = |node: usize| self.graph.nodes[node].1;
-        if self.along[&last] - self.along[&first] > BRANCH_M.max(0.5 * reach) && drawn_m > BRANCH_M {
+        if self.along[&last] - self.along[&first] > LOOP_M.max(0.5 * reach) && drawn_m > LOOP_M {
             loops.push((drawn_m, at(first), at(last)));
         } else if !has_pin && reach > BRANCH_M && drawn_m > BRANCH_M {
             stubs.push((reach, at(first)));

@@ -22,6 +22,8 @@ struct Layer {
     locator: Locator,
     /// Whether each piece of copper is an area (a plane or a pour, with whatever hangs on it) and not just tracks.
     is_area: Vec<bool>,
+    /// Copper of reference nets.
+    reference: Locator,
 }
 
 /// A plated hole that reaches a plane.
@@ -36,9 +38,10 @@ pub struct Via {
 impl<'b> Terrain<'b> {
     /// Prepares `board`; `reference` are the names of its reference nets.
     pub fn new(board: &'b Board, reference: &[String]) -> Self {
-        let layers = (0..board.layers.len()).map(|layer| Layer::new(board, layer)).collect();
         let is_reference = |net: &crate::board::Net| reference.contains(&net.name);
-        Self { board, layers, reference: board.nets.iter().map(is_reference).collect() }
+        let reference: Vec<bool> = board.nets.iter().map(is_reference).collect();
+        let layers = (0..board.layers.len()).map(|layer| Layer::new(board, layer, &reference)).collect();
+        Self { board, layers, reference }
     }
 
     /// Whether a net is a reference net.
@@ -51,9 +54,9 @@ impl<'b> Terrain<'b> {
         self.layers[layer].locator.containing(point)
     }
 
-    /// Pieces of copper of a layer within `distance_m` of a line, by index.
-    pub fn copper_near(&self, layer: usize, path: &[Point], distance_m: f64) -> Vec<usize> {
-        self.layers[layer].locator.touching(path, distance_m)
+    /// Whether copper of a reference net comes within `distance_m` of a line on its layer.
+    pub fn reference_near(&self, layer: usize, path: &[Point], distance_m: f64) -> bool {
+        !self.layers[layer].reference.touching(path, distance_m).is_empty()
     }
 
     /// The area of a layer at a point, by index.
@@ -95,7 +98,7 @@ impl<'b> Terrain<'b> {
 }
 
 impl Layer {
-    fn new(board: &Board, layer: usize) -> Self {
+    fn new(board: &Board, layer: usize, reference: &[bool]) -> Self {
         let copper = &board.layers[layer];
         let locator = Locator::new(copper.areas.iter().map(|area| &area.shape));
         let mut is_area: Vec<bool> = copper.areas.iter().map(|area| wide(&area.shape)).collect();
@@ -112,7 +115,10 @@ impl Layer {
                 is_area[index] |= copper.areas[index].net == object.net;
             }
         }
-        Self { locator, is_area }
+        let of_reference =
+            copper.areas.iter().filter(|area| area.net.is_some_and(|net| reference[net.0 as usize]));
+        let reference = Locator::new(of_reference.map(|area| &area.shape));
+        Self { locator, is_area, reference }
     }
 }
 

@@ -1,8 +1,7 @@
 //! Voids of a plane: what is missing of it inside the outline.
 //!
 //! The plane's pull-back from the outline is taken off first: it is the distance that nine tenths of the outline keep
-//! from the plane's copper. Voids with webs narrower than 2h between them count as one; the webs are filled by growing
-//! and shrinking by h.
+//! from the plane's copper. Voids with webs narrower than 2h between them count as one, webs included.
 
 use super::Void;
 use super::terrain::rim_length_m;
@@ -59,7 +58,8 @@ pub fn missing(board: &Board, plane: &PlaneId) -> Region {
             continue;
         }
         let whole = Region(vec![polygon]);
-        let core = boolean::offset(&whole, -0.5 * SLIVER_M);
+        let coarse = Region(vec![simplified(&whole.0[0], 0.02 * SLIVER_M)]);
+        let core = boolean::offset(&coarse, -0.5 * SLIVER_M);
         let opened = boolean::intersection(&boolean::offset(&core, 0.5 * SLIVER_M), &whole);
         kept.extend(opened.0.into_iter().filter(|polygon| polygon.area() >= SMALLEST_M2));
     }
@@ -108,14 +108,7 @@ fn pull_back(outline: &Region, copper: &Region) -> f64 {
 
 /// Joins voids whose webs are narrower than 2h, and names them by layer and centre.
 pub fn voids(missing: &Region, plane: &PlaneId, height_m: f64, origin: Point) -> Vec<Void> {
-    let mut found: Vec<Polygon> = Vec::new();
-    for group in groups(missing, 2.0 * height_m) {
-        if let [only] = group[..] {
-            found.push(missing.0[only].clone());
-        } else {
-            found.extend(joined(missing, &group, height_m));
-        }
-    }
+    let found = super::web::joined(missing, 2.0 * height_m);
     let mut named: Vec<(Point, Polygon)> = found.into_iter().map(|shape| (centroid(&shape), shape)).collect();
     named.sort_by(|a, b| a.0.y.total_cmp(&b.0.y).then(a.0.x.total_cmp(&b.0.x)));
     let mut uses: BTreeMap<String, usize> = BTreeMap::new();
@@ -130,65 +123,8 @@ pub fn voids(missing: &Region, plane: &PlaneId, height_m: f64, origin: Point) ->
     named.into_iter().map(name).collect()
 }
 
-/// Indices of voids that lie within `distance_m` of each other, directly or through others.
-fn groups(missing: &Region, distance_m: f64) -> Vec<Vec<usize>> {
-    let n = missing.0.len();
-    let locator = Locator::new(&missing.0);
-    let mut root: Vec<usize> = (0..n).collect();
-    fn find(root: &mut [usize], mut at: usize) -> usize {
-        while root[at] != at {
-            root[at] = root[root[at]];
-            at = root[at];
-        }
-        at
-    }
-    for (index, polygon) in missing.0.iter().enumerate() {
-        for ring in polygon.rings() {
-            let mut path = ring.clone();
-            path.extend(ring.first().copied());
-            for other in locator.rims_near(&path, distance_m - boolean::GRID_M) {
-                let (a, b) = (find(&mut root, index), find(&mut root, other));
-                root[a.max(b)] = a.min(b);
-            }
-        }
-    }
-    let mut by_root: BTreeMap<usize, Vec<usize>> = BTreeMap::new();
-    for index in 0..n {
-        let at = find(&mut root, index);
-        by_root.entry(at).or_default().push(index);
-    }
-    by_root.into_values().collect()
-}
-
-/// One polygon of several voids: webs filled by growing and shrinking, what is still apart joined by a thin strip.
-fn joined(missing: &Region, group: &[usize], height_m: f64) -> Vec<Polygon> {
-    let members = Region(group.iter().map(|&index| missing.0[index].clone()).collect());
-    let coarse = Region(members.0.iter().map(|polygon| simplified(polygon, 0.02 * height_m)).collect());
-    let grown = boolean::offset(&coarse, height_m);
-    let closed = boolean::offset(&grown, -height_m);
-    let mut whole = boolean::union([&closed, &members]);
-    while whole.0.len() > 1 {
-        let mut best = (f64::INFINITY, Point::default(), Point::default());
-        for &a in &whole.0[0].outer {
-            for &b in whole.0[1..].iter().flat_map(|polygon| &polygon.outer) {
-                let distance = a.distance(b);
-                if distance < best.0 {
-                    best = (distance, a, b);
-                }
-            }
-        }
-        let strip = stroke::capsule(best.1, best.2, 0.1 * height_m);
-        let count = whole.0.len();
-        whole = boolean::union_with([&whole], &[strip]);
-        if whole.0.len() >= count {
-            break;
-        }
-    }
-    whole.0
-}
-
 /// A polygon with fewer corners, none farther than `tolerance_m` from where it was.
-fn simplified(polygon: &Polygon, tolerance_m: f64) -> Polygon {
+pub fn simplified(polygon: &Polygon, tolerance_m: f64) -> Polygon {
     let outer = simplified_ring(&polygon.outer, tolerance_m);
     let holes = polygon.holes.iter().map(|ring| simplified_ring(ring, tolerance_m));
     Polygon { outer, holes: holes.filter(|ring| ring.len() > 2).collect() }
