@@ -224,7 +224,10 @@ fn branches(
     if !loops.is_empty() {
         let list: Vec<String> = loops
             .iter()
-            .map(|(reach, a, b)| format!("{} from {} to {}", length_text(*reach), words(*a), words(*b)))
+            .map(|(length_m, a, b)| {
+                let what = length_m.map_or_else(|| "filled copper".into(), length_text);
+                format!("{what} from {} to {}", words(*a), words(*b))
+            })
             .collect();
         let text = format!(
             "copper of net `{name}` closes a loop beside the way: {}; all current is taken along the shorter way",
@@ -251,7 +254,16 @@ struct Off<'g> {
 }
 
 type Stub = (f64, Point);
-type Loop = (f64, Point, Point);
+/// Length of the second way (none through filled copper), and where it leaves and meets the first.
+type Loop = (Option<f64>, Point, Point);
+
+/// Connected copper off the way.
+#[derive(Default)]
+struct Group {
+    drawn_m: f64,
+    filled: bool,
+    has_pin: bool,
+}
 
 impl Off<'_> {
     /// Open branches with how far they reach, and loops with their length off the way.
@@ -265,15 +277,22 @@ impl Off<'_> {
             let mut open = vec![start];
             seen[start] = true;
             let mut feet: BTreeSet<usize> = BTreeSet::new();
-            let (mut reach, mut has_pin, mut drawn_m) = (0.0f64, false, 0.0);
+            let mut reach = 0.0f64;
+            let mut group = Group::default();
+            let mut drawn: BTreeSet<usize> = BTreeSet::new();
             while let Some(node) = open.pop() {
                 reach = reach.max(self.best[node].0);
-                has_pin |= at_pins.contains(&node);
+                group.has_pin |= at_pins.contains(&node);
                 for &index in &self.graph.at[node] {
                     let edge = &self.graph.edges[index];
-                    if matches!(edge.run, Run::Track | Run::Pour) {
-                        drawn_m += edge.length_m;
-                    }
+                    match edge.run {
+                        Run::Track => drawn.insert(index),
+                        Run::Pour => {
+                            group.filled = true;
+                            false
+                        }
+                        _ => false,
+                    };
                     let other = edge.a + edge.b - node;
                     if self.on_way.contains(&other) {
                         feet.insert(other);
@@ -283,7 +302,8 @@ impl Off<'_> {
                     }
                 }
             }
-            self.sort_out(&feet, reach, drawn_m, has_pin, &mut stubs, &mut loops);
+            group.drawn_m = drawn.iter().map(|&index| self.graph.edges[index].length_m).sum();
+            self.sort_out(&feet, reach, &group, &mut stubs, &mut loops);
         }
         // Edges beside the way between two of its own nodes.
         for (index, edge) in self.graph.edges.iter().enumerate() {
@@ -292,7 +312,7 @@ impl Off<'_> {
             if beside && edge.run == Run::Track && edge.length_m > LOOP_M {
                 let between = (self.along[&edge.a] - self.along[&edge.b]).abs();
                 if between > edge.width_m {
-                    loops.push((edge.length_m, self.graph.nodes[edge.a].1, self.graph.nodes[edge.b].1));
+                    loops.push((Some(edge.length_m), self.graph.nodes[edge.a].1, self.graph.nodes[edge.b].1));
                 }
             }
         }
@@ -303,8 +323,7 @@ impl Off<'_> {
         &self,
         feet: &BTreeSet<usize>,
         reach: f64,
-        drawn_m: f64,
-        has_pin: bool,
+        group: &Group,
         stubs: &mut Vec<Stub>,
         loops: &mut Vec<Loop>,
     ) {
@@ -313,9 +332,11 @@ impl Off<'_> {
         let last = feet.iter().max_by(|a, b| by_station(a).total_cmp(&by_station(b)));
         let (Some(&first), Some(&last)) = (first, last) else { return };
         let at = |node: usize| self.graph.nodes[node].1;
-        if self.along[&last] - self.along[&first] > LOOP_M.max(0.5 * reach) && drawn_m > LOOP_M {
-            loops.push((drawn_m, at(first), at(last)));
-        } else if !has_pin && reach > BRANCH_M && drawn_m > BRANCH_M {
+        if self.along[&last] - self.along[&first] > LOOP_M.max(0.5 * reach)
+            && (group.filled || group.drawn_m > LOOP_M)
+        {
+            loops.push((if group.filled { None } else { Some(group.drawn_m) }, at(first), at(last)));
+        } else if !group.has_pin && reach > BRANCH_M && group.drawn_m > BRANCH_M {
             stubs.push((reach, at(first)));
         }
     }
