@@ -84,6 +84,7 @@ pub fn index(entries: &[Numbers], origin: Point) -> String {
         time_factor: "exp(+jwt)",
         maps: entries.iter().map(|entry| described(entry, origin)).collect(),
     };
+    // Plain structures with text keys and numbers: writing them to a text cannot fail.
     let mut text = serde_json::to_string_pretty(&index).unwrap_or_default();
     text.push('\n');
     text
