@@ -11,7 +11,7 @@ from pathlib import Path
 from gerbonara import ExcellonFile, GerberFile
 from gerbonara.graphic_objects import Arc, Flash, Line, Region
 from gerbonara.utils import MM
-from shapely import Polygon, unary_union
+from shapely import Polygon, affinity, box, unary_union
 from shapely.geometry import LineString, Point
 
 SAGITTA_MM = 0.5e-3
@@ -111,6 +111,10 @@ def _shape(primitive):
         if math.dist(start, end) == 0 and name == "Line":
             return Point(start).buffer(radius, quad_segs=segments)
         return LineString(path).buffer(radius, quad_segs=segments)
+    if name == "Rectangle":  # its own polygon is wrong when it is turned (gerbonara 1.5.0); its SVG turns it so:
+        w, h = primitive.w / 2, primitive.h / 2
+        upright = box(primitive.x - w, primitive.y - h, primitive.x + w, primitive.y + h)
+        return affinity.rotate(upright, primitive.rotation, origin=(primitive.x, primitive.y), use_radians=True)
     return _polygon(primitive.to_arc_poly())
 
 
@@ -138,8 +142,11 @@ def compose(gerber):
     return copper
 
 
-def largest(copper):
-    """Area in mm2 and number of holes of the largest connected piece."""
-    pieces = getattr(copper, "geoms", [copper])
-    piece = max(pieces, key=lambda piece: piece.area)
-    return piece.area, len(piece.interiors)
+def largest_region(gerber):
+    """Area in mm2 and number of holes of the largest G36 region of a file, cut-ins resolved; none without regions."""
+    shapes = [_polygon(p) for thing in gerber.objects if isinstance(thing, Region) for p in thing.to_primitives(MM)]
+    if not shapes:
+        return None
+    shape = max(shapes, key=lambda shape: shape.area)
+    pieces = getattr(shape, "geoms", [shape])
+    return shape.area, sum(len(piece.interiors) for piece in pieces)
