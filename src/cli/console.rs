@@ -1,7 +1,8 @@
 //! Where a command writes: results to standard output, messages to standard error.
 
 use super::Exit;
-use crate::diag::{Diagnostic, Severity};
+use crate::diag::Diagnostic;
+use crate::diag::snippet::{Ink, render};
 use std::io::{IsTerminal, Write};
 
 /// The two streams of a command. A reader that goes away is a success: the rest is simply not written.
@@ -13,7 +14,7 @@ pub struct Console {
 }
 
 impl Console {
-    /// The streams of this process. Color only on a terminal, and never when `NO_COLOR` is set.
+    /// The streams of this process.
     pub fn of_process() -> Self {
         Self {
             out: Box::new(std::io::BufWriter::new(std::io::stdout())),
@@ -28,9 +29,9 @@ impl Console {
         self.terminal
     }
 
-    /// Whether messages may carry color.
-    pub fn has_color(&self) -> bool {
-        self.terminal && std::env::var_os("NO_COLOR").is_none_or(|value| value.is_empty())
+    /// Whether messages may carry color: only on a terminal, and never when `NO_COLOR` is set.
+    pub fn ink(&self) -> Ink {
+        Ink::for_stream(self.terminal, std::env::var_os("NO_COLOR").as_deref())
     }
 
     /// Writes a result, which brings its own line ends.
@@ -41,26 +42,7 @@ impl Console {
 
     /// Writes a message.
     pub fn message(&mut self, message: &Diagnostic) {
-        let mut text = String::new();
-        let (word, color) = match message.severity {
-            Severity::Error => ("error", "31"),
-            Severity::Warning => ("warning", "33"),
-            Severity::Note => ("note", "36"),
-        };
-        if self.has_color() {
-            text.push_str(&format!(
-                "\x1b[1;{color}m{word}[{}]\x1b[0m: {}\n",
-                message.code.name, message.text
-            ));
-        } else {
-            text.push_str(&format!("{word}[{}]: {}\n", message.code.name, message.text));
-        }
-        if let Some(place) = message.place.in_words() {
-            text.push_str(&format!("  at {place}\n"));
-        }
-        for hint in &message.hints {
-            text.push_str(&format!("  hint: {hint}\n"));
-        }
+        let text = render(message, None, self.ink());
         self.remark(&text);
     }
 

@@ -9,6 +9,7 @@ mod draw;
 mod exit;
 mod explain;
 mod look;
+mod progress;
 
 pub use console::Console;
 pub use exit::Exit;

@@ -20,7 +20,7 @@ pub struct Findings {
     schema: u32,
     board: BoardEntry,
     maps: Vec<MapEntry>,
-    skipped: Vec<SkippedEntry>,
+    skipped: Vec<MessageEntry>,
     messages: Vec<MessageEntry>,
     #[serde(skip)]
     origin: Point,
@@ -98,12 +98,6 @@ struct FiguresEntry {
 }
 
 #[derive(Clone, Debug, Serialize)]
-struct SkippedEntry {
-    net: String,
-    reason: MessageEntry,
-}
-
-#[derive(Clone, Debug, Serialize)]
 struct MessageEntry {
     severity: &'static str,
     code: &'static str,
@@ -158,10 +152,10 @@ impl Findings {
         self.maps.push(entry);
     }
 
-    /// Adds a net of the review that has no map at all, with the reason.
-    pub fn add_skipped(&mut self, net: &str, reason: &Diagnostic) {
+    /// Adds the reason why a net of the review has no map at all.
+    pub fn add_skipped(&mut self, reason: &Diagnostic) {
         let reason = self.message(reason);
-        self.skipped.push(SkippedEntry { net: net.to_owned(), reason });
+        self.skipped.push(reason);
     }
 
     /// Adds a message.

@@ -1,10 +1,14 @@
 //! A whole run: review -> plan -> maps -> files, with progress and threads.
 
+mod chart;
+mod draw;
+mod input;
 mod name;
 mod select;
 mod store;
 mod watch;
 
+pub use draw::{Ending, Order, Prepared, Unusable, draw, prepare};
 pub use name::{MapName, file_stems};
 pub use select::chosen;
 pub use store::{Store, StoreFailure};

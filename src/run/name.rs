@@ -26,7 +26,8 @@ impl MapName {
 
 /// Stems `<net>--<plane>--<band>` for a whole set of maps, in the order given. Letters, digits and `_ + . @ -` are
 /// kept, everything else becomes `_`, the stem is cut at 60 characters. `~` and 6 hex digits of the SHA-256 of the plain stem are
-/// added when anything was changed, or when two stems differ by the case of letters at most.
+/// added when anything was changed, or when two stems differ by the case of letters at most. The second of two equal
+/// plain stems (a net that comes back to a plane) counts as `<stem>#2` there.
 pub fn file_stems(maps: &[MapName]) -> Vec<String> {
     let plain: Vec<String> = maps.iter().map(MapName::plain).collect();
     let safe: Vec<String> = plain.iter().map(|stem| sanitize(stem)).collect();
@@ -34,12 +35,15 @@ pub fn file_stems(maps: &[MapName]) -> Vec<String> {
     for stem in &safe {
         *uses.entry(stem.to_lowercase()).or_insert(0_usize) += 1;
     }
+    let mut before = BTreeMap::new();
     let named = plain.iter().zip(&safe).map(|(plain, safe)| {
+        let times = before.entry(plain).or_insert(0_usize);
+        *times += 1;
         if plain == safe && uses[&safe.to_lowercase()] == 1 {
-            safe.clone()
-        } else {
-            format!("{safe}~{}", &sha256_hex(plain.as_bytes())[..6])
+            return safe.clone();
         }
+        let hashed = if *times == 1 { plain.clone() } else { format!("{plain}#{times}") };
+        format!("{safe}~{}", &sha256_hex(hashed.as_bytes())[..6])
     });
     named.collect()
 }
@@ -79,6 +83,12 @@ mod tests {
         for stem in &got {
             assert_eq!(stem.split_once('~').unwrap().1.len(), 6, "{got:?}");
         }
+    }
+
+    #[test]
+    fn a_net_that_comes_back_to_a_plane_has_two_names() {
+        let got = stems(&["SCK", "SCK"]);
+        assert_ne!(got[0], got[1]);
     }
 
     #[test]

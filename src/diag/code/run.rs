@@ -25,5 +25,12 @@ pub const CANNOT_RENDER: Code = Code {
               the board. The other outputs are complete.",
 };
 
+/// A style file cannot be read.
+pub const STYLE_UNREADABLE: Code = Code {
+    name: "style-unreadable",
+    meaning: "The style file named with `--style` cannot be read; the message says what the operating system said. A \
+              name without `.toml` means a style that comes with the program, anything else a file.",
+};
+
 /// All codes of this room.
-pub const ALL: &[Code] = &[CANNOT_WRITE, ONLY_UNKNOWN, CANNOT_RENDER];
+pub const ALL: &[Code] = &[CANNOT_WRITE, ONLY_UNKNOWN, CANNOT_RENDER, STYLE_UNREADABLE];

@@ -1,0 +1,248 @@
+//! A whole review: everything that `ebbmap draw` does, without a terminal.
+
+use super::chart::{ChartDone, Charting, cannot_write, frequencies};
+use super::input::input_hash;
+use super::name::{MapName, file_stems};
+use super::select::chosen;
+use super::store::Store;
+use super::watch::Watch;
+use crate::board::Board;
+use crate::diag::code::{plan as plan_code, run as code};
+use crate::diag::{Diagnostic, Severity};
+use crate::field::Workshop;
+use crate::plan::{Plan, apply_review, build};
+use crate::read::review::{ReviewFile, read_review};
+use crate::read::{read_board, style};
+use crate::report::{Findings, json, numbers};
+use crate::review::{Band, Review};
+use crate::style::Style;
+use crate::unit::quantity_text;
+use rayon::prelude::*;
+use std::path::Path;
+use std::sync::{Mutex, PoisonError};
+
+/// What to draw and where.
+#[derive(Clone, Copy, Debug)]
+pub struct Order<'a> {
+    /// The review file.
+    pub review: &'a Path,
+    /// Folder for the outputs.
+    pub out: &'a Path,
+    /// Nets to draw, patterns allowed; empty draws all.
+    pub only: &'a [String],
+    /// Side of a cell in metres, beats the review's.
+    pub cell_m: Option<f64>,
+    /// Whether the densities are written as arrays.
+    pub numbers: bool,
+    /// Threads; 0 takes one per core.
+    pub jobs: usize,
+    /// Name of a style, or the path of a style file.
+    pub style: &'a str,
+}
+
+/// How a run ended that wrote its outputs.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub enum Ending {
+    /// Everything asked for was drawn.
+    Complete,
+    /// Something was skipped or withheld; a message named each.
+    Incomplete,
+}
+
+/// The input cannot be used or the output not be written. The messages went to the watcher.
+#[derive(Clone, Copy, Debug, PartialEq, Eq)]
+pub struct Unusable;
+
+/// Everything that was read and decided before a solve.
+pub struct Prepared {
+    /// The review file; its text is the source of messages about it.
+    pub file: ReviewFile,
+    /// The review, with what the command line changed.
+    pub review: Review,
+    /// The board, with the review's values in it.
+    pub board: Board,
+    /// The plan of all nets of the review.
+    pub plan: Plan,
+    /// All messages so far, already told to the watcher.
+    pub messages: Vec<Diagnostic>,
+}
+
+/// Reads a review and its board and plans the maps. Messages go to `watch` as they arise.
+pub fn prepare(path: &Path, cell_m: Option<f64>, watch: &dyn Watch) -> Result<Prepared, Unusable> {
+    let mut file = read_review(path);
+    let mut told = Told { watch, name: file.name.clone(), text: file.text.clone(), messages: Vec::new() };
+    told.all(std::mem::take(&mut file.messages));
+    let Some(mut review) = file.review.take() else { return Err(Unusable) };
+    review.solver.cell_m = cell_m.or(review.solver.cell_m);
+    let mut board = match read_board(&review.files) {
+        Ok((board, messages)) => {
+            told.all(messages);
+            board
+        }
+        Err(messages) => {
+            told.all(messages);
+            return Err(Unusable);
+        }
+    };
+    told.all(apply_review(&mut board, &review));
+    told.usable()?;
+    let plan = build(&board, &review);
+    told.all(plan.messages.iter().cloned());
+    told.usable()?;
+    if plan.nets.is_empty() {
+        return Err(Unusable);
+    }
+    Ok(Prepared { file, review, board, plan, messages: told.messages })
+}
+
+/// Draws a review. Nothing is written unless the input can be used and the folder can be written.
+pub fn draw(order: &Order, watch: &dyn Watch) -> Result<Ending, Unusable> {
+    // The style costs nothing to read and is the user's, so it is refused before the board is read.
+    let style = chosen_style(order.style).map_err(|messages| tell(watch, &messages))?;
+    let mut prepared = prepare(order.review, order.cell_m, watch)?;
+    let chosen = chosen(&prepared.plan, order.only).map_err(|messages| tell(watch, &messages))?;
+    let store = Store::open(order.out).map_err(|failure| tell(watch, &[cannot_write(&failure)]))?;
+    match rayon::ThreadPoolBuilder::new().num_threads(order.jobs).build() {
+        Ok(pool) => pool.install(|| draw_plan(order, watch, &mut prepared, &chosen, &style, store)),
+        // Where threads cannot be started the calling thread does all.
+        Err(_) => draw_plan(order, watch, &mut prepared, &chosen, &style, store),
+    }
+}
+
+fn draw_plan(
+    order: &Order,
+    watch: &dyn Watch,
+    prepared: &mut Prepared,
+    chosen: &[bool],
+    style: &(Style, String),
+    store: Store,
+) -> Result<Ending, Unusable> {
+    let Prepared { file, review, board, plan, messages } = prepared;
+    let store = Mutex::new(store);
+    let charting = Charting {
+        board,
+        review,
+        plan,
+        style: &style.0,
+        input_hash: &input_hash(board, review, &file.text, &style.1),
+        scale_height_m: scale_height_m(plan),
+        stems: &stems(plan),
+        workshop: &Workshop::new(board, review.solver.model),
+        numbers: order.numbers,
+        store: &store,
+        watch,
+    };
+    let nets = (0..plan.nets.len()).filter(|&net| chosen[net]);
+    let charts: Vec<(usize, usize)> =
+        nets.flat_map(|net| (0..plan.nets[net].charts.len()).map(move |chart| (net, chart))).collect();
+    watch.planned(charts.len() * frequencies(plan).len());
+    let done: Result<Vec<ChartDone>, Diagnostic> = charts.par_iter().map(|&at| charting.chart(at)).collect();
+    let done = done.map_err(|failure| tell(watch, &[failure]))?;
+    for message in done.iter().flat_map(ChartDone::messages) {
+        watch.message(&message, None);
+        messages.push(message);
+    }
+    let mut findings = Findings::new(&board.title, &board.revision, review.origin);
+    done.iter().for_each(|done| done.add_to(&mut findings, plan));
+    plan.messages.iter().filter(|message| is_skip(message)).for_each(|reason| findings.add_skipped(reason));
+    messages.iter().for_each(|message| findings.add_message(message));
+    let mut store = store.into_inner().unwrap_or_else(PoisonError::into_inner);
+    let mut rest = || {
+        store.write("findings.json", &json(&findings))?;
+        if order.numbers {
+            let entries: Vec<numbers::Numbers> = done.iter().flat_map(|done| done.numbers(plan)).collect();
+            store.write("numbers/index.json", numbers::index(&entries, review.origin).as_bytes())?;
+        }
+        store.finish()
+    };
+    rest().map_err(|failure| tell(watch, &[cannot_write(&failure)]))?;
+    let skipped = plan.messages.iter().any(is_skip);
+    let complete = !skipped && done.iter().all(ChartDone::is_complete);
+    Ok(if complete { Ending::Complete } else { Ending::Incomplete })
+}
+
+/// The smallest height of all charts that can be drawn: the anchor of the common scale depends on inputs only.
+fn scale_height_m(plan: &Plan) -> f64 {
+    let charts = plan.nets.iter().flat_map(|net| &net.charts);
+    let heights = |with_withheld: bool| {
+        let kept = charts.clone().filter(move |chart| with_withheld || chart.withheld.is_none());
+        kept.map(|chart| chart.height_m).filter(|&height| height > 0.0).min_by(f64::total_cmp)
+    };
+    // a set in which everything is withheld draws nothing, so any anchor will do
+    heights(false).or_else(|| heights(true)).unwrap_or(1e-3)
+}
+
+/// File stems by net, chart and frequency, for all maps of the review.
+fn stems(plan: &Plan) -> Vec<Vec<Vec<String>>> {
+    let each = frequencies(plan);
+    let mut names = Vec::new();
+    for net in &plan.nets {
+        for chart in &net.charts {
+            names.extend(each.iter().map(|&(band, hz)| MapName {
+                net: net.net.clone(),
+                plane: chart.plane.to_string(),
+                band: band_part(&plan.bands[band], hz),
+            }));
+        }
+    }
+    let mut stems = file_stems(&names).into_iter();
+    let of_chart = |stems: &mut std::vec::IntoIter<String>| stems.by_ref().take(each.len()).collect();
+    plan.nets.iter().map(|net| net.charts.iter().map(|_| of_chart(&mut stems)).collect()).collect()
+}
+
+/// The band in a file name: with the frequency where the band is solved at several.
+fn band_part(band: &Band, frequency_hz: f64) -> String {
+    if band.at_hz.len() < 2 {
+        return band.name.clone();
+    }
+    format!("{}@{}", band.name, quantity_text(frequency_hz, "Hz").replace(' ', ""))
+}
+
+/// Whether a message of the plan says that a net has no map at all while the others go on. What a review names and the
+/// board does not have is no such case: it is a slip to mend before minutes of work.
+fn is_skip(message: &Diagnostic) -> bool {
+    let skips = [plan_code::TRACK_OPEN, plan_code::NET_FEW_PINS, plan_code::PINS_NEEDED];
+    message.severity == Severity::Error && skips.contains(&message.code)
+}
+
+/// A style by name, or from a file, with the text that names or makes it.
+fn chosen_style(name: &str) -> Result<(Style, String), Vec<Diagnostic>> {
+    let path = Path::new(name);
+    if path.extension().is_none_or(|extension| extension != "toml") {
+        return Ok((style::built_in(name)?, name.to_owned()));
+    }
+    let text = std::fs::read_to_string(path).map_err(|error| {
+        vec![Diagnostic::error(code::STYLE_UNREADABLE, format!("cannot read the style `{name}`: {error}"))]
+    })?;
+    let file = path.file_name().map(|file| file.to_string_lossy().into_owned()).unwrap_or_default();
+    Ok((style::load(&text, &file)?, text))
+}
+
+fn tell(watch: &dyn Watch, messages: &[Diagnostic]) -> Unusable {
+    messages.iter().for_each(|message| watch.message(message, None));
+    Unusable
+}
+
+/// Messages that were told, and the review's text for those that show a line of it.
+struct Told<'a> {
+    watch: &'a dyn Watch,
+    name: String,
+    text: String,
+    messages: Vec<Diagnostic>,
+}
+
+impl Told<'_> {
+    fn all(&mut self, messages: impl IntoIterator<Item = Diagnostic>) {
+        for message in messages {
+            let in_review = message.place.file.as_deref() == Some(self.name.as_str());
+            self.watch.message(&message, in_review.then_some(self.text.as_str()));
+            self.messages.push(message);
+        }
+    }
+
+    /// Whether the run can go on: an error that is not the skip of one net ends it.
+    fn usable(&self) -> Result<(), Unusable> {
+        let ends = self.messages.iter().any(|message| message.severity == Severity::Error && !is_skip(message));
+        if ends { Err(Unusable) } else { Ok(()) }
+    }
+}
