@@ -59,7 +59,7 @@ pub struct DrawArguments {
     /// Threads; the outputs do not depend on it
     #[arg(long, value_name = "N", default_value_t = 0, hide_default_value = true)]
     pub jobs: usize,
-    /// Style by name, or a style file
-    #[arg(long, value_name = "NAME|FILE", default_value = "light")]
+    /// Style by name (`paper` is light, `screen` is dark), or a style file
+    #[arg(long, value_name = "NAME|FILE", default_value = "paper")]
     pub style: String,
 }

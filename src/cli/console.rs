@@ -2,7 +2,7 @@
 
 use super::Exit;
 use crate::diag::Diagnostic;
-use crate::diag::snippet::{Ink, render};
+use crate::diag::{Ink, render};
 use std::io::{IsTerminal, Write};
 
 /// The two streams of a command. A reader that goes away is a success: the rest is simply not written.

@@ -1,7 +1,7 @@
 //! Shows a run on standard error: messages always, a progress bar where a person watches.
 
 use crate::diag::Diagnostic;
-use crate::diag::snippet::{Ink, render};
+use crate::diag::{Ink, render};
 use crate::run::Watch;
 use indicatif::{ProgressBar, ProgressDrawTarget, ProgressStyle};
 use std::io::Write as _;

@@ -147,7 +147,7 @@ fn draw_plan(
     plan.messages.iter().filter(|message| is_skip(message)).for_each(|reason| findings.add_skipped(reason));
     messages.iter().for_each(|message| findings.add_message(message));
     let mut store = store.into_inner().unwrap_or_else(PoisonError::into_inner);
-    let mut rest = || {
+    let rest = || {
         store.write("findings.json", &json(&findings))?;
         if order.numbers {
             let entries: Vec<numbers::Numbers> = done.iter().flat_map(|done| done.numbers(plan)).collect();
@@ -242,7 +242,8 @@ impl Told<'_> {
 
     /// Whether the run can go on: an error that is not the skip of one net ends it.
     fn usable(&self) -> Result<(), Unusable> {
-        let ends = self.messages.iter().any(|message| message.severity == Severity::Error && !is_skip(message));
+        let ends =
+            self.messages.iter().any(|message| message.severity == Severity::Error && !is_skip(message));
         if ends { Err(Unusable) } else { Ok(()) }
     }
 }
