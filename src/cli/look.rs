@@ -1,13 +1,43 @@
 //! `ebbmap look`: prints what was understood of a board or a review.
 
+use super::progress::Progress;
 use super::{Console, Exit};
 use crate::read::read_board;
-use crate::report::{Look, json};
+use crate::report::{Look, PlanAccount, json};
+use crate::run;
+use serde::Serialize;
 use std::path::Path;
 
 /// Prints what was understood of the board or review at `path`, as text or JSON.
 pub fn look(path: &Path, as_json: bool, console: &mut Console) -> Exit {
-    look_board(path, as_json, console)
+    if path.extension().is_some_and(|extension| extension == "toml") {
+        look_review(path, as_json, console)
+    } else {
+        look_board(path, as_json, console)
+    }
+}
+
+/// The account of a board with that of a plan.
+#[derive(Serialize)]
+struct Both {
+    #[serde(flatten)]
+    board: Look,
+    plan: PlanAccount,
+}
+
+/// Prints what was understood of the review at `path`: its board and what would be solved.
+fn look_review(path: &Path, as_json: bool, console: &mut Console) -> Exit {
+    let progress = Progress::new(false, console.ink());
+    let Ok(prepared) = run::prepare(path, None, &progress) else { return Exit::Unusable };
+    let board = Look::new(&prepared.board, &prepared.messages);
+    let plan = PlanAccount::new(&prepared.plan, &prepared.review);
+    if as_json {
+        console.result(&String::from_utf8_lossy(&json(&Both { board, plan })));
+    } else {
+        console.result(&board.text());
+        console.result(&format!("\nPlan     {}", plan.text()));
+    }
+    if prepared.is_complete() { Exit::Complete } else { Exit::Incomplete }
 }
 
 /// Prints what was understood of the fabrication set at `path`.

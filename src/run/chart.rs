@@ -64,7 +64,9 @@ impl Charting<'_> {
         let mut notes = solved.notes;
         let stems = &self.stems[at.0][at.1];
         let mut maps = Vec::with_capacity(solved.maps.len());
-        for ((map, (band, frequency_hz)), stem) in solved.maps.into_iter().zip(frequencies(self.plan)).zip(stems) {
+        for ((map, (band, frequency_hz)), stem) in
+            solved.maps.into_iter().zip(frequencies(self.plan)).zip(stems)
+        {
             let map = match map {
                 Ok(charted) => self.draw(net, plan, band, charted, stem, at)?,
                 Err(reason) => {
@@ -128,7 +130,8 @@ impl Charting<'_> {
             index: Some("../contact-sheet-1.svg"),
         };
         ticket(&input).map_err(|fault| {
-            let text = format!("map of net `{}` in band `{}` cannot be rendered: {}", net.net, band.name, fault.0);
+            let text =
+                format!("map of net `{}` in band `{}` cannot be rendered: {}", net.net, band.name, fault.0);
             Diagnostic::error(code::CANNOT_RENDER, text)
         })
     }
@@ -138,9 +141,11 @@ impl Charting<'_> {
         let each = frequencies(self.plan);
         let of = |(index, hz): (usize, f64)| self.plan.bands[index].name == band.name && hz == frequency_hz;
         let within = each.iter().position(|&frequency| of(frequency)).unwrap_or(0);
-        let mut charts = self.stems.iter().enumerate().flat_map(|(net, of_net)| {
-            (0..of_net.len()).map(move |chart| (net, chart))
-        });
+        let mut charts = self
+            .stems
+            .iter()
+            .enumerate()
+            .flat_map(|(net, of_net)| (0..of_net.len()).map(move |chart| (net, chart)));
         let before = charts.clone().position(|other| other == at).unwrap_or(0);
         (before * each.len() + within + 1, charts.by_ref().count() * each.len())
     }

@@ -6,8 +6,8 @@ use super::name::{MapName, file_stems};
 use super::select::chosen;
 use super::store::Store;
 use super::watch::Watch;
-use crate::board::Board;
-use crate::diag::code::{plan as plan_code, run as code};
+use crate::board::{Board, Origin, Stackup};
+use crate::diag::code::{plan as plan_code, read as read_code, run as code};
 use crate::diag::{Diagnostic, Severity};
 use crate::field::Workshop;
 use crate::plan::{Plan, apply_review, build};
@@ -67,6 +67,14 @@ pub struct Prepared {
     pub messages: Vec<Diagnostic>,
 }
 
+impl Prepared {
+    /// Whether every net of the review will be drawn, as far as can be known before a solve.
+    pub fn is_complete(&self) -> bool {
+        let charts = self.plan.nets.iter().flat_map(|net| &net.charts);
+        !self.plan.messages.iter().any(is_skip) && charts.into_iter().all(|chart| chart.withheld.is_none())
+    }
+}
+
 /// Reads a review and its board and plans the maps. Messages go to `watch` as they arise.
 pub fn prepare(path: &Path, cell_m: Option<f64>, watch: &dyn Watch) -> Result<Prepared, Unusable> {
     let mut file = read_review(path);
@@ -74,17 +82,16 @@ pub fn prepare(path: &Path, cell_m: Option<f64>, watch: &dyn Watch) -> Result<Pr
     told.all(std::mem::take(&mut file.messages));
     let Some(mut review) = file.review.take() else { return Err(Unusable) };
     review.solver.cell_m = cell_m.or(review.solver.cell_m);
-    let mut board = match read_board(&review.files) {
-        Ok((board, messages)) => {
-            told.all(messages);
-            board
-        }
+    let (mut board, messages) = match read_board(&review.files) {
+        Ok(read) => read,
         Err(messages) => {
             told.all(messages);
             return Err(Unusable);
         }
     };
-    told.all(apply_review(&mut board, &review));
+    let overrides = apply_review(&mut board, &review);
+    told.all(messages.into_iter().filter(|message| !is_answered(message, &board.stackup)));
+    told.all(overrides);
     told.usable()?;
     let plan = build(&board, &review);
     told.all(plan.messages.iter().cloned());
@@ -196,6 +203,14 @@ fn band_part(band: &Band, frequency_hz: f64) -> String {
         return band.name.clone();
     }
     format!("{}@{}", band.name, quantity_text(frequency_hz, "Hz").replace(' ', ""))
+}
+
+/// Whether a message about an assumed stackup is answered by the review, which gives all values.
+fn is_answered(message: &Diagnostic, stackup: &Stackup) -> bool {
+    let about = [read_code::STACKUP_ASSUMED, read_code::STACKUP_DEFAULT].contains(&message.code);
+    let foils = stackup.foils.iter().map(|foil| foil.origin);
+    let sheets = stackup.dielectrics.iter().flat_map(|sheet| [sheet.origin, sheet.permittivity_origin]);
+    about && foils.chain(sheets).all(|origin| origin == Origin::Review)
 }
 
 /// Whether a message of the plan says that a net has no map at all while the others go on. What a review names and the

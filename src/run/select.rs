@@ -1,7 +1,7 @@
 //! Which nets of a plan are drawn: all, or those that `--only` names.
 
-use crate::diag::{Diagnostic, nearest};
 use crate::diag::code::run as code;
+use crate::diag::{Diagnostic, nearest};
 use crate::plan::{Plan, matches};
 
 /// For each net of the plan, whether it is drawn. A name or pattern that matches no net is an error with a near name.
