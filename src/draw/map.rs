@@ -374,7 +374,10 @@ fn placer(data: &MapData, view: &View, look: &MapLook) -> Placer {
     for hole in data.plane.iter().flat_map(|polygon| &polygon.holes).filter(|hole| in_view(hole, view)) {
         let mut points: Vec<(f64, f64)> = hole.iter().map(|&point| view.place(point)).collect();
         points.extend(points.first().copied());
-        placer.add_line(&simplified(&points, 0.2), 0.4, 0.5);
+        placer.add_line(&simplified(&points, 0.2), 0.6, 1.5);
+        let bounds = crate::geom::Bounds::of(hole.iter().copied());
+        let ((x0, y1), (x1, y0)) = (view.place(bounds.min), view.place(bounds.max));
+        placer.add_box([x0.min(x1), y0.min(y1), x0.max(x1), y0.max(y1)], 0.5);
     }
     for (_, outline) in &data.zones {
         let mut points: Vec<(f64, f64)> = outline.iter().map(|&point| view.place(point)).collect();
@@ -488,7 +491,7 @@ fn zone_boxes(outline: &Ring, view: &View, width: f64, height: f64) -> Vec<(Rect
             let rect = [x, y, x + width, y + height];
             let corners = [(x, y), (x + width, y), (x, y + height), (x + width, y + height)];
             if corners.iter().all(|&corner| zone.contains(view.back(corner))) {
-                boxes.push((rect, 0.004 * (bottom - y)));
+                boxes.push((rect, 0.008 * (bottom - y)));
             }
             x += 2.0;
         }

@@ -25,6 +25,8 @@ pub struct TicketSheet {
     pub origin: Point,
     /// Scale of the set.
     pub scale: DensityScale,
+    /// Units and symbols explained in plain words, two lines at most; may carry marks.
+    pub words: String,
     /// Panels in reading order.
     pub panels: Vec<Panel>,
     /// Fields of the title strip.
@@ -48,8 +50,12 @@ const MAP_Y: f64 = 28.5;
 /// Room for the map in mm.
 pub const MAP_WIDTH: f64 = 198.0;
 /// Room for the map in mm.
-pub const MAP_HEIGHT: f64 = 121.0;
+pub const MAP_HEIGHT: f64 = 117.0;
 const STRIP_Y: f64 = 188.4;
+const WORDS_Y: f64 = 181.0;
+const CAPTION_PITCH: f64 = 4.4;
+/// Room for the scale bar at the right of the legend.
+const BAR_ROOM: f64 = 40.0;
 const GAP: f64 = 9.0;
 
 /// The scene of a ticket map.
@@ -70,43 +76,70 @@ pub fn scene(sheet: &TicketSheet, style: &Style) -> Scene {
         items: Vec::new(),
     };
     scene.group(head(sheet, margin, right - margin, style));
-    let view = View::fitted(sheet.window, MAP_X, MAP_Y, MAP_WIDTH, MAP_HEIGHT);
+    let (view, block, room) = placed_view(sheet, right, style);
     let look = MapLook { style, scale: sheet.scale, px_per_mm: style.ticket.px_per_mm(), small: false };
     let drawn = draw_map(&sheet.map, &view, &look, &sheet.title);
     scene.group(drawn.group);
     scene.group(rulers(&view, sheet.origin, style));
 
-    let block = view.width().max(110.0);
-    let first = columns(block, right).first().map_or(right, |column| column.0);
-    let room = first - 5.0 - MAP_X;
     let mut y = MAP_Y + view.height() + 10.4;
     let mut caption = Group::new("scale-caption");
-    let anchor = super::number::significant(sheet.scale.anchor(), 3);
-    let text = format!(
-        "Return current density per ampere in the net. 0 dB is 1/(\u{3c0}{}) = {anchor} A/m per A, the density under a straight thin track over unbroken copper.",
-        italic("h")
-    );
-    for line in wrapped(Face::Narrow, style.font.label, &text, room) {
+    for line in caption_lines(sheet, room, style) {
         caption.text(Text::new(MAP_X, y, style.font.label, Face::Narrow, style.color.ink, &line));
-        y += 4.4;
+        y += CAPTION_PITCH;
     }
     scene.group(caption);
     y += 2.2;
     scene.group(color_scale(MAP_X, y, block - 24.0, &sheet.scale, &drawn.contours, style));
     y += 13.4;
-    let (group, last) = legend(MAP_X, y, room - 40.0, &entries(&sheet.map), style);
+    let (group, last) = legend(MAP_X, y, room - BAR_ROOM, &entries(&sheet.map), style);
     scene.group(group);
     scene.group(scale_bar(&view, MAP_X + room, y - 1.1, style));
-    let bottom = last + 3.0;
 
-    for (panel, (x, y)) in sheet.panels.iter().zip(slots(&sheet.panels, block, bottom, right)) {
+    for (panel, (x, y)) in sheet.panels.iter().zip(slots(&sheet.panels, block, last + 3.0, right)) {
         scene.group(panel.draw(x, y, style));
     }
+    let mut words = Group::new("words").labeled("group", "in plain words");
+    for (row, line) in
+        wrapped(Face::Narrow, style.font.tick, &sheet.words, right - margin).iter().take(2).enumerate()
+    {
+        let y = WORDS_Y + 4.0 * row as f64;
+        words.text(Text::new(margin, y, style.font.tick, Face::Narrow, style.color.ink_soft, line));
+    }
+    scene.group(words);
     scene.group(title_strip(margin, STRIP_Y, right - margin, &sheet.fields, style));
     let lines = wrapped(Face::Narrow, style.font.tick, &sheet.caution, right - margin - 6.0).len();
     let first = if lines > 1 { 203.2 } else { 204.6 };
     scene.group(caution(margin, first, right - margin, &sheet.caution, style));
     scene
+}
+
+/// The view of the map, the width of what belongs to it, and the width up to the first column of panels. The map
+/// gives way where the caption or the legend needs a second line.
+fn placed_view(sheet: &TicketSheet, right: f64, style: &Style) -> (View, f64, f64) {
+    let mut height = MAP_HEIGHT;
+    loop {
+        let view = View::fitted(sheet.window, MAP_X, MAP_Y, MAP_WIDTH, height);
+        let block = view.width().max(110.0);
+        let first = columns(block, right).first().map_or(right, |column| column.0);
+        let room = first - 5.0 - MAP_X;
+        let captions = caption_lines(sheet, room, style).len().saturating_sub(1) as f64;
+        let (_, last) = legend(MAP_X, 0.0, room - BAR_ROOM, &entries(&sheet.map), style);
+        let most = MAP_HEIGHT - captions * CAPTION_PITCH - last;
+        if view.height() <= most + 1e-9 || height < 40.0 {
+            return (view, block, room);
+        }
+        height = most.min(height - 1.0);
+    }
+}
+
+fn caption_lines(sheet: &TicketSheet, room: f64, style: &Style) -> Vec<String> {
+    let anchor = super::number::significant(sheet.scale.anchor(), 3);
+    let text = format!(
+        "Return current density per ampere in the net. 0\u{a0}dB is 1/(\u{3c0}{}) = {anchor}\u{a0}A/m per A, the density under a straight thin track over unbroken copper.",
+        italic("h")
+    );
+    wrapped(Face::Narrow, style.font.label, &text, room)
 }
 
 fn head(sheet: &TicketSheet, x: f64, width: f64, style: &Style) -> Group {
@@ -150,22 +183,20 @@ fn columns(block: f64, right: f64) -> Vec<(f64, f64)> {
     (0..count).map(|index| (right - WIDTH - (count - 1 - index) as f64 * (WIDTH + GAP), MAP_Y)).collect()
 }
 
-/// Upper left corners of panels: columns to the right of the map, filled from the right-most room down; then columns
-/// under the map. A panel that fits nowhere is left out, later ones may still fit.
+/// Upper left corners of panels: each goes to the column right of the map that is filled least, or, where it does not
+/// fit there, under the map. A panel that fits nowhere ends the list.
 fn slots(panels: &[Panel], block: f64, bottom: f64, right: f64) -> Vec<(f64, f64)> {
-    let mut columns = columns(block, right);
-    let below = ((block + GAP) / (WIDTH + GAP)).floor() as usize;
-    columns.extend((0..below).map(|index| (MAP_X + index as f64 * (WIDTH + GAP), bottom)));
+    let limit = WORDS_Y - 4.0;
+    let mut beside = columns(block, right);
+    let count = ((block + GAP) / (WIDTH + GAP)).floor() as usize;
+    let mut below: Vec<(f64, f64)> = (0..count).map(|n| (MAP_X + n as f64 * (WIDTH + GAP), bottom)).collect();
     let mut places = Vec::new();
     for panel in panels {
-        let free = columns.iter_mut().find(|(_, y)| *y + panel.height <= STRIP_Y - 3.0);
-        match free {
-            Some((x, y)) => {
-                places.push((*x, *y));
-                *y += panel.height + 4.0;
-            }
-            None => break,
-        }
+        let fits = |column: &&mut (f64, f64)| column.1 + panel.height <= limit;
+        let least = beside.iter_mut().filter(fits).min_by(|a, b| a.1.total_cmp(&b.1));
+        let Some(column) = least.or_else(|| below.iter_mut().find(fits)) else { break };
+        places.push(*column);
+        column.1 += panel.height + 4.0;
     }
     places
 }

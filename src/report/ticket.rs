@@ -236,7 +236,6 @@ fn sheet(input: &TicketInput) -> TicketSheet {
     if cut {
         panels.push(Panel::locator(board.outline.clone(), window));
     }
-    panels.push(Panel::words("In plain words", words(input), style));
     let description = format!(
         "{}. {} {} {caution}",
         headline_text(input, &plain(&net.net)),
@@ -252,6 +251,7 @@ fn sheet(input: &TicketInput) -> TicketSheet {
         window,
         origin: review.origin,
         scale,
+        words: words(input),
         panels,
         fields: fields(input, &number),
         caution,
@@ -419,25 +419,21 @@ fn figures_text(figures: &Figures) -> String {
     text.trim_end().to_owned()
 }
 
-fn words(input: &TicketInput) -> Vec<String> {
+fn words(input: &TicketInput) -> String {
     let h = italic("h");
-    let height = input.chart.height_m;
-    let mut all = vec![
-        "A/m per A: amperes of return across each meter of plane, for 1 A in the net. 20 dB lower is a tenth of it."
-            .to_owned(),
-        format!(
-            "{h} is the gap from track to plane; 3{h} reaches {} to each side of the track.",
-            given_millimeters(3.0 * height)
-        ),
-        "Lines enclose 50, 80 and 95 % of the density.".to_owned(),
-    ];
+    let mut text = format!(
+        "A/m per A: amperes of return across each meter of plane, per ampere in the net; 20\u{a0}dB lower is a tenth. \
+         {h}: gap from track to plane; 3{h} reaches {} to each side of the track. Lines enclose 50, 80 and 95\u{a0}% of \
+         the density.",
+        given_millimeters(3.0 * input.chart.height_m)
+    );
     if let Some(residual) = input.map.residual {
-        all.push(format!(
-            "The plane is cut into square cells; the equations are met to {} (residual).",
-            power_of_ten(residual)
+        text.push_str(&format!(
+            " Cell: side of the squares that were solved; their equations are met to {} (residual).",
+            power_of_ten(residual).replace(' ', "\u{a0}")
         ));
     }
-    all
+    text
 }
 
 fn fields(input: &TicketInput, number: &str) -> Vec<(&'static str, String)> {
