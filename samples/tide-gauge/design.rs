@@ -3,6 +3,11 @@
 /// A point in millimetres.
 pub type Xy = (f64, f64);
 
+/// Length of a vector; only operations that are exact to the last digit on every machine.
+pub fn length(x: f64, y: f64) -> f64 {
+    (x * x + y * y).sqrt()
+}
+
 /// Number of copper layers.
 pub const N_LAYERS: usize = 4;
 
@@ -84,6 +89,8 @@ pub struct Track {
     pub width: f64,
     /// Corners, at least two.
     pub path: Vec<Xy>,
+    /// The variant of the board that has it; empty for all.
+    pub tag: &'static str,
 }
 
 /// A via through all layers.
@@ -93,6 +100,8 @@ pub struct Via {
     pub net: String,
     /// Place.
     pub at: Xy,
+    /// The variant of the board that has it; empty for all.
+    pub tag: &'static str,
 }
 
 /// Drill diameter of every via.
@@ -126,6 +135,8 @@ pub struct Pour {
     pub clearance: f64,
     /// Whether pads with holes are joined by four spokes.
     pub relief: bool,
+    /// Areas of a higher rank take their place from those of a lower one.
+    pub rank: u8,
 }
 
 /// A slot in a copper area, drawn with a round pen.
@@ -137,6 +148,19 @@ pub struct Cut {
     pub path: Vec<Xy>,
     /// Width.
     pub width: f64,
+    /// The variant of the board that has it; empty for all.
+    pub tag: &'static str,
+}
+
+/// Copper of a part that ties two nets together: no net of its own.
+#[derive(Clone, Debug)]
+pub struct Tie {
+    /// Reference of the part.
+    pub reference: String,
+    /// Layer, from 0 at the top.
+    pub layer: usize,
+    /// Corners.
+    pub corners: Vec<Xy>,
 }
 
 /// A hole without barrel.
@@ -177,17 +201,34 @@ pub struct Design {
     pub holes: Vec<BareHole>,
     /// Filled triangles and the like that widen a track towards a pad: net, layer, corners.
     pub drops: Vec<(String, usize, Vec<Xy>)>,
+    /// Copper that ties nets together.
+    pub ties: Vec<Tie>,
+    /// Nets from which areas on the same layer keep a wider distance, and that distance.
+    pub quiet: (Vec<String>, f64),
 }
 
 impl Design {
     /// Lays a track.
     pub fn track(&mut self, net: &str, layer: usize, width: f64, path: &[Xy]) {
-        self.tracks.push(Track { net: net.into(), layer, width, path: path.to_vec() });
+        self.tracks.push(Track { net: net.into(), layer, width, path: path.to_vec(), tag: "" });
     }
 
     /// Sets a via.
     pub fn via(&mut self, net: &str, at: Xy) {
-        self.vias.push(Via { net: net.into(), at });
+        self.vias.push(Via { net: net.into(), at, tag: "" });
+    }
+
+    /// Lays a track that only one variant of the board has.
+    pub fn track_in(&mut self, tag: &'static str, net: &str, layer: usize, width: f64, path: &[Xy]) {
+        self.tracks.push(Track { net: net.into(), layer, width, path: path.to_vec(), tag });
+    }
+
+    /// Keeps what all variants have and what the named ones have.
+    pub fn choose(&mut self, tags: &[&str]) {
+        let kept = |tag: &str| tag.is_empty() || tags.contains(&tag);
+        self.tracks.retain(|track| kept(track.tag));
+        self.vias.retain(|via| kept(via.tag));
+        self.cuts.retain(|cut| kept(cut.tag));
     }
 
     /// Sets vias of one net.
@@ -195,20 +236,5 @@ impl Design {
         for &at in places {
             self.via(net, at);
         }
-    }
-
-    /// The pad called `U3.7`.
-    pub fn pad(&self, label: &str) -> &Pad {
-        let (reference, number) = label.split_once('.').unwrap_or((label, "1"));
-        let part = self.parts.iter().find(|part| part.reference == reference);
-        let pad = part.and_then(|part| part.pads.iter().find(|pad| pad.number == number));
-        pad.unwrap_or_else(|| panic!("the design has no pad {label}"))
-    }
-
-    /// Names of all nets, sorted.
-    pub fn nets(&self) -> Vec<String> {
-        let pads = self.parts.iter().flat_map(|part| part.pads.iter().map(|pad| &pad.net));
-        let names: std::collections::BTreeSet<&String> = pads.filter(|net| !net.is_empty()).collect();
-        names.into_iter().cloned().collect()
     }
 }

@@ -1,8 +1,8 @@
 //! Writes the files of a fabrication set: copper, masks, legend, parts, profile, drill files and the job file.
 
-use crate::design::{Design, N_LAYERS, Shape, Style, VIA_DRILL, VIA_PAD, Xy};
-use crate::gerber::Sheet;
-use crate::pour;
+use super::design::{Design, N_LAYERS, Shape, Style, VIA_DRILL, VIA_PAD, Xy, length};
+use super::gerber::Sheet;
+use super::pour;
 use std::fmt::Write;
 
 /// Copper thickness of every layer in mm.
@@ -92,6 +92,10 @@ fn copper(design: &Design, layer: usize) -> Sheet {
         sheet.tag(net, "", "");
         sheet.fill(std::slice::from_ref(corners));
     }
+    for tie in design.ties.iter().filter(|tie| tie.layer == layer) {
+        sheet.tag("", "", &tie.reference);
+        sheet.fill_as("EtchedComponent", std::slice::from_ref(&tie.corners));
+    }
     for track in design.tracks.iter().filter(|track| track.layer == layer) {
         sheet.tag(&track.net, "", "");
         sheet.draw(&track.path, track.width, "Conductor");
@@ -130,7 +134,7 @@ fn clearances(design: &Design, layer: usize, net: &str, gap: f64, relief: bool, 
         } else if relief && pad.drill.is_some() {
             // The ring lies outside the pad's corners.
             let (w, h) = pad.shape.size();
-            let w = if matches!(pad.shape, Shape::Rect(..)) { pour::tenth(w.hypot(h)) } else { w };
+            let w = if matches!(pad.shape, Shape::Rect(..)) { pour::tenth(length(w, h)) } else { w };
             sheet.relief(w + 2.0 * RELIEF_GAP, w, SPOKE, pad.at);
         }
     }

@@ -2,9 +2,11 @@
 
 mod design;
 mod fabrication;
+mod gauge;
 mod gerber;
 mod obstacle;
 mod package;
+mod parts;
 mod pour;
 mod route;
 mod small;
@@ -27,12 +29,14 @@ fn main() {
 }
 
 /// All files of all boards: path relative to the samples' folder, and text.
-fn files() -> Vec<(String, String)> {
-    let mut all = Vec::new();
-    for (folder, design) in [("small/fab", small::small())] {
-        all.extend(
-            fabrication::files(&design).into_iter().map(|(name, text)| (format!("{folder}/{name}"), text)),
-        );
+pub fn files() -> Vec<(String, String)> {
+    let all = gauge::all_variants();
+    let mut boards = vec![("small", small::small())];
+    boards.extend(gauge::Revision::ALL.map(|revision| (revision.folder(), gauge::gauge(&all, revision))));
+    let mut files = Vec::new();
+    for (folder, design) in boards {
+        let written = fabrication::files(&design).into_iter();
+        files.extend(written.map(|(name, text)| (format!("{folder}/fab/{name}"), text)));
     }
-    all
+    files
 }

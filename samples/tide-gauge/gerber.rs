@@ -1,6 +1,6 @@
 //! Writes Gerber X2 layers: apertures, attributes of objects, flashes, draws, regions, polarity.
 
-use crate::design::{Shape, Xy};
+use super::design::{Shape, Xy};
 use std::fmt::Write;
 
 /// Aperture macros that the writer uses: a rectangle with rounded corners and a thermal relief.
@@ -140,7 +140,12 @@ impl Sheet {
 
     /// Fills contours, each on its own, in one region statement.
     pub fn fill(&mut self, contours: &[Vec<Xy>]) {
-        self.attribute("TA.AperFunction,Conductor");
+        self.fill_as("Conductor", contours);
+    }
+
+    /// Fills contours of a stated function.
+    pub fn fill_as(&mut self, function: &str, contours: &[Vec<Xy>]) {
+        self.attribute(&format!("TA.AperFunction,{function}"));
         self.body.push_str("G36*\n");
         for contour in contours {
             for (index, at) in contour.iter().chain(contour.first()).enumerate() {

@@ -1,6 +1,6 @@
 //! Distances between the copper objects of a design: what a track or via must keep away from.
 
-use crate::design::{Design, N_LAYERS, Shape, VIA_PAD, Xy};
+use super::design::{Design, N_LAYERS, Shape, VIA_PAD, Xy, length};
 
 /// Distance that copper of different nets keeps.
 pub const CLEARANCE: f64 = 0.17;
@@ -23,7 +23,7 @@ fn point_segment(p: Xy, a: Xy, b: Xy) -> f64 {
     let length2 = dx * dx + dy * dy;
     let t =
         if length2 > 0.0 { (((p.0 - a.0) * dx + (p.1 - a.1) * dy) / length2).clamp(0.0, 1.0) } else { 0.0 };
-    (p.0 - a.0 - t * dx).hypot(p.1 - a.1 - t * dy)
+    length(p.0 - a.0 - t * dx, p.1 - a.1 - t * dy)
 }
 
 fn segments(a: (Xy, Xy), b: (Xy, Xy)) -> f64 {
@@ -43,22 +43,22 @@ fn segments(a: (Xy, Xy), b: (Xy, Xy)) -> f64 {
 
 impl Body {
     /// Distance from a point to the rim; negative or zero inside.
-    pub fn from_point(&self, p: Xy) -> f64 {
+    pub fn distance_to_point(&self, p: Xy) -> f64 {
         match *self {
             Body::Bar(a, b, r) => point_segment(p, a, b) - r,
             Body::Block(c, w, h) => {
                 let (dx, dy) = ((p.0 - c.0).abs() - w, (p.1 - c.1).abs() - h);
-                if dx <= 0.0 && dy <= 0.0 { dx.max(dy) } else { dx.max(0.0).hypot(dy.max(0.0)) }
+                if dx <= 0.0 && dy <= 0.0 { dx.max(dy) } else { length(dx.max(0.0), dy.max(0.0)) }
             }
         }
     }
 
     /// Distance to a line with round ends.
-    pub fn from_bar(&self, a: Xy, b: Xy, radius: f64) -> f64 {
+    pub fn distance_to_bar(&self, a: Xy, b: Xy, radius: f64) -> f64 {
         match *self {
             Body::Bar(c, d, r) => segments((a, b), (c, d)) - r - radius,
             Body::Block(c, w, h) => {
-                if self.from_point(a) <= 0.0 || self.from_point(b) <= 0.0 {
+                if self.distance_to_point(a) <= 0.0 || self.distance_to_point(b) <= 0.0 {
                     return -radius;
                 }
                 let corner = [(-w, -h), (w, -h), (w, h), (-w, h)].map(|(x, y)| (c.0 + x, c.1 + y));
@@ -133,6 +133,16 @@ pub fn obstacles(design: &Design, n_tracks: usize, n_vias: usize) -> Vec<Obstacl
         let movable = index >= n_vias;
         found.push(Obstacle { net: via.net.clone(), layers: ALL, body, movable, pad: false, barrel: true });
     }
+    for tie in &design.ties {
+        let (low, high) =
+            tie.corners.iter().fold(((f64::MAX, f64::MAX), (f64::MIN, f64::MIN)), |(l, h), p| {
+                ((l.0.min(p.0), l.1.min(p.1)), (h.0.max(p.0), h.1.max(p.1)))
+            });
+        let middle = (0.5 * (low.0 + high.0), 0.5 * (low.1 + high.1));
+        let body = Body::Block(middle, 0.5 * (high.0 - low.0), 0.5 * (high.1 - low.1));
+        let (net, layers) = (String::new(), only(tie.layer));
+        found.push(Obstacle { net, layers, body, movable: false, pad: false, barrel: false });
+    }
     let mut keep_out = |body: Body| {
         let net = String::new();
         found.push(Obstacle { net, layers: ALL, body, movable: false, pad: false, barrel: false });
@@ -144,4 +154,21 @@ pub fn obstacles(design: &Design, n_tracks: usize, n_vias: usize) -> Vec<Obstacl
         keep_out(Body::Bar(leg[0], leg[1], SLOT_ROOM));
     }
     found
+}
+
+/// Whether a point lies inside an outline, at least `margin` off it in the four main directions.
+pub fn contains(outline: &[Xy], at: Xy, margin: f64) -> bool {
+    let inside = |at: Xy| {
+        let mut odd = false;
+        for k in 0..outline.len() {
+            let (a, b) = (outline[k], outline[(k + 1) % outline.len()]);
+            if (a.1 > at.1) != (b.1 > at.1) && at.0 < a.0 + (b.0 - a.0) * (at.1 - a.1) / (b.1 - a.1) {
+                odd = !odd;
+            }
+        }
+        odd
+    };
+    [(0.0, 0.0), (margin, 0.0), (-margin, 0.0), (0.0, margin), (0.0, -margin)]
+        .into_iter()
+        .all(|(dx, dy)| inside((at.0 + dx, at.1 + dy)))
 }

@@ -1,6 +1,6 @@
 //! Land patterns and the placing of parts.
 
-use crate::design::{Design, Pad, Part, Shape, Xy};
+use super::design::{Design, Pad, Part, Shape, Tie, Xy};
 
 /// A land pattern before placing: pads (number, place, shape, drill) and the size of the body.
 struct Pattern {
@@ -79,13 +79,25 @@ fn pattern(package: &str) -> Pattern {
             p.pads[4].0 = "5".into();
             p
         }
-        "SO8" => dual(8, 1.27, 2.7, 1.6, 0.6, (3.9, 4.9)),
+        "SO8" => {
+            let mut p = dual(8, 1.27, 2.7, 1.6, 0.6, (3.9, 4.9));
+            p.pads.iter_mut().for_each(|pad| pad.2 = Shape::Oval(1.6, 0.6));
+            p
+        }
         "SO8-W" => dual(8, 1.27, 3.6, 1.6, 0.6, (5.3, 5.3)),
         "MSO8" => dual(8, 0.65, 2.2, 1.4, 0.4, (3.0, 3.0)),
         "TSSO16" => dual(16, 0.65, 2.85, 1.5, 0.4, (4.4, 5.0)),
         "TSSO20" => dual(20, 0.65, 2.85, 1.5, 0.4, (4.4, 6.5)),
         "QFP32" => quad(32, 0.8, 4.2, 1.5, 0.5, (7.0, 7.0)),
         "QFP48" => quad(48, 0.5, 4.2, 1.5, 0.3, (7.0, 7.0)),
+        // Two pads that copper of the part itself joins.
+        "TIE" => Pattern {
+            pads: vec![
+                ("1".into(), (-0.5, 0.0), Shape::Rect(0.6, 0.6), None),
+                ("2".into(), (0.5, 0.0), Shape::Rect(0.6, 0.6), None),
+            ],
+            body: (1.6, 0.6),
+        },
         "TEST" => Pattern { pads: vec![("1".into(), (0.0, 0.0), Shape::Round(1.0), None)], body: (1.0, 1.0) },
         "ROW4" => row(4, 2.54, 1.7, 1.0, 2.5),
         "ROW5" => row(5, 2.54, 1.7, 1.0, 2.5),
@@ -125,6 +137,12 @@ impl Design {
             }
             let net = if net == "-" { String::new() } else { net.to_owned() };
             pads.push(Pad { number, net, at: (tidy(at.0 + x), tidy(at.1 + y)), shape, drill });
+        }
+        if package == "TIE" {
+            let (x, y) = if quarters % 2 == 1 { (0.2, 0.3) } else { (0.3, 0.2) };
+            let corners = [(-x, -y), (x, -y), (x, y), (-x, y)];
+            let corners = corners.map(|(dx, dy)| (tidy(at.0 + dx), tidy(at.1 + dy))).to_vec();
+            self.ties.push(Tie { reference: reference.into(), layer: 0, corners });
         }
         let (w, h) = pattern.body;
         let body = if quarters % 2 == 1 { (h, w) } else { (w, h) };

@@ -1,7 +1,7 @@
 //! Copper areas with clearances and thermal reliefs, as contours with cut-ins.
 
-use crate::design::{Design, N_LAYERS, Pour, Shape, VIA_PAD, Xy};
-use crate::fabrication::{RELIEF_GAP, SPOKE};
+use super::design::{Design, N_LAYERS, Pour, Shape, VIA_PAD, Xy, length};
+use super::fabrication::{RELIEF_GAP, SPOKE};
 use ebbmap::geom::boolean::{Filling, difference, fill, intersection, union, union_with};
 use ebbmap::geom::{Point, Polygon, Region, Ring};
 use std::f64::consts::PI;
@@ -66,21 +66,39 @@ fn offset(region: &Region, distance: f64) -> Region {
     for ring in region.0.iter().flat_map(Polygon::rings) {
         for (index, from) in ring.iter().enumerate() {
             let to = ring[(index + 1) % ring.len()];
-            rims.push(capsule((from.x * 1e3, from.y * 1e3), (to.x * 1e3, to.y * 1e3), distance.abs()));
+            let (a, b) = ((from.x * 1e3, from.y * 1e3), (to.x * 1e3, to.y * 1e3));
+            rims.push(capsule(a, b, distance.abs()));
         }
     }
     if distance > 0.0 { union_with([region], &rims) } else { difference(region, &union_with([], &rims)) }
 }
 
+/// Bars between round clearances that leave copper thinner than a fabricator etches between them.
+fn joined(rounds: &[(Xy, f64)]) -> Vec<Ring> {
+    let mut bars = Vec::new();
+    for (k, (a, r)) in rounds.iter().enumerate() {
+        for (b, s) in &rounds[..k] {
+            let apart = length(a.0 - b.0, a.1 - b.1) - r - s;
+            if apart < THINNEST {
+                bars.push(capsule(*a, *b, 0.7 * r.min(*s)));
+            }
+        }
+    }
+    bars
+}
+
 /// The copper of an area.
 fn region(design: &Design, pour: &Pour) -> Region {
     let outline: Ring = pour.outline.iter().map(|&at| point(at)).collect();
+    let mut rounds: Vec<(Xy, f64)> = Vec::new();
     let limits = fill([&outline], Filling::NonZero);
     let (mut foreign, mut rings_of_relief, mut spokes, mut anchors) =
         (Vec::new(), Vec::new(), Vec::new(), Vec::new());
     for track in design.tracks.iter().filter(|track| track.layer == pour.layer && track.net != pour.net) {
         let legs = track.path.windows(2);
-        foreign.extend(legs.map(|leg| capsule(leg[0], leg[1], 0.5 * track.width + pour.clearance)));
+        let quiet = design.quiet.0.contains(&track.net);
+        let gap = if quiet { design.quiet.1 } else { pour.clearance };
+        foreign.extend(legs.map(|leg| capsule(leg[0], leg[1], 0.5 * track.width + gap)));
     }
     for (net, layer, corners) in &design.drops {
         if *layer == pour.layer && *net != pour.net {
@@ -95,6 +113,8 @@ fn region(design: &Design, pour: &Pour) -> Region {
         }
         if pad.net != pour.net {
             foreign.extend(pad_rings(pad.shape, pad.at, pour.clearance));
+            let (w, h) = pad.shape.size();
+            rounds.push((pad.at, 0.5 * w.min(h) + pour.clearance));
             continue;
         }
         anchors.push(pad.at);
@@ -111,13 +131,28 @@ fn region(design: &Design, pour: &Pour) -> Region {
             anchors.push(via.at);
         } else {
             foreign.push(capsule(via.at, via.at, 0.5 * VIA_PAD + pour.clearance));
+            rounds.push((via.at, 0.5 * VIA_PAD + pour.clearance));
         }
     }
     foreign.extend(design.holes.iter().map(|hole| capsule(hole.at, hole.at, 0.5 * hole.diameter + 0.3)));
     for cut in design.cuts.iter().filter(|cut| cut.layer == pour.layer) {
         foreign.extend(cut.path.windows(2).map(|leg| capsule(leg[0], leg[1], 0.5 * cut.width)));
     }
-    debug_assert!(pour.layer < N_LAYERS);
+    for other in design.pours.iter().filter(|other| other.layer == pour.layer && other.rank > pour.rank) {
+        let n = other.outline.len();
+        foreign.push(other.outline.iter().map(|&at| point(at)).collect());
+        let side = |k: usize| capsule(other.outline[k], other.outline[(k + 1) % n], pour.clearance);
+        foreign.extend((0..n).map(side));
+    }
+    for tie in design.ties.iter().filter(|tie| tie.layer == pour.layer) {
+        foreign.push(tie.corners.iter().map(|&at| point(at)).collect());
+        let side = |k: usize| capsule(tie.corners[k], tie.corners[(k + 1) % 4], pour.clearance);
+        foreign.extend((0..4).map(side));
+    }
+    let inner = pour.layer != 0 && pour.layer + 1 < N_LAYERS;
+    if inner {
+        foreign.extend(joined(&rounds));
+    }
     let free = difference(&limits, &union_with([], &foreign));
     let relieved = if rings_of_relief.is_empty() {
         free.clone()
@@ -125,10 +160,13 @@ fn region(design: &Design, pour: &Pour) -> Region {
         let rings = union_with([], &rings_of_relief);
         union([&difference(&free, &rings), &intersection(&free, &union_with([], &spokes))])
     };
+    let anchored = |polygon: &Polygon| anchors.iter().any(|&at| polygon.contains(point(at)));
+    if inner {
+        return Region(relieved.0.into_iter().filter(anchored).collect());
+    }
     // What is thinner than a fabricator etches goes: shrink, then grow back.
     let opened = offset(&offset(&relieved, -0.5 * THINNEST), 0.5 * THINNEST);
     let opened = intersection(&opened, &relieved);
-    let anchored = |polygon: &Polygon| anchors.iter().any(|&at| polygon.contains(point(at)));
     Region(opened.0.into_iter().filter(anchored).collect())
 }
 

@@ -1,7 +1,7 @@
 //! A small router: shortest paths on a grid of 0.1 mm over the two outer layers, other tracks moved where needed.
 
-use crate::design::{Design, Track, VIA_PAD, Via, Xy};
-use crate::obstacle::{Body, CLEARANCE, EDGE, Obstacle, obstacles};
+use super::design::{Design, Pour, Track, VIA_PAD, Via, Xy, length};
+use super::obstacle::{Body, CLEARANCE, EDGE, Obstacle, contains, obstacles};
 use std::cmp::Reverse;
 use std::collections::BinaryHeap;
 
@@ -99,7 +99,7 @@ impl Maps {
         for y in from(low.1).max(0)..=to(high.1).min(self.ny - 1) {
             for x in from(low.0).max(0)..=to(high.0).min(self.nx - 1) {
                 let p = (f64::from(x) * STEP, f64::from(y) * STEP);
-                if body.from_point(p) < room - 1e-6 {
+                if body.distance_to_point(p) < room - 1e-6 {
                     let index = self.index(x, y);
                     let map = match slot {
                         Some(slot) => &mut self.tracks[slot],
@@ -150,7 +150,7 @@ fn pieces(design: &Design, net: &str) -> Vec<Piece> {
                             let at = (a.0 + t * (b.0 - a.0), a.1 + t * (b.1 - a.1));
                             let (x, y) = snap(at);
                             let on = place(x, y);
-                            if (on.0 - at.0).hypot(on.1 - at.1) < 1e-6 {
+                            if length(on.0 - at.0, on.1 - at.1) < 1e-6 {
                                 end(on);
                             }
                         }
@@ -162,13 +162,32 @@ fn pieces(design: &Design, net: &str) -> Vec<Piece> {
         let group = found.len();
         found.push(Piece { body: thing.body, layers: thing.layers, ends, group });
     }
+    // Join what an inner area joins.
+    let inner = |pour: &&Pour| pour.net == net && (1..3).contains(&pour.layer);
+    for pour in design.pours.iter().filter(inner) {
+        let above = |other: &&Pour| other.layer == pour.layer && other.rank > pour.rank;
+        let within = |at: Xy| {
+            contains(&pour.outline, at, 0.4)
+                && !design.pours.iter().filter(above).any(|other| {
+                    let steps = [(0.0, 0.0), (0.6, 0.0), (-0.6, 0.0), (0.0, 0.6), (0.0, -0.6)];
+                    steps.iter().any(|step| contains(&other.outline, (at.0 + step.0, at.1 + step.1), 0.0))
+                })
+        };
+        let mut first = None;
+        for piece in &mut found {
+            let Body::Bar(at, end, _) = piece.body else { continue };
+            if piece.layers == [true; 4] && at == end && within(at) {
+                piece.group = *first.get_or_insert(piece.group);
+            }
+        }
+    }
     // Join what touches.
     for i in 0..found.len() {
         for j in 0..i {
             let common = (0..4).any(|layer| found[i].layers[layer] && found[j].layers[layer]);
             let distance = match found[j].body {
-                Body::Bar(a, b, r) => found[i].body.from_bar(a, b, r),
-                Body::Block(c, w, h) => found[i].body.from_bar(c, c, 0.0) - w.min(h),
+                Body::Bar(a, b, r) => found[i].body.distance_to_bar(a, b, r),
+                Body::Block(c, w, h) => found[i].body.distance_to_bar(c, c, 0.0) - w.min(h),
             };
             let (a, b) = (found[i].group, found[j].group);
             if common && distance < -0.01 && a != b {
@@ -213,12 +232,12 @@ pub fn route(design: &mut Design, wishes: &[Wish]) -> Vec<String> {
                 let by_track = tracks.iter().any(|track| {
                     thing.layers[track.layer]
                         && track.path.windows(2).any(|leg| {
-                            thing.body.from_bar(leg[0], leg[1], 0.5 * track.width) < CLEARANCE - 0.015
+                            thing.body.distance_to_bar(leg[0], leg[1], 0.5 * track.width) < CLEARANCE - 0.015
                         })
                 });
                 let by_via = vias
                     .iter()
-                    .any(|via| thing.body.from_bar(via.at, via.at, 0.5 * VIA_PAD) < CLEARANCE - 0.015);
+                    .any(|via| thing.body.distance_to_bar(via.at, via.at, 0.5 * VIA_PAD) < CLEARANCE - 0.015);
                 if (by_track || by_via) && !moved.contains(&thing.net) {
                     moved.push(thing.net.clone());
                 }
@@ -234,11 +253,8 @@ pub fn route(design: &mut Design, wishes: &[Wish]) -> Vec<String> {
                     seen += 1;
                     seen <= n_vias || via.net != net
                 });
-                if let Some(other) = wishes.iter().position(|other| other.net == net) {
-                    if !open.contains(&other) {
-                        open.push_back(other);
-                    }
-                }
+                let other = wishes.iter().position(|other| other.net == net);
+                open.extend(other.filter(|other| !open.contains(other)));
             }
             design.tracks.extend(tracks);
             design.vias.extend(vias);
@@ -348,10 +364,16 @@ fn shape(maps: &Maps, wish: &Wish, path: &(Xy, Vec<Cell>, Xy)) -> (Vec<Track>, V
             line.push(*finish);
         }
         if line.len() > 1 {
-            tracks.push(Track { net: wish.net.clone(), layer: LAYERS[layer], width: wish.width, path: line });
+            tracks.push(Track {
+                net: wish.net.clone(),
+                layer: LAYERS[layer],
+                width: wish.width,
+                path: line,
+                tag: "",
+            });
         }
         if end + 1 < cells.len() {
-            vias.push(Via { net: wish.net.clone(), at: place(cells[end].1, cells[end].2) });
+            vias.push(Via { net: wish.net.clone(), at: place(cells[end].1, cells[end].2), tag: "" });
         }
         at = end + 1;
     }
@@ -443,9 +465,9 @@ pub fn fan_out(
             let things = obstacles(design, 0, 0);
             let (w, h) = pad.shape.size();
             let width = width.min(w).min(h);
-            let done = things
-                .iter()
-                .any(|thing| thing.net == pad.net && !thing.pad && thing.body.from_point(pad.at) < 0.0);
+            let done = things.iter().any(|thing| {
+                thing.net == pad.net && !thing.pad && thing.body.distance_to_point(pad.at) < 0.0
+            });
             if done {
                 continue;
             }
@@ -456,8 +478,8 @@ pub fn fan_out(
                 for k in 6..30 {
                     let r = f64::from(k) * STEP;
                     let at = (pad.at.0 + dx * r, pad.at.1 + dy * r);
-                    let reach = r * dx.hypot(dy);
-                    let along = (out.0 * dx + out.1 * dy) / (out.0.hypot(out.1) * dx.hypot(dy)).max(1e-9);
+                    let reach = r * length(dx, dy);
+                    let along = (out.0 * dx + out.1 * dy) / (length(out.0, out.1) * length(dx, dy)).max(1e-9);
                     tried.push((((reach + 0.5 * (1.0 - along)) * 1e4).round() as i64, at));
                 }
             }
@@ -468,18 +490,22 @@ pub fn fan_out(
                 on_board
                     && inside(&pad.net, at)
                     && things.iter().all(|thing| {
-                        let via = thing.body.from_bar(at, at, 0.5 * VIA_PAD);
+                        let via = thing.body.distance_to_bar(at, at, 0.5 * VIA_PAD);
                         if thing.net == pad.net {
                             // No via in a pad, no two vias in one place.
                             return !(thing.pad || thing.barrel) || via > 0.08;
                         }
-                        let track = thing.body.from_bar(pad.at, at, 0.5 * width);
+                        // Copper that ties the pad to another net touches it.
+                        if thing.net.is_empty() && thing.body.distance_to_point(pad.at) < 0.25 {
+                            return via > CLEARANCE;
+                        }
+                        let track = thing.body.distance_to_bar(pad.at, at, 0.5 * width);
                         via > CLEARANCE && (!thing.layers[0] || track > CLEARANCE)
                     })
             };
             match tried.into_iter().map(|entry| entry.1).find(|&at| fits(at)) {
                 Some(at) => {
-                    let at = (crate::package::tidy(at.0), crate::package::tidy(at.1));
+                    let at = (super::package::tidy(at.0), super::package::tidy(at.1));
                     design.track(&pad.net, 0, width, &[pad.at, at]);
                     design.via(&pad.net, at);
                 }

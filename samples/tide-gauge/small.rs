@@ -1,7 +1,7 @@
 //! The small board: converter, microcontroller and connectors on 40 x 30 mm, for quick tests.
 
-use crate::design::{BareHole, Cut, Design, Pour, Style, Xy};
-use crate::route::{Wish, fan_out, route};
+use super::design::{BareHole, Cut, Design, Pour, Style, Xy};
+use super::route::{Wish, fan_out, route};
 
 const TOP: usize = 0;
 const BOTTOM: usize = 3;
@@ -34,9 +34,10 @@ pub fn small() -> Design {
             style: Style::Clear,
             clearance: 0.3,
             relief: true,
+            rank: 0,
         });
     }
-    d.cuts.push(Cut { layer: 1, path: vec![(20.3, 17.2), (20.3, 24.0)], width: 0.6 });
+    d.cuts.push(Cut { layer: 1, path: vec![(20.3, 17.2), (20.3, 24.0)], width: 0.6, tag: "" });
     d.holes = [(3.0, 3.0), (37.0, 3.0), (3.0, 27.0), (37.0, 27.0)]
         .map(|at| BareHole { at, diameter: 2.2 })
         .to_vec();
@@ -83,7 +84,7 @@ fn tracks(d: &mut Design) {
     d.track("ADC_DOUT", TOP, W, &[(16.35, 16.325), (23.225, 16.325), (23.3, 16.4)]);
     d.track("ADC_CS", TOP, W, &[(16.35, 15.675), (23.225, 15.675), (23.3, 15.6)]);
     d.track("ADC_DRDY", TOP, W, &[(16.35, 15.025), (23.075, 15.025), (23.3, 14.8)]);
-    d.track("ADC_RST", TOP, W, &[(16.35, 14.375), (22.925, 14.375), (23.3, 14.0)]);
+    d.track("ADC_RST", TOP, W, &[(16.35, 14.375), (21.6, 14.375), (21.975, 14.0), (23.3, 14.0)]);
     // A row of vias whose antipads run into each other; one net passes between them on the top layer.
     let row = ["IO0", "IO1", "IO2", "IO3", "IO4", "IO5", "IO6"];
     for (index, net) in row.into_iter().enumerate() {
