@@ -11,9 +11,11 @@ use contour::ContourBuilder;
 /// Percentages of the three contours.
 pub const SHARES: [u32; 3] = [50, 80, 95];
 /// Distance in mm on the sheet that each line keeps from edges and voids.
-const CLEARANCE: [f64; 3] = [0.0, 0.35, 1.2];
+const CLEARANCE: [f64; 3] = [0.2, 0.5, 1.2];
 /// Shortest piece in mm on the sheet.
-const SHORTEST: [f64; 3] = [2.0, 4.0, 12.0];
+const SHORTEST: [f64; 3] = [3.0, 6.0, 14.0];
+/// Smallest extent in mm on the sheet: crescents round single voids say nothing.
+const SMALLEST: [f64; 3] = [2.0, 5.0, 9.0];
 /// Step of the raster on which lines are sought, in mm on the sheet.
 const STEP: f64 = 0.4;
 /// Largest deviation in mm when points are dropped.
@@ -56,7 +58,9 @@ pub fn contours(
                 let inside = ix > 0.6 && iy > 0.6 && ix < nx as f64 - 0.6 && iy < ny as f64 - 0.6;
                 inside && clearance[iy as usize * nx + ix as usize] > CLEARANCE[rank] && !hidden((x, y))
             };
-            let pieces = pieces(&points, shown).into_iter().filter(|piece| length(piece) >= SHORTEST[rank]);
+            let pieces = pieces(&points, shown)
+                .into_iter()
+                .filter(|piece| length(piece) >= SHORTEST[rank] && extent(piece) >= SMALLEST[rank]);
             contour.lines.extend(pieces.map(|piece| simplified(&piece, SIMPLIFIED)));
         }
     }
@@ -86,6 +90,16 @@ fn pieces(points: &[(f64, f64)], shown: impl Fn(&(f64, f64)) -> bool) -> Vec<Vec
         all.push(piece);
     }
     all
+}
+
+/// Larger side of the box round a line, in mm.
+fn extent(points: &[(f64, f64)]) -> f64 {
+    let range = |pick: fn(&(f64, f64)) -> f64| {
+        let values = points.iter().map(pick);
+        let (low, high) = values.fold((f64::INFINITY, f64::NEG_INFINITY), |(a, b), v| (a.min(v), b.max(v)));
+        high - low
+    };
+    range(|point| point.0).max(range(|point| point.1))
 }
 
 /// Length of a line in mm.

@@ -87,6 +87,8 @@ pub struct MapLook<'a> {
     pub px_per_mm: f64,
     /// Whether this is a small cell of a set: no labels, thinner lines, the 80 % contour alone.
     pub small: bool,
+    /// Free room right of the map in mm, where labels may go.
+    pub room_right: f64,
 }
 
 impl MapLook<'_> {
@@ -109,7 +111,11 @@ pub fn draw_map(data: &MapData, view: &View, look: &MapLook, label: &str) -> Dra
 
     let mut vectors = Group::new("layers").clipped(view.x, view.y, width, height);
     vectors.group(contour_lines(&contours, look));
-    vectors.group(not_copper(data, view, look));
+    group.group(vectors);
+    // The page's color reaches over the rim of the heat image, so that none of it shows beside the board.
+    group.group(not_copper(data, view, look).clipped(view.x - 0.5, view.y - 0.5, width + 1.0, height + 1.0));
+    let mut vectors = Group::new("lines").clipped(view.x, view.y, width, height);
+    vectors.group(idle_copper(data, view, look));
     vectors.group(zone_lines(data, view, look));
     vectors.group(edges(data, view, look));
     vectors.group(track(data, view, look));
@@ -185,6 +191,12 @@ fn not_copper(data: &MapData, view: &View, look: &MapLook) -> Group {
     let mut shape = Shape::filled(rest, look.style.color.page);
     shape.even_odd = true;
     group.shape(shape);
+    group
+}
+
+/// Copper of the plane's net that was not solved.
+fn idle_copper(data: &MapData, view: &View, look: &MapLook) -> Group {
+    let mut group = Group::new("idle-copper");
     let mut idle = PathData::coarse();
     for ring in data.idle.iter().flat_map(Polygon::rings).filter(|ring| in_view(ring, view)) {
         idle.ring(&ring_on_sheet(ring, view));
@@ -357,15 +369,15 @@ fn pins(data: &MapData, view: &View, look: &MapLook) -> Group {
 
 /// Costs of the map for labels.
 fn placer(data: &MapData, view: &View, look: &MapLook) -> Placer {
-    let area = [view.x, view.y, view.x + view.width(), view.y + view.height()];
+    let area = [view.x, view.y, view.x + view.width() + look.room_right, view.y + view.height()];
     let mut placer = Placer::new(area);
-    let raster = data.density.raster(
-        view,
-        (view.width() as usize).max(1),
-        (view.height() as usize).max(1),
-        &look.scale,
-    );
-    placer.add_density(&raster);
+    let (nx, ny) = ((view.width() as usize).max(1), (view.height() as usize).max(1));
+    placer.add_density(&data.density.raster(view, nx, ny, &look.scale), view.width());
+    for polygon in data.plane.iter().filter(|polygon| polygon.bounds().meets(view.window)) {
+        let mut rim: Vec<(f64, f64)> = polygon.outer.iter().map(|&point| view.place(point)).collect();
+        rim.extend(rim.first().copied());
+        placer.add_line(&simplified(&rim, 0.2), 0.5, 1.5);
+    }
     for charted in [true, false] {
         for run in runs(data, view, charted) {
             placer.add_line(&run, 1.0, 6.0);

@@ -4,7 +4,7 @@ use super::number::coordinate;
 use super::path::PathData;
 use super::scale::DensityScale;
 use super::scene::{Group, Shape};
-use super::text::{Anchor, Text, italic, shortened, wrapped};
+use super::text::{Anchor, Text, italic, marked_width, shortened, wrapped};
 use super::view::View;
 use crate::geom::{Bounds, Polygon, Region};
 use crate::style::{Face, Style};
@@ -185,7 +185,10 @@ fn draw_figures(x: f64, y: f64, figures: &[KeyFigure], style: &Style) -> Group {
     for figure in figures {
         let base = top + 4.0;
         group.text(Text::new(x, base, style.font.body, Face::Narrow, color.ink, &figure.name));
-        let value = Text::new(x + WIDTH, base, style.font.value, Face::Bold, color.ink, &figure.value);
+        let taken = marked_width(Face::Narrow, style.font.body, &figure.name) + 2.0;
+        let wanted = marked_width(Face::Bold, style.font.value, &figure.value);
+        let size = style.font.value * ((WIDTH - taken) / wanted).clamp(0.6, 1.0);
+        let value = Text::new(x + WIDTH, base, size, Face::Bold, color.ink, &figure.value);
         group.text(value.anchored(Anchor::End));
         let mut row = top + 5.2;
         if figure.bar.is_some() || figure.tick.is_some() {

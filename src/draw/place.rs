@@ -36,11 +36,12 @@ impl Placer {
         Self { area, nx, ny, cost: vec![0.0; nx * ny], taken: Vec::new() }
     }
 
-    /// Lets dense places cost up to 1: (level + 45 dB)/45 dB, squared.
-    pub fn add_density(&mut self, raster: &Raster) {
+    /// Lets dense places cost up to 1: (level + 45 dB)/45 dB, squared. The raster covers the left `width` mm of the area.
+    pub fn add_density(&mut self, raster: &Raster, width: f64) {
+        let columns = ((width / STEP) as usize).clamp(1, self.nx);
         for iy in 0..self.ny {
-            for ix in 0..self.nx {
-                let jx = (ix * raster.nx / self.nx).min(raster.nx - 1);
+            for ix in 0..columns {
+                let jx = (ix * raster.nx / columns).min(raster.nx - 1);
                 let jy = (iy * raster.ny / self.ny).min(raster.ny - 1);
                 let u = ((raster.level_db[jy * raster.nx + jx] + 45.0) / 45.0).clamp(0.0, 1.0);
                 self.cost[iy * self.nx + ix] += u * u;

@@ -6,7 +6,7 @@ use super::path::PathData;
 use super::plot::{SharePoint, share_plot};
 use super::scale::DensityScale;
 use super::scene::{Group, Scene, Shape};
-use super::text::{Anchor, Text, marked_width, shortened, wrapped};
+use super::text::{Anchor, Text, italic, marked_width, shortened, wrapped};
 use super::view::View;
 use crate::geom::Bounds;
 use crate::style::{Face, Style};
@@ -30,13 +30,17 @@ pub struct CellMap {
     pub group: Group,
     /// Whether the board is turned by 90 degrees.
     pub turned: bool,
+    /// Width of the map in mm.
+    pub width: f64,
 }
 
 /// Draws a map in the size of a cell.
 pub fn cell_map(data: &MapData, board: Bounds, scale: DensityScale, style: &Style, label: &str) -> CellMap {
-    let view = View::filling(board, 0.0, 0.0, CELL.0, CELL.1);
-    let look = MapLook { style, scale, px_per_mm: style.set.px_per_mm(), small: true };
-    CellMap { group: draw_map(data, &view, &look, label).group, turned: view.turned }
+    // At the lower left of the cell, so that captions stand right under the map and column heads above its edge.
+    let mut view = View::filling(board, 0.0, 0.0, CELL.0, CELL.1);
+    (view.x, view.y) = (0.0, CELL.1 - view.height());
+    let look = MapLook { style, scale, px_per_mm: style.set.px_per_mm(), small: true, room_right: 0.0 };
+    CellMap { group: draw_map(data, &view, &look, label).group, turned: view.turned, width: view.width() }
 }
 
 /// A cell of the sheet.
@@ -140,7 +144,8 @@ pub fn scene(page: &SetPage, style: &Style) -> Scene {
     for (index, row) in page.rows.iter().enumerate() {
         scene.group(row_group(page, row, CELL_Y + PITCH.1 * index as f64, style));
     }
-    scene.group(foot(page, style));
+    let escaped = scene.texts().iter().any(|text| text.escaped);
+    scene.group(foot(page, escaped, style));
     scene.group(title_block(page, style));
     scene
 }
@@ -199,7 +204,7 @@ fn head(page: &SetPage, style: &Style) -> Group {
         group.text(Text::new(LEFT, y, style.font.lead, Face::Regular, color.ink_soft, line));
     }
     group.text(Text::new(LEFT, 42.0, 4.6, Face::Bold, color.ink, "Net"));
-    let note = "plot: return within 3h; dashed: no voids";
+    let note = &format!("plot: return within 3{}; dashed: no voids", italic("h"));
     group.text(Text::new(LEFT, 46.0, style.font.tick, Face::Narrow, color.ink_soft, note));
     for (index, column) in page.columns.iter().enumerate() {
         let x = CELL_X + PITCH.0 * index as f64;
@@ -245,7 +250,14 @@ fn cell_group(cell: &SetCell, x: f64, y: f64, style: &Style) -> Group {
             group.group(map.group.clone().shifted(x, y));
             let base = y + CELL.1 + 4.3;
             group.text(Text::new(x, base, style.font.label, Face::NarrowBold, color.ink, left));
-            let right = Text::new(x + CELL.0, base, style.font.label, Face::Narrow, color.ink_soft, right);
+            let right = Text::new(
+                x + map.width.max(44.0),
+                base,
+                style.font.label,
+                Face::Narrow,
+                color.ink_soft,
+                right,
+            );
             group.text(right.anchored(Anchor::End));
         }
         SetCell::Withheld { reason } => {
@@ -265,7 +277,7 @@ fn cell_group(cell: &SetCell, x: f64, y: f64, style: &Style) -> Group {
     group
 }
 
-fn foot(page: &SetPage, style: &Style) -> Group {
+fn foot(page: &SetPage, escaped: bool, style: &Style) -> Group {
     let mut group = Group::new("foot");
     group.group(color_scale(LEFT, 270.8, 92.0, &page.scale, &[], style));
     let mut entries = vec![LegendEntry::Track, LegendEntry::Contour80, LegendEntry::NoCopper];
@@ -274,10 +286,13 @@ fn foot(page: &SetPage, style: &Style) -> Group {
     }
     group.group(legend(141.0, 271.4, 86.0, &entries, style).0);
     let anchor = super::number::significant(page.scale.anchor(), 3);
-    let note = format!("0\u{a0}dB is {anchor} A/m per A on all sheets");
+    let mut note = format!("0\u{a0}dB is {anchor} A/m per A on all sheets");
+    if escaped {
+        note.push_str("; \\uXXXX: not in the font");
+    }
     group.text(Text::new(141.0, 280.6, style.font.tick, Face::Narrow, style.color.ink_soft, &note));
-    let caution = wrapped(Face::Narrow, style.font.tick, &page.caution, 200.0);
-    if let Some(line) = caution.first() {
+    // One line, left of the centering mark.
+    for line in wrapped(Face::Narrow, style.font.tick, &page.caution, 184.0).iter().take(1) {
         group.text(Text::new(LEFT, 284.8, style.font.tick, Face::Narrow, style.color.ink, line));
     }
     group

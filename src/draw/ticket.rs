@@ -77,7 +77,13 @@ pub fn scene(sheet: &TicketSheet, style: &Style) -> Scene {
     };
     scene.group(head(sheet, margin, right - margin, style));
     let (view, block, room) = placed_view(sheet, right, style);
-    let look = MapLook { style, scale: sheet.scale, px_per_mm: style.ticket.px_per_mm(), small: false };
+    let look = MapLook {
+        style,
+        scale: sheet.scale,
+        px_per_mm: style.ticket.px_per_mm(),
+        small: false,
+        room_right: (block - view.width()).clamp(0.0, 36.0),
+    };
     let drawn = draw_map(&sheet.map, &view, &look, &sheet.title);
     scene.group(drawn.group);
     scene.group(rulers(&view, sheet.origin, style));
@@ -100,8 +106,12 @@ pub fn scene(sheet: &TicketSheet, style: &Style) -> Scene {
         scene.group(panel.draw(x, y, style));
     }
     let mut words = Group::new("words").labeled("group", "in plain words");
+    let mut text = sheet.words.clone();
+    if scene.texts().iter().any(|text| text.escaped) {
+        text.push_str(" \\uXXXX stands for a character that the fonts lack.");
+    }
     for (row, line) in
-        wrapped(Face::Narrow, style.font.tick, &sheet.words, right - margin).iter().take(2).enumerate()
+        wrapped(Face::Narrow, style.font.tick, &text, right - margin).iter().take(2).enumerate()
     {
         let y = WORDS_Y + 4.0 * row as f64;
         words.text(Text::new(margin, y, style.font.tick, Face::Narrow, style.color.ink_soft, line));

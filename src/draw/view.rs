@@ -87,8 +87,8 @@ impl View {
 
 /// The largest round scale that is at most `room`: n : 1 or 1 : n.
 fn round_scale(room: f64) -> f64 {
-    const STEPS: [f64; 17] =
-        [1.0, 1.25, 1.5, 1.75, 2.0, 2.25, 2.5, 2.75, 3.0, 3.5, 4.0, 4.5, 5.0, 6.0, 7.0, 8.0, 9.0];
+    const STEPS: [f64; 18] =
+        [1.0, 1.1, 1.25, 1.5, 1.75, 2.0, 2.25, 2.5, 2.75, 3.0, 3.5, 4.0, 4.5, 5.0, 6.0, 7.0, 8.0, 9.0];
     let mut best = 0.0;
     for decade in 0..=3 {
         for step in STEPS {
@@ -114,11 +114,11 @@ mod tests {
             (2.9, 2.75),
             (2.5, 2.5),
             (3.9, 3.5),
-            (1.2, 1.0),
+            (1.2, 1.1),
             (0.9, 0.8),
             (0.5, 0.5),
             (0.7, 2.0 / 3.0),
-            (12.0, 10.0),
+            (12.0, 11.0),
         ];
         for (room, scale) in cases {
             assert!((round_scale(room) - scale).abs() < 1e-9, "{room}: {}", round_scale(room));

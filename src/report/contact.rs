@@ -1,7 +1,7 @@
 //! The contact sheet of a review: every net and plane in every band, one scale, the worst first.
 
 use super::Picture;
-use super::ticket::{caution_text, map_data, picture_number, validity_limit_hz};
+use super::ticket::{map_data, picture_number, validity_limit_hz};
 use super::words::{band_range, given_millimeters, hertz, hints_at_hazard, millimeters, percent};
 use crate::board::Board;
 use crate::draw::png::RenderFault;
@@ -268,7 +268,16 @@ fn lead(order: &[&ContactRow]) -> Vec<String> {
 
 fn page_caution(order: &[&ContactRow], input: &ContactInput) -> String {
     let highest = input.columns.iter().map(|&(_, hz)| hz).fold(0.0, f64::max);
-    caution_text(input.board, model(order).unwrap_or_default(), highest, &[])
+    let mut text = match model(order).unwrap_or_default() {
+        Model::Sheet => "Quasi-static sheet model: no radiation, no plane resonance, no parts".to_owned(),
+        Model::Spread => "Closed form over an endless plane: no voids, no edges, no radiation".to_owned(),
+    };
+    if let Some(limit) = validity_limit_hz(input.board) {
+        let side = if highest > limit { "a tendency only above" } else { "trust it up to" };
+        text.push_str(&format!("; {side} {} (board a tenth of a wavelength)", with_prefix(limit, "Hz", 2)));
+    }
+    text.push('.');
+    text
 }
 
 fn fields(

@@ -369,7 +369,7 @@ fn key_figures(input: &TicketInput) -> Vec<KeyFigure> {
     });
     if let Some(extra) = figures.extra_path_m.and_then(|figure| figure.value) {
         all.push(KeyFigure {
-            name: "Extra path caused by voids".to_owned(),
+            name: "Extra path by voids".to_owned(),
             value: signed(extra, millimeters),
             notes: vec!["longer way of the return; 0 is best".to_owned()],
             ..KeyFigure::default()

@@ -111,7 +111,7 @@ fn map_scene(name: &str, small_cell: bool) -> Scene {
     let style = style(name);
     let (data, bounds) = board(&little());
     let view = View { window: bounds.grown(0.5e-3), x: 1.0, y: 1.0, scale: 1.5, turned: false };
-    let look = MapLook { style: &style, scale: SCALE, px_per_mm: 4.0, small: small_cell };
+    let look = MapLook { style: &style, scale: SCALE, px_per_mm: 4.0, small: small_cell, room_right: 0.0 };
     small(&style, 48.0, 33.0, draw_map(&data, &view, &look, "a map").group)
 }
 
@@ -121,7 +121,7 @@ fn turned() -> Scene {
         Board { width: 20.0, height: 30.0, track: vec![(10.0, 24.0), (10.0, 8.0)], slot: None, ..little() };
     let (data, bounds) = board(&shape);
     let view = View::filling(bounds, 1.0, 1.0, 46.0, 30.0);
-    let look = MapLook { style: &style, scale: SCALE, px_per_mm: 4.0, small: true };
+    let look = MapLook { style: &style, scale: SCALE, px_per_mm: 4.0, small: true, room_right: 0.0 };
     small(&style, 48.0, 32.0, draw_map(&data, &view, &look, "a map").group)
 }
 
@@ -129,7 +129,7 @@ fn scale_scene() -> Scene {
     let style = style("paper");
     let (data, bounds) = board(&little());
     let view = View { window: bounds, x: 0.0, y: 0.0, scale: 3.0, turned: false };
-    let look = MapLook { style: &style, scale: SCALE, px_per_mm: 1.0, small: false };
+    let look = MapLook { style: &style, scale: SCALE, px_per_mm: 1.0, small: false, room_right: 0.0 };
     let drawn = draw_map(&data, &view, &look, "a map");
     small(&style, 96.0, 14.0, color_scale(4.0, 5.0, 68.0, &SCALE, &drawn.contours, &style))
 }

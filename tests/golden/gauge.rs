@@ -241,7 +241,7 @@ fn figures(map: &ReturnMap, height_m: f64) -> Figures {
             figure(2.4 * width(0.95), width(0.95), 1e-5),
         ],
         contour_levels: [level(0.5), level(0.8), level(0.95)],
-        extra_path_m: Some(figure(5.31e-3, 0.0, 1e-5)),
+        extra_path_m: Some(figure(0.914e-3, 0.0, 1e-5)),
         loop_resistance_ohm: Some(figure(0.083, 0.08, 1e-4)),
         loop_inductance_h: Some(figure(11.4e-9, 8.2e-9, 1e-11)),
         extra_loop_resistance_ohm: Some(figure(0.003, 0.0, 1e-5)),
