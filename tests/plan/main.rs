@@ -6,6 +6,7 @@ mod draft;
 mod drives;
 mod planes;
 mod review;
+mod sets;
 mod way;
 
 use ebbmap::board::Board;
