@@ -54,7 +54,7 @@ fn pens_that_overlap_are_joined_and_bends_make_no_loops() {
     // Two draws side by side that only touch with their pens, one that ends on the middle of another, a dot, an arc
     // of short chords, and a wide draw that swallows the end of a narrow one.
     draft.track(0, "TIDE_SCK", &[(5.0, 15.0), (12.0, 15.0)], 0.2);
-    draft.track(0, "TIDE_SCK", &[(11.0, 15.15), (20.0, 15.15)], 0.2);
+    draft.track(0, "TIDE_SCK", &[(11.7, 15.15), (20.0, 15.15)], 0.2);
     draft.track(0, "TIDE_SCK", &[(20.0, 15.15)], 0.4);
     draft.track(0, "TIDE_SCK", &[(20.0, 15.15), (25.0, 15.15)], 0.2);
     let arc = (0..=40).map(|k| {
