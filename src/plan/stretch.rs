@@ -1,8 +1,9 @@
 //! Which plane serves which part of a track.
 //!
 //! At samples along the track the nearest copper area of any net above and below is looked up, by the dielectric
-//! between the facing copper. Where there is none (a void), and where another area shows only for a while between
-//! two stretches over the same plane, the plane of the run stays: an island or a slot in a plane is a void of it.
+//! between the facing copper. Where there is none (a void), and where an area on the same layer or farther away shows
+//! for a while between two stretches over the same plane, the plane of the run stays: an island, or a slot through which
+//! another layer is seen, is a void of the plane. An area nearer than the plane hides it and is a stretch of its own.
 
 use super::TrackLeg;
 use super::terrain::Terrain;
@@ -167,10 +168,14 @@ fn run_blocks(terrain: &Terrain<'_>, layer: usize, samples: &[Sample], run: Rang
         }
     }
     merge(&mut blocks);
+    let gap_m = |block: &Block| {
+        block.plane.as_ref().map_or(0.0, |plane| terrain.board.stackup.gap_m(layer, plane.layer))
+    };
     // What shows for a while between two stretches of one plane belongs to it, the shortest first.
     loop {
         let between = (1..blocks.len().saturating_sub(1)).filter(|&at| {
             blocks[at - 1].plane == blocks[at + 1].plane
+                && gap_m(&blocks[at]) >= gap_m(&blocks[at - 1])
                 && blocks[at].length_m <= blocks[at - 1].length_m + blocks[at + 1].length_m
         });
         let Some(at) = between.min_by(|&a, &b| blocks[a].length_m.total_cmp(&blocks[b].length_m)) else {
@@ -181,11 +186,7 @@ fn run_blocks(terrain: &Terrain<'_>, layer: usize, samples: &[Sample], run: Rang
     }
     // What is too short to matter goes to its longer neighbour.
     loop {
-        let short = |block: &Block| {
-            let height_m =
-                block.plane.as_ref().map_or(0.0, |plane| terrain.board.stackup.gap_m(layer, plane.layer));
-            block.length_m < SHORT_M.max(SHORT_HEIGHTS * height_m)
-        };
+        let short = |block: &Block| block.length_m < SHORT_M.max(SHORT_HEIGHTS * gap_m(block));
         let shorts = (0..blocks.len()).filter(|&at| blocks.len() > 1 && short(&blocks[at]));
         let Some(at) = shorts.min_by(|&a, &b| blocks[a].length_m.total_cmp(&blocks[b].length_m)) else {
             break;

@@ -71,6 +71,26 @@ fn an_island_in_the_plane_is_a_void_of_it() {
 }
 
 #[test]
+fn an_area_nearer_than_the_plane_hides_it() {
+    // A bottom track over L2 with a supply island on L3 between, 8 mm long; one of 0.8 mm is too short to matter.
+    for (length, planes) in [(8.0, vec!["L2-GND", "L3-V3", "L2-GND"]), (0.8, vec!["L2-GND"])] {
+        let mut draft = Draft::new(40.0, 30.0, &[0.2, 0.3, 0.2]);
+        draft.plane(1, "GND", &[]);
+        draft.fill(2, "V3", rectangle(15.0, 5.0, 15.0 + length, 15.0));
+        for (part, x) in [("U1", 5.0), ("U2", 35.0)] {
+            draft.pad(3, &format!("{part}.1"), "TIDE_SCK", (x, 10.0), 0.6);
+            draft.via("GND", (x, 12.0), 0.3);
+        }
+        draft.track(3, "TIDE_SCK", &[(5.0, 10.0), (35.0, 10.0)], 0.2);
+        let planned = plan(draft.board(), &review("TIDE_SCK"));
+        let charts = &planned.nets[0].charts;
+        let found: Vec<String> = charts.iter().map(|chart| chart.plane.to_string()).collect();
+        assert_eq!(found, planes);
+        assert!(charts.iter().all(|chart| chart.withheld.is_some() == (planes.len() > 1)), "{charts:#?}");
+    }
+}
+
+#[test]
 fn own_pins_are_landings_before_nearer_vias() {
     let mut draft = four_layers("GND", "V3");
     draft.via("GND", (5.9, 10.0), 0.2);
