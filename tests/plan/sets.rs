@@ -8,7 +8,7 @@ use ebbmap::review::NetRequest;
 use std::path::{Path, PathBuf};
 
 /// Nets planned on each board.
-const NETS: usize = 40;
+const NETS: usize = 25;
 
 fn folders() -> Vec<PathBuf> {
     let boards = Path::new(env!("CARGO_MANIFEST_DIR")).join("../shared/boards");
