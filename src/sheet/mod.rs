@@ -4,6 +4,7 @@
 
 mod branches;
 pub mod kernel;
+mod loops;
 mod operator;
 mod problem;
 mod projector;

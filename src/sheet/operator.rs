@@ -10,6 +10,7 @@
 
 use super::branches::{Branches, EDGE_PART};
 use super::kernel;
+use super::loops::{Law, Loops};
 use super::projector::Projector;
 use super::{Problem, Vertical};
 use crate::math::filter::{Filter, Scratch};
@@ -32,8 +33,8 @@ pub struct Coupling {
 }
 
 impl Coupling {
-    /// Prepares the kernels of `problem`.
-    pub fn new(problem: &Problem) -> Self {
+    /// Prepares the kernels of `problem`, on branches and, where no vertical needs them, on corners.
+    pub fn new(problem: &Problem, branches: &Branches) -> (Self, Option<Loops>) {
         let grid = &problem.grid;
         let (nx, ny, d) = (grid.nx, grid.ny, grid.cell_m);
         let padded = Filter::padded(nx, ny);
@@ -51,13 +52,18 @@ impl Coupling {
                 }));
             }
         }
-        let spectra = distances.iter().map(|&z| {
-            let offsets = kernel::offsets(nx, ny, z / d);
-            kernel::spectrum(&offsets, nx, ny, d, &padded)
+        let offsets: Vec<Vec<f64>> =
+            distances.iter().map(|&z| kernel::offsets(nx + 2, ny + 2, z / d)).collect();
+        let spectra = offsets.iter().map(|table| {
+            let rows = table.chunks_exact(nx + 2).take(ny);
+            let inner: Vec<f64> = rows.flat_map(|row| row[..nx].iter().copied()).collect();
+            kernel::spectrum(&inner, nx, ny, d, &padded)
         });
-        let symbols = distances.iter().map(|&z| kernel::symbol(d, z, &torus));
-        let (spectra, symbols) = (spectra.collect(), symbols.collect());
-        Self { padded, torus, pair, spectra, symbols }
+        let spectra = spectra.collect();
+        let loops =
+            problem.verticals.is_empty().then(|| Loops::new(branches, d, &distances, &pair, &offsets));
+        let symbols = distances.iter().map(|&z| kernel::symbol(d, z, &torus)).collect();
+        (Self { padded, torus, pair, spectra, symbols }, loops)
     }
 }
 
@@ -104,26 +110,8 @@ impl<'a> Impedance<'a> {
         s: Complex64,
         zs: &'a [Complex64],
     ) -> Self {
-        let sheets = branches.sheets;
         let (px, py) = coupling.torus.size();
-        let (hx, hy) = (px / 2 + 1, py / 2 + 1);
-        let norm = 1.0 / (px as f64 * py as f64);
-        let triangle = sheets * (sheets + 1) / 2;
-        let mut inverse = Vec::with_capacity(hx * hy * triangle);
-        let mut matrix = vec![Complex64::default(); sheets * sheets];
-        for mode in 0..hx * hy {
-            for p in 0..sheets {
-                for q in 0..sheets {
-                    let at = p * sheets + q;
-                    matrix[at] = s * coupling.symbols[coupling.pair[at]][mode];
-                }
-                matrix[p * sheets + p] += zs[p];
-            }
-            invert(&mut matrix, sheets);
-            for p in 0..sheets {
-                inverse.extend((p..sheets).map(|q| matrix[p * sheets + q] * norm));
-            }
-        }
+        let inverse = inverse_symbols(s, zs, &coupling.pair, &coupling.symbols, px * py);
         let verticals: Vec<Complex64> = problem.verticals.iter().map(|v| vertical_impedance(v, s)).collect();
         let spread = typical(problem, s, zs);
         let vertical_inverse = verticals
@@ -143,6 +131,11 @@ impl<'a> Impedance<'a> {
             inverse,
             scratch: Scratch::default(),
         }
+    }
+
+    /// The same law for loops.
+    pub fn law(&self) -> Law<'a> {
+        Law { s: self.s, zs: self.zs, edge_h: self.edge_h }
     }
 
     /// Voltages Z i in V of all branches that exist.
@@ -319,6 +312,34 @@ impl<'a> Impedance<'a> {
         }
         (most_steps, reached)
     }
+}
+
+/// For each mode the inverse of Zs_p delta_pq + s symbol_pq over `points`, upper triangle over the sheets.
+pub fn inverse_symbols(
+    s: Complex64,
+    zs: &[Complex64],
+    pair: &[usize],
+    symbols: &[Vec<f64>],
+    points: usize,
+) -> Vec<Complex64> {
+    let sheets = zs.len();
+    let modes = symbols.first().map_or(0, Vec::len);
+    let scale = 1.0 / points as f64;
+    let mut inverse = Vec::with_capacity(modes * sheets * (sheets + 1) / 2);
+    let mut matrix = vec![Complex64::default(); sheets * sheets];
+    for mode in 0..modes {
+        for (entry, &index) in matrix.iter_mut().zip(pair) {
+            *entry = s * symbols[index][mode];
+        }
+        for (p, zs) in zs.iter().enumerate() {
+            matrix[p * sheets + p] += zs;
+        }
+        invert(&mut matrix, sheets);
+        for p in 0..sheets {
+            inverse.extend((p..sheets).map(|q| matrix[p * sheets + q] * scale));
+        }
+    }
+    inverse
 }
 
 /// A typical impedance per square of the sheets at `s`, for weighing verticals against them.

@@ -13,6 +13,7 @@
 use super::SolveFailure;
 use super::branches::Branches;
 use faer::dyn_stack::{MemBuffer, MemStack};
+use faer::sparse::linalg::SupernodalThreshold;
 use faer::sparse::linalg::cholesky::{
     CholeskySymbolicParams, LltRef, SymbolicCholesky, SymmetricOrdering, factorize_symbolic_cholesky,
 };
@@ -43,7 +44,7 @@ impl std::fmt::Debug for Projector {
 }
 
 /// Union-find with path halving.
-fn root(parent: &mut [u32], mut node: u32) -> u32 {
+pub fn root(parent: &mut [u32], mut node: u32) -> u32 {
     while parent[node as usize] != node {
         parent[node as usize] = parent[parent[node as usize] as usize];
         node = parent[node as usize];
@@ -103,7 +104,10 @@ impl Projector {
             matrix.symbolic(),
             Side::Lower,
             SymmetricOrdering::Amd,
-            CholeskySymbolicParams::default(),
+            CholeskySymbolicParams {
+                supernodal_flop_ratio_threshold: SupernodalThreshold::FORCE_SUPERNODAL,
+                ..Default::default()
+            },
         )
         .map_err(|_| failed())?;
         let mut values = vec![0.0; symbolic.len_val()];

@@ -11,6 +11,7 @@
 //! Checked by: tests/physics.
 
 use super::branches::{Branches, NO_NODE};
+use super::loops::Loops;
 use super::operator::{Coupling, Impedance, dot, norm, typical, vertical_impedance};
 use super::projector::Projector;
 use super::source;
@@ -43,6 +44,10 @@ pub struct Prepared {
     pub flux: Vec<f64>,
     /// Current in A that enters each node.
     pub entering: Vec<f64>,
+    /// Potential flow of the entering currents on the branches in A, with the base weights of the system.
+    start: Vec<f64>,
+    /// Size of the flux without its potential part in V s.
+    driving: f64,
 }
 
 /// A prepared problem: solve it for any source and frequency.
@@ -51,6 +56,7 @@ pub struct System {
     problem: Problem,
     branches: Branches,
     coupling: Coupling,
+    loops: Option<Loops>,
     projector: Arc<Projector>,
 }
 
@@ -61,9 +67,9 @@ impl System {
     /// Numbers the branches, factors the graph Laplacian and transforms the kernels of `problem`.
     pub fn new(problem: Problem) -> Result<Self, SolveFailure> {
         let branches = Branches::new(&problem)?;
-        let coupling = Coupling::new(&problem);
+        let (coupling, loops) = Coupling::new(&problem, &branches);
         let projector = Arc::new(Projector::new(&branches, vec![1.0; problem.verticals.len()])?);
-        Ok(Self { problem, branches, coupling, projector })
+        Ok(Self { problem, branches, coupling, loops, projector })
     }
 
     /// The problem that was prepared.
@@ -89,7 +95,13 @@ impl System {
                 entering[node as usize] += weight * injection.current_a;
             }
         }
-        Ok(Prepared { flux: source::flux(&self.problem, &drive.strips), entering })
+        let mut flux = source::flux(&self.problem, &drive.strips);
+        flux.iter_mut().zip(&self.branches.conducts).filter(|(_, c)| !**c).for_each(|(a, _)| *a = 0.0);
+        let start = self.potential_flow(&self.projector, &entering).iter().map(|i| i.re).collect();
+        let mut driving: Vec<Complex64> = flux.iter().map(|&a| a.into()).collect();
+        driving.resize(self.branches.len(), Complex64::default());
+        self.projector.take_out_potential(&self.branches, &mut driving);
+        Ok(Prepared { flux, entering, start, driving: norm(&driving) })
     }
 
     /// Solves for one drive at one frequency to a relative residual of `tolerance`.
@@ -116,31 +128,41 @@ impl System {
         let mut operator =
             Impedance::new(&self.problem, branches, &self.coupling, &projector, s, &point.zs_ohm);
         let mut emf: Vec<Complex64> = drive.flux.iter().map(|a| s * a).collect();
-        emf.iter_mut().zip(&branches.conducts).filter(|(_, c)| !**c).for_each(|(v, _)| *v = 0.0.into());
         emf.resize(branches.len(), Complex64::default());
-        let entering: Vec<Complex64> = drive.entering.iter().map(|&a| a.into()).collect();
-        // potential flow: conserve() removes the divergence, so start from the negative of what should enter
-        let mut currents = vec![Complex64::default(); branches.len()];
-        let flow = projector.potential(&entering);
-        branches.subtract_gradient(&flow, Some(&projector.conductance), &mut currents);
-        currents.iter_mut().for_each(|i| *i = -*i);
+        let mut currents: Vec<Complex64> = if Arc::ptr_eq(&projector, &self.projector) {
+            drive.start.iter().map(|&i| i.into()).collect()
+        } else {
+            self.potential_flow(&projector, &drive.entering)
+        };
         // the voltages that drive the currents: induced ones without their potential part, resistive ones of the start
-        let mut driving = emf.clone();
-        projector.take_out_potential(branches, &mut driving);
-        let size = norm(&driving) + norm(&operator.resistive(&currents));
-        drop(driving);
-        let (steps, _) = operator.iterate(&emf, &mut currents, tolerance * size, MOST_STEPS);
-        // rounding of many steps: bring the divergence back
-        let mut surplus = branches.divergence(&currents);
-        surplus.iter_mut().zip(&entering).for_each(|(leaves, enters)| *leaves -= enters);
-        let potential = projector.potential(&surplus);
-        branches.subtract_gradient(&potential, Some(&projector.conductance), &mut currents);
-        // what is left of the voltage law
+        let size = s.norm() * drive.driving + norm(&operator.resistive(&currents));
+        let mut steps = 0;
         let mut voltage = vec![Complex64::default(); branches.len()];
-        operator.apply(&currents, &mut voltage);
-        let impedance = dot(&currents, &voltage) + 2.0 * dot(&currents, &emf);
-        voltage.iter_mut().zip(&emf).for_each(|(v, e)| *v += e);
-        let potential = projector.take_out_potential(branches, &mut voltage);
+        if self.loops.is_none() {
+            (steps, _) = operator.iterate(&emf, &mut currents, tolerance * size, MOST_STEPS);
+            // rounding of many steps: bring the divergence back
+            let mut surplus = branches.divergence(&currents);
+            surplus.iter_mut().zip(&drive.entering).for_each(|(leaves, enters)| *leaves -= enters);
+            let potential = projector.potential(&surplus);
+            branches.subtract_gradient(&potential, Some(&projector.conductance), &mut currents);
+        }
+        // what is left of the voltage law; the size of the EMF round loops is another measure, so that loops are
+        // added until the law holds
+        let mut rounds = 0;
+        let (impedance, potential) = loop {
+            operator.apply(&currents, &mut voltage);
+            voltage.iter_mut().zip(&emf).for_each(|(v, e)| *v += e);
+            let impedance = dot(&currents, &voltage) + dot(&currents, &emf);
+            let potential = projector.take_out_potential(branches, &mut voltage);
+            let left = norm(&voltage);
+            let Some(loops) = self.loops.as_ref().filter(|_| left > tolerance * size && rounds < 4) else {
+                break (impedance, potential);
+            };
+            let reduction = (0.5 * tolerance * size / left).min(0.1);
+            let most = MOST_STEPS - steps;
+            steps += loops.iterate(branches, &operator.law(), &voltage, &mut currents, reduction, most);
+            rounds += 1;
+        };
         let residual = if size > 0.0 { norm(&voltage) / size } else { 0.0 };
         if residual.is_nan() || residual > 1.01 * tolerance.max(1e-11) {
             return Err(SolveFailure::NoConvergence { steps, residual, tolerance });
@@ -171,6 +193,16 @@ impl System {
             }
         }
         s * flux + landing
+    }
+
+    /// Currents of the potential flow of what enters.
+    fn potential_flow(&self, projector: &Projector, entering: &[f64]) -> Vec<Complex64> {
+        let entering: Vec<Complex64> = entering.iter().map(|&a| a.into()).collect();
+        let mut currents = vec![Complex64::default(); self.branches.len()];
+        let flow = projector.potential(&entering);
+        self.branches.subtract_gradient(&flow, Some(&projector.conductance), &mut currents);
+        currents.iter_mut().for_each(|i| *i = -*i);
+        currents
     }
 
     /// The prepared factor, or one with weights that suit the verticals at this frequency.

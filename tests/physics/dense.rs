@@ -262,3 +262,36 @@ fn source_flux_against_plain_quadrature() {
     println!("largest difference {worst:.1e} of the largest flux");
     assert!(worst < 1e-6);
 }
+
+/// The route by loops (no verticals) against the route by projection (the same with one hopeless vertical).
+#[test]
+fn both_routes_agree() {
+    let (mut problem, _) = board();
+    problem.verticals.clear();
+    let strips = vec![filament(Point::mm(0.4, 1.3), Point::mm(3.3, 0.6), 0.2e-3)];
+    let landing = |at: Point| disc(&problem, 0, at, 0.25e-3);
+    let drive =
+        Drive { strips, injections: landings(landing(Point::mm(0.4, 1.3)), landing(Point::mm(3.3, 0.6))) };
+    let loops = System::new(problem.clone()).unwrap();
+    let nothing = Vertical {
+        from: cell(&problem, 0, 14, 12),
+        to: cell(&problem, 1, 14, 12),
+        resistance_ohm: 1e12,
+        inductance_h: 0.0,
+        capacitance_f: None,
+    };
+    problem.verticals.push(nothing);
+    let projection = System::new(problem.clone()).unwrap();
+    for f in [0.0, 1e4, 1e6, 1e9] {
+        let point = at(f, Complex64::new(0.5e-3, 0.0), 2);
+        let (a, b) = (solve(&loops, &drive, &point, 1e-9), solve(&projection, &drive, &point, 1e-9));
+        let pairs = a.jx.iter().zip(&b.jx).chain(a.jy.iter().zip(&b.jy)).flat_map(|(a, b)| a.iter().zip(b));
+        let worst = pairs.map(|(a, b)| (a - b).norm()).fold(0.0, f64::max);
+        let impedance = (a.sheet_impedance_ohm - b.sheet_impedance_ohm).norm() / a.sheet_impedance_ohm.norm();
+        println!(
+            "f {f:e}: {} and {} steps, currents {worst:.1e}, impedance {impedance:.1e}",
+            a.steps, b.steps
+        );
+        assert!(worst < 1e-6 && impedance < 1e-6);
+    }
+}

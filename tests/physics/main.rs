@@ -13,6 +13,7 @@
 //! | port voltage times current | resistive loss | Poynting's theorem | 1e-6 | - |
 //! | strip ground, edge of a wide plane at 1 GHz | conformal maps | perfect conductor | 2 % two cells off the edge | `spread::edge` |
 //! | solve by projection | dense LU of branch currents and potentials | same discrete system | 1e-6 | faer |
+//! | route by loops | route by projection | same discrete system | 1e-6 | - |
 //! | operator by FFT | direct sum | same kernel | 1e-12 | - |
 //! | band-limited kernel | square patches | both tend to 1/r | order 2 in 1/r | Hoer and Love 1965 |
 //! | patch kernel | direct quadrature in 16 digits | same integral | 1e-9 | Ruehli 1972 |
