@@ -4,3 +4,4 @@ pub mod exponential_integral;
 pub mod filter;
 pub mod measure;
 pub mod quadrature;
+pub mod small;

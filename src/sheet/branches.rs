@@ -38,8 +38,10 @@ pub struct Branches {
     pub conducts: Vec<bool>,
     /// Node of each cell of each sheet, [`NO_NODE`] without copper.
     pub node: Vec<u32>,
-    /// Number of nodes (copper cells of all sheets).
+    /// Number of nodes: copper cells of all sheets, then those outside the board.
     pub nodes: usize,
+    /// Number of copper cells of all sheets.
+    pub copper_nodes: usize,
     /// For each vertical the nodes it touches with what leaves them for 1 A.
     pub ends: Vec<Vec<(u32, f64)>>,
     /// Symmetric edge terms: two faces and a weight, to be multiplied by [`EDGE_PART`] mu0 d/2.
@@ -69,8 +71,12 @@ impl Branches {
             }
         }
         let edges = edge_terms(nx, ny, &conducts);
+        let ends = problem.verticals.iter().flat_map(|vertical| [&vertical.from, &vertical.to]);
+        let outside = ends.filter(|patch| patch.sheet == Patch::OUTSIDE).flat_map(|patch| &patch.cells);
+        let copper_nodes = nodes as usize;
+        let nodes = copper_nodes + outside.map(|(node, _)| node + 1).max().unwrap_or(0);
         let mut branches =
-            Self { nx, ny, sheets, conducts, node, nodes: nodes as usize, ends: Vec::new(), edges };
+            Self { nx, ny, sheets, conducts, node, nodes, copper_nodes, ends: Vec::new(), edges };
         let ends =
             problem.verticals.iter().enumerate().map(|(index, vertical)| branches.ends_of(vertical, index));
         branches.ends = ends.collect::<Result<_, _>>()?;
@@ -86,6 +92,12 @@ impl Branches {
     /// A patch as nodes and weights that sum to 1; cells without copper are left out and the rest takes their part.
     pub fn on_nodes(&self, patch: &Patch, index: usize) -> Result<Vec<(u32, f64)>, SolveFailure> {
         let cells = self.nx * self.ny;
+        if patch.sheet == Patch::OUTSIDE {
+            let there = |&(node, weight): &(usize, f64)| ((self.copper_nodes + node) as u32, weight);
+            let all: Vec<(u32, f64)> = patch.cells.iter().map(there).collect();
+            let exists = all.iter().all(|(node, _)| (*node as usize) < self.nodes);
+            return if exists && !all.is_empty() { Ok(all) } else { Err(SolveFailure::NoCopper { index }) };
+        }
         let on_copper: Vec<(u32, f64)> = patch
             .cells
             .iter()

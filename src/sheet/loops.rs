@@ -100,7 +100,7 @@ impl Loops {
         for corner in 0..unknown.len() {
             let top = root(&mut parent, corner as u32) as usize;
             // the first corner of a sheet is outside and the lowest of its set
-            if top % corners == 0 {
+            if top.is_multiple_of(corners) {
                 continue;
             }
             if top == corner {

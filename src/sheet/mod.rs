@@ -2,7 +2,9 @@
 //!
 //! Knows nothing of boards: it gets masks, heights, verticals, sources and frequencies.
 
+pub mod barrel;
 mod branches;
+mod family;
 pub mod kernel;
 mod loops;
 mod operator;
@@ -14,5 +16,6 @@ pub use problem::{Injection, Patch, Problem, Sheet, SourceStrip, StripProfile, V
 
 mod solution;
 mod system;
+pub use family::Family;
 pub use solution::{Solution, SolveFailure};
 pub use system::{Drive, OperatingPoint, Prepared, System};

@@ -101,7 +101,7 @@ pub fn vertical_impedance(vertical: &Vertical, s: Complex64) -> Complex64 {
 }
 
 impl<'a> Impedance<'a> {
-    /// The operator for sheet impedances `zs` at the complex frequency `s`.
+    /// The operator with its preconditioner for sheet impedances `zs` at the complex frequency `s`.
     pub fn new(
         problem: &Problem,
         branches: &'a Branches,
@@ -110,27 +110,29 @@ impl<'a> Impedance<'a> {
         s: Complex64,
         zs: &'a [Complex64],
     ) -> Self {
+        let mut operator = Self::bare(problem, branches, coupling, projector, s, zs);
         let (px, py) = coupling.torus.size();
-        let inverse = inverse_symbols(s, zs, &coupling.pair, &coupling.symbols, px * py);
-        let verticals: Vec<Complex64> = problem.verticals.iter().map(|v| vertical_impedance(v, s)).collect();
+        operator.inverse = inverse_symbols(s, zs, &coupling.pair, &coupling.symbols, px * py);
         let spread = typical(problem, s, zs);
-        let vertical_inverse = verticals
-            .iter()
-            .zip(&projector.conductance)
-            .map(|(z, &g)| if g > 0.0 { 1.0 / (z + spread) } else { Complex64::default() })
-            .collect();
-        Self {
-            branches,
-            coupling,
-            projector,
-            s,
-            zs,
-            edge_h: EDGE_PART * MU0 * problem.grid.cell_m / 2.0,
-            verticals,
-            vertical_inverse,
-            inverse,
-            scratch: Scratch::default(),
-        }
+        let both = operator.verticals.iter().zip(&projector.conductance);
+        let inverse = both.map(|(z, &g)| if g > 0.0 { 1.0 / (z + spread) } else { Complex64::default() });
+        operator.vertical_inverse = inverse.collect();
+        operator
+    }
+
+    /// The operator alone, which cannot precondition.
+    pub fn bare(
+        problem: &Problem,
+        branches: &'a Branches,
+        coupling: &'a Coupling,
+        projector: &'a Projector,
+        s: Complex64,
+        zs: &'a [Complex64],
+    ) -> Self {
+        let verticals = problem.verticals.iter().map(|v| vertical_impedance(v, s)).collect();
+        let edge_h = EDGE_PART * MU0 * problem.grid.cell_m / 2.0;
+        let (vertical_inverse, inverse, scratch) = (Vec::new(), Vec::new(), Scratch::default());
+        Self { branches, coupling, projector, s, zs, edge_h, verticals, vertical_inverse, inverse, scratch }
     }
 
     /// The same law for loops.
@@ -188,7 +190,7 @@ impl<'a> Impedance<'a> {
     }
 
     /// Approximate currents for given voltages: F v.
-    fn precondition(&mut self, voltages: &[Complex64], out: &mut [Complex64]) {
+    pub fn precondition(&mut self, voltages: &[Complex64], out: &mut [Complex64]) {
         let (sheets, faces) = (self.branches.sheets, self.branches.faces());
         let coupling = self.coupling;
         let (px, py) = coupling.torus.size();
@@ -284,7 +286,7 @@ impl<'a> Impedance<'a> {
         self.apply(currents, &mut residual);
         residual.iter_mut().zip(emf).for_each(|(r, e)| *r = -(*r + e));
         self.projector.take_out_potential(self.branches, &mut residual);
-        let mut reached = norm(&residual);
+        let mut reached = self.projector.size(self.branches, &residual);
         if reached <= target_v {
             return (0, reached);
         }
@@ -305,7 +307,7 @@ impl<'a> Impedance<'a> {
             }
             currents.iter_mut().zip(&search).for_each(|(i, p)| *i += alpha * p);
             residual.iter_mut().zip(&work).for_each(|(r, q)| *r -= alpha * q);
-            reached = norm(&residual);
+            reached = self.projector.size(self.branches, &residual);
             if reached <= target_v {
                 return (step + 1, reached);
             }
@@ -327,10 +329,9 @@ pub fn inverse_symbols(
     let scale = 1.0 / points as f64;
     let mut inverse = Vec::with_capacity(modes * sheets * (sheets + 1) / 2);
     let mut matrix = vec![Complex64::default(); sheets * sheets];
+    let at = |index: usize, mode: usize| s * symbols[index][mode];
     for mode in 0..modes {
-        for (entry, &index) in matrix.iter_mut().zip(pair) {
-            *entry = s * symbols[index][mode];
-        }
+        matrix.iter_mut().zip(pair).for_each(|(entry, &index)| *entry = at(index, mode));
         for (p, zs) in zs.iter().enumerate() {
             matrix[p * sheets + p] += zs;
         }

@@ -55,6 +55,16 @@ pub struct Patch {
     pub cells: Vec<(usize, f64)>,
 }
 
+impl Patch {
+    /// Mark in `sheet` of a node outside the board: a tie inside a part, a chassis, a cable shield.
+    pub const OUTSIDE: usize = usize::MAX;
+
+    /// The node outside the board with this number, from 0 without gaps; it exists as soon as a vertical ends on it.
+    pub fn outside(node: usize) -> Self {
+        Self { sheet: Self::OUTSIDE, cells: vec![(node, 1.0)] }
+    }
+}
+
 /// A lumped branch between two patches: barrel, bridging part, tie, capacitor.
 #[derive(Clone, Debug, PartialEq)]
 pub struct Vertical {

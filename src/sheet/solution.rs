@@ -14,6 +14,8 @@ pub struct Solution {
     /// For each sheet and cell the potential in V against some cell of the same connected copper (zero without copper);
     /// differences are those along the copper, without the EMF of the fields.
     pub potential_v: Vec<Vec<Complex64>>,
+    /// The same for the nodes outside the board, see [`super::Patch::outside`].
+    pub outside_v: Vec<Complex64>,
     /// Impedance in ohm of the loop as far as the sheets and verticals make it: the EMF that their currents and the
     /// potential difference of the landings put into the source path, for the source's unit current, without the
     /// source path's own resistance and self-inductance.

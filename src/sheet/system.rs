@@ -16,6 +16,7 @@ use super::operator::{Coupling, Impedance, dot, norm, typical, vertical_impedanc
 use super::projector::Projector;
 use super::source;
 use super::{Injection, Problem, Solution, SolveFailure, SourceStrip};
+use crate::unit::constants::MU0;
 use num_complex::Complex64;
 use std::sync::Arc;
 
@@ -45,7 +46,7 @@ pub struct Prepared {
     /// Current in A that enters each node.
     pub entering: Vec<f64>,
     /// Potential flow of the entering currents on the branches in A, with the base weights of the system.
-    start: Vec<f64>,
+    pub(super) start: Vec<f64>,
     /// Size of the flux without its potential part in V s.
     driving: f64,
 }
@@ -53,11 +54,20 @@ pub struct Prepared {
 /// A prepared problem: solve it for any source and frequency.
 #[derive(Debug)]
 pub struct System {
-    problem: Problem,
-    branches: Branches,
-    coupling: Coupling,
+    pub(super) problem: Problem,
+    pub(super) branches: Branches,
+    pub(super) coupling: Coupling,
     loops: Option<Loops>,
-    projector: Arc<Projector>,
+    pub(super) projector: Arc<Projector>,
+}
+
+/// What a solve gives before it is put into the layout that others read.
+pub(super) struct Raw {
+    pub currents: Vec<Complex64>,
+    pub potential: Vec<Complex64>,
+    pub impedance: Complex64,
+    pub residual: f64,
+    pub steps: usize,
 }
 
 /// Steps after which a solve is given up.
@@ -122,23 +132,35 @@ impl System {
         tolerance: f64,
     ) -> Result<Solution, SolveFailure> {
         let s = Complex64::new(0.0, 2.0 * std::f64::consts::PI * point.frequency_hz);
-        let projector = self.projector_at(s, &point.zs_ohm)?;
+        let raw = self.raw(drive, s, &point.zs_ohm, tolerance)?;
+        Ok(self.solution(&raw.currents, &raw.potential, raw.impedance, raw.residual, raw.steps))
+    }
+
+    /// Branch currents at the complex frequency `s`.
+    pub(super) fn raw(
+        &self,
+        drive: &Prepared,
+        s: Complex64,
+        zs: &[Complex64],
+        tolerance: f64,
+    ) -> Result<Raw, SolveFailure> {
+        let projector = self.projector_at(s, zs)?;
         self.check_balance(&projector, &drive.entering)?;
         let branches = &self.branches;
-        let mut operator =
-            Impedance::new(&self.problem, branches, &self.coupling, &projector, s, &point.zs_ohm);
-        let mut emf: Vec<Complex64> = drive.flux.iter().map(|a| s * a).collect();
-        emf.resize(branches.len(), Complex64::default());
+        let loops = self.loops.as_ref().filter(|_| self.loops_pay(s, zs));
+        let make = if loops.is_some() { Impedance::bare } else { Impedance::new };
+        let mut operator = make(&self.problem, branches, &self.coupling, &projector, s, zs);
+        let emf = self.emf(drive, s);
         let mut currents: Vec<Complex64> = if Arc::ptr_eq(&projector, &self.projector) {
             drive.start.iter().map(|&i| i.into()).collect()
         } else {
             self.potential_flow(&projector, &drive.entering)
         };
         // the voltages that drive the currents: induced ones without their potential part, resistive ones of the start
-        let size = s.norm() * drive.driving + norm(&operator.resistive(&currents));
+        let size = s.norm() * drive.driving + projector.size(branches, &operator.resistive(&currents));
         let mut steps = 0;
         let mut voltage = vec![Complex64::default(); branches.len()];
-        if self.loops.is_none() {
+        if loops.is_none() {
             (steps, _) = operator.iterate(&emf, &mut currents, tolerance * size, MOST_STEPS);
             // rounding of many steps: bring the divergence back
             let mut surplus = branches.divergence(&currents);
@@ -149,25 +171,39 @@ impl System {
         // what is left of the voltage law; the size of the EMF round loops is another measure, so that loops are
         // added until the law holds
         let mut rounds = 0;
-        let (impedance, potential) = loop {
+        let (impedance, potential, left) = loop {
             operator.apply(&currents, &mut voltage);
             voltage.iter_mut().zip(&emf).for_each(|(v, e)| *v += e);
             let impedance = dot(&currents, &voltage) + dot(&currents, &emf);
             let potential = projector.take_out_potential(branches, &mut voltage);
-            let left = norm(&voltage);
-            let Some(loops) = self.loops.as_ref().filter(|_| left > tolerance * size && rounds < 4) else {
-                break (impedance, potential);
+            let left = projector.size(branches, &voltage);
+            let Some(loops) = loops.filter(|_| left > tolerance * size && rounds < 4) else {
+                break (impedance, potential, left);
             };
             let reduction = (0.5 * tolerance * size / left).min(0.1);
             let most = MOST_STEPS - steps;
             steps += loops.iterate(branches, &operator.law(), &voltage, &mut currents, reduction, most);
             rounds += 1;
         };
-        let residual = if size > 0.0 { norm(&voltage) / size } else { 0.0 };
+        let residual = if size > 0.0 { left / size } else { 0.0 };
         if residual.is_nan() || residual > 1.01 * tolerance.max(1e-11) {
             return Err(SolveFailure::NoConvergence { steps, residual, tolerance });
         }
-        Ok(self.solution(currents, &potential, impedance, residual, steps))
+        Ok(Raw { currents, potential, impedance, residual, steps })
+    }
+
+    /// EMF of the strips on every branch at `s`.
+    pub(super) fn emf(&self, drive: &Prepared, s: Complex64) -> Vec<Complex64> {
+        let mut emf: Vec<Complex64> = drive.flux.iter().map(|a| s * a).collect();
+        emf.resize(self.branches.len(), Complex64::default());
+        emf
+    }
+
+    /// Loops take cheaper steps than projection but more of them at low frequency; measured, they pay from
+    /// |lambda| d = 0.15 on.
+    fn loops_pay(&self, s: Complex64, zs: &[Complex64]) -> bool {
+        let most = zs.iter().map(|z| z.norm()).fold(0.0, f64::max);
+        s.norm() * MU0 * self.problem.grid.cell_m > 0.3 * most
     }
 
     /// Voltage in V that the currents of `solution` put into another path per ampere: EMF along its strips plus
@@ -192,6 +228,11 @@ impl System {
                 }
             }
         }
+        for (potential, entering) in
+            solution.outside_v.iter().zip(&other.entering[self.branches.copper_nodes..])
+        {
+            landing += potential * *entering;
+        }
         s * flux + landing
     }
 
@@ -205,8 +246,41 @@ impl System {
         currents
     }
 
+    /// Difference of two solutions relative to the second in the norm of R + w L, in which the iteration minimizes.
+    pub fn difference(&self, one: &Solution, other: &Solution, point: &OperatingPoint) -> f64 {
+        let (a, b) = (self.currents_of(one), self.currents_of(other));
+        let off: Vec<Complex64> = a.iter().zip(&b).map(|(a, b)| a - b).collect();
+        let s = Complex64::new(0.0, 2.0 * std::f64::consts::PI * point.frequency_hz);
+        let Ok(projector) = self.projector_at(s, &point.zs_ohm) else { return f64::NAN };
+        let mut law =
+            Impedance::bare(&self.problem, &self.branches, &self.coupling, &projector, s, &point.zs_ohm);
+        let mut size = |currents: &[Complex64]| {
+            let mut voltage = vec![Complex64::default(); currents.len()];
+            law.apply(currents, &mut voltage);
+            let power: Complex64 = currents.iter().zip(&voltage).map(|(i, v)| i.conj() * v).sum();
+            libm::sqrt(power.re.abs() + power.im.abs())
+        };
+        size(&off) / size(&b)
+    }
+
+    /// A solution as a vector of branch currents.
+    fn currents_of(&self, solution: &Solution) -> Vec<Complex64> {
+        let nx = self.branches.nx;
+        let mut currents = Vec::with_capacity(self.branches.len());
+        for (jx, jy) in solution.jx.iter().zip(&solution.jy) {
+            jx.chunks_exact(nx + 1).for_each(|row| currents.extend_from_slice(&row[..nx]));
+            currents.extend_from_slice(&jy[..self.branches.cells()]);
+        }
+        currents.extend_from_slice(&solution.verticals);
+        currents
+    }
+
     /// The prepared factor, or one with weights that suit the verticals at this frequency.
-    fn projector_at(&self, s: Complex64, zs: &[Complex64]) -> Result<Arc<Projector>, SolveFailure> {
+    pub(super) fn projector_at(
+        &self,
+        s: Complex64,
+        zs: &[Complex64],
+    ) -> Result<Arc<Projector>, SolveFailure> {
         let typical = typical(&self.problem, s, zs).norm();
         let suits: Vec<f64> = self
             .problem
@@ -232,7 +306,7 @@ impl System {
     }
 
     /// The net current of every connected piece of copper must vanish.
-    fn check_balance(&self, projector: &Projector, entering: &[f64]) -> Result<(), SolveFailure> {
+    pub(super) fn check_balance(&self, projector: &Projector, entering: &[f64]) -> Result<(), SolveFailure> {
         let mut net = vec![0.0; entering.len()];
         let mut total = 0.0;
         for (node, &current) in entering.iter().enumerate() {
@@ -257,9 +331,9 @@ impl System {
     }
 
     /// Currents and potentials in the layout that others read.
-    fn solution(
+    pub(super) fn solution(
         &self,
-        currents: Vec<Complex64>,
+        currents: &[Complex64],
         potential: &[Complex64],
         impedance: Complex64,
         residual: f64,
@@ -282,11 +356,13 @@ impl System {
             let at = |&node: &u32| if node == NO_NODE { zero } else { potential[node as usize] };
             potentials.push(nodes.iter().map(at).collect());
         }
+        let outside_v = potential[branches.copper_nodes..].to_vec();
         Solution {
             jx,
             jy,
             verticals: currents[branches.faces()..].to_vec(),
             potential_v: potentials,
+            outside_v,
             sheet_impedance_ohm: impedance,
             residual,
             steps,

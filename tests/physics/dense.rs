@@ -3,7 +3,8 @@ use crate::support::*;
 use ebbmap::geom::Point;
 use ebbmap::math::quadrature::legendre;
 use ebbmap::sheet::{
-    Drive, OperatingPoint, Problem, Sheet, Solution, SolveFailure, SourceStrip, System, Vertical, kernel,
+    Drive, OperatingPoint, Patch, Problem, Sheet, Solution, SolveFailure, SourceStrip, System, Vertical,
+    kernel,
 };
 use faer::Mat;
 use faer::prelude::Solve;
@@ -55,7 +56,11 @@ pub fn difference(problem: &Problem, drive: &Drive, point: &OperatingPoint, solu
         }
     }
     let (nf, nv, cells) = (faces.len(), problem.verticals.len(), problem.sheets.len() * nx * ny);
-    let n = nf + nv + cells;
+    // one node outside the board at most
+    let n = nf + nv + cells + 1;
+    let node_of = |sheet: usize, cell: usize| {
+        nf + nv + if sheet == Patch::OUTSIDE { cells + cell } else { sheet * nx * ny + cell }
+    };
     let mut matrix = Mat::<Complex64>::zeros(n, n);
     let tables: Vec<Vec<Vec<f64>>> = problem
         .sheets
@@ -117,7 +122,7 @@ pub fn difference(problem: &Problem, drive: &Drive, point: &OperatingPoint, solu
         matrix[(a, a)] = z;
         for (patch, sign) in [(&vertical.from, 1.0), (&vertical.to, -1.0)] {
             for &(cell, weight) in &patch.cells {
-                let node = nf + nv + patch.sheet * nx * ny + cell;
+                let node = node_of(patch.sheet, cell);
                 matrix[(a, node)] -= sign * weight;
                 matrix[(node, a)] += sign * weight;
             }
@@ -132,7 +137,7 @@ pub fn difference(problem: &Problem, drive: &Drive, point: &OperatingPoint, solu
     }
     for injection in &drive.injections {
         for &(cell, weight) in &injection.patch.cells {
-            rhs[(nf + nv + injection.patch.sheet * nx * ny + cell, 0)] += weight * injection.current_a;
+            rhs[(node_of(injection.patch.sheet, cell), 0)] += weight * injection.current_a;
         }
     }
     // potentials are free by a constant on each piece: a tiny leak to ground from every cell holds them without
@@ -276,13 +281,14 @@ fn both_routes_agree() {
     let nothing = Vertical {
         from: cell(&problem, 0, 14, 12),
         to: cell(&problem, 1, 14, 12),
-        resistance_ohm: 1e12,
+        resistance_ohm: 1e5,
         inductance_h: 0.0,
         capacitance_f: None,
     };
     problem.verticals.push(nothing);
     let projection = System::new(problem.clone()).unwrap();
-    for f in [0.0, 1e4, 1e6, 1e9] {
+    // high enough for loops to be chosen
+    for f in [1e6, 1e7, 1e9] {
         let point = at(f, Complex64::new(0.5e-3, 0.0), 2);
         let (a, b) = (solve(&loops, &drive, &point, 1e-9), solve(&projection, &drive, &point, 1e-9));
         let pairs = a.jx.iter().zip(&b.jx).chain(a.jy.iter().zip(&b.jy)).flat_map(|(a, b)| a.iter().zip(b));

@@ -5,7 +5,7 @@ use ebbmap::sheet::{Drive, Problem, Sheet, System, Vertical};
 use num_complex::Complex64;
 
 /// Two sheets with voids and vias.
-fn board() -> Problem {
+pub fn board() -> Problem {
     let mut problem = plate(100, 80, 0.25e-3);
     problem.sheets.push(Sheet::new(vec![true; 100 * 80], -0.5e-3));
     for (x, y) in [(5.0, 6.0), (9.0, 12.0), (14.0, 4.0), (18.0, 15.0), (7.5, 16.0)] {
@@ -26,7 +26,7 @@ fn board() -> Problem {
     problem
 }
 
-fn net(problem: &Problem, points: &[Point], z: f64, sheet: usize) -> Drive {
+pub fn net(problem: &Problem, points: &[Point], z: f64, sheet: usize) -> Drive {
     let strips = points.windows(2).map(|leg| filament(leg[0], leg[1], z)).collect();
     let landing = |at: &Point| disc(problem, sheet, *at, 0.3e-3);
     Drive { strips, injections: landings(landing(&points[0]), landing(&points[points.len() - 1])) }
