@@ -4,7 +4,7 @@ use super::number::coordinate;
 use super::path::PathData;
 use super::scale::DensityScale;
 use super::scene::{Group, Shape};
-use super::text::{Anchor, Text, italic, marked_width, shortened, wrapped};
+use super::text::{Anchor, Text, italic, marked_width, shortened};
 use super::view::View;
 use crate::geom::{Bounds, Polygon, Region};
 use crate::style::{Face, Style};
@@ -35,8 +35,6 @@ pub enum PanelKind {
         /// Window of the map.
         window: Bounds,
     },
-    /// Heading and sentences.
-    Words(String, Vec<String>),
 }
 
 /// A figure as a panel shows it. Texts may carry marks.
@@ -121,21 +119,12 @@ impl Panel {
         Self { height: HEAD + height + 3.0, kind: PanelKind::Locator { outline, window } }
     }
 
-    /// Sentences under a heading.
-    pub fn words(heading: &str, sentences: Vec<String>, style: &Style) -> Self {
-        let size = style.font.tick;
-        let lines: usize = sentences.iter().map(|s| wrapped(Face::Narrow, size, s, WIDTH).len()).sum();
-        let height = HEAD + NOTE * lines as f64 + 0.8 * sentences.len() as f64;
-        Self { height, kind: PanelKind::Words(heading.to_owned(), sentences) }
-    }
-
     /// Draws the panel.
     pub fn draw(&self, x: f64, y: f64, style: &Style) -> Group {
         match &self.kind {
             PanelKind::Figures(figures) => draw_figures(x, y, figures, style),
             PanelKind::Section(section) => draw_section(x, y, section, style),
             PanelKind::Locator { outline, window } => draw_locator(x, y, outline, *window, style),
-            PanelKind::Words(heading, sentences) => draw_words(x, y, heading, sentences, style),
         }
     }
 }
@@ -214,20 +203,6 @@ fn draw_figures(x: f64, y: f64, figures: &[KeyFigure], style: &Style) -> Group {
             group.text(reference.anchored(Anchor::End));
         }
         top += figure_height(figure);
-    }
-    group
-}
-
-fn draw_words(x: f64, y: f64, title: &str, sentences: &[String], style: &Style) -> Group {
-    let mut group = Group::new("words").labeled("group", title);
-    heading(&mut group, x, y, title, style);
-    let mut base = y + HEAD + 2.4;
-    for sentence in sentences {
-        for line in wrapped(Face::Narrow, style.font.tick, sentence, WIDTH) {
-            group.text(Text::new(x, base, style.font.tick, Face::Narrow, style.color.ink_soft, &line));
-            base += NOTE;
-        }
-        base += 0.8;
     }
     group
 }

@@ -49,7 +49,7 @@ pub enum SetCell {
     /// A map.
     Map {
         /// The drawing.
-        map: CellMap,
+        map: Box<CellMap>,
         /// Left caption.
         left: String,
         /// Right caption.

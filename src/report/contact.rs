@@ -179,7 +179,7 @@ fn set_row(row: &ContactRow, input: &ContactInput) -> SetRow {
     });
     let cells = row.cells.iter().map(|cell| match cell {
         ContactCell::Map(map, link) => SetCell::Map {
-            map: map.map.clone(),
+            map: Box::new(map.map.clone()),
             left: extra_inductance(&map.figures).map_or(String::new(), signed_henry),
             right: map
                 .figures
