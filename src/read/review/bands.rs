@@ -40,10 +40,7 @@ pub fn read(desk: &mut Desk<'_>, root: &DeTable<'_>) -> Vec<Band> {
 
 fn limits(desk: &mut Desk<'_>, table: &DeTable<'_>, name: &str, at: Range<usize>) -> Option<Band> {
     let known = if name == "DC" { Some(zero_band()) } else { itu_band(name) };
-    let mut limit = |key: &str| match table.get(key) {
-        Some(value) => Some(desk.quantity(value, key, Dimension::Frequency)),
-        None => None,
-    };
+    let mut limit = |key: &str| table.get(key).map(|value| desk.quantity(value, key, Dimension::Frequency));
     let (from, to) = (limit("from"), limit("to"));
     match (known, from, to) {
         (Some(band), None, None) => Some(band),

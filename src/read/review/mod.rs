@@ -13,7 +13,6 @@ mod zones;
 
 use crate::diag::Diagnostic;
 use crate::diag::code::review as code;
-use crate::geom::Point;
 use crate::review::{Model, Review, SolverRequest, StackupOverride};
 use crate::unit::Dimension;
 use desk::{Desk, Value};
@@ -162,7 +161,7 @@ fn board(desk: &mut Desk<'_>, table: &DeTable<'_>, folder: &Path, review: &mut R
     review.title = desk.text(table, "title").unwrap_or_default().into();
     review.revision = desk.text(table, "revision").unwrap_or_default().into();
     if let Some(value) = table.get("origin") {
-        review.origin = desk.point(value, "origin").unwrap_or(Point::default());
+        review.origin = desk.point(value, "origin").unwrap_or_default();
     }
 }
 
