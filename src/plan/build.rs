@@ -74,7 +74,7 @@ impl<'b> Planner<'b> {
         let route = route::find(&self.terrain, ends, self.review.origin)
             .map_err(|message| self.in_review(message, request, "name"))?;
         let (legs, stretches) = match &request.plane {
-            None => stretch::divide(&self.terrain, &route.legs),
+            None => stretch::divide(&self.terrain, &name, &route.legs),
             Some(plane) => self.on_plane(plane, &name, request, route.legs)?,
         };
         self.messages.extend(route.notes);
@@ -136,7 +136,7 @@ impl<'b> Planner<'b> {
         if legs.iter().any(|leg| leg.layer == layer) {
             return bad(format!("the track itself runs on L{}", layer + 1));
         }
-        let (_, nearest) = stretch::divide(&self.terrain, &legs);
+        let (_, nearest) = stretch::divide(&self.terrain, net, &legs);
         for other in
             nearest.iter().filter_map(|stretch| stretch.plane.as_ref()).filter(|other| **other != plane)
         {

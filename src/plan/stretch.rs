@@ -46,9 +46,10 @@ struct Block {
     length_m: f64,
 }
 
-/// Divides a track by the planes that serve it: the legs, divided where the plane changes, and the stretches.
-pub fn divide(terrain: &Terrain<'_>, legs: &[TrackLeg]) -> (Vec<TrackLeg>, Vec<Stretch>) {
-    let samples = samples(terrain, legs);
+/// Divides a track of net `own` by the planes that serve it: the legs, divided where the plane changes, and the
+/// stretches. Copper of the net itself, such as a plated pin's pads on other layers, carries no return.
+pub fn divide(terrain: &Terrain<'_>, own: &str, legs: &[TrackLeg]) -> (Vec<TrackLeg>, Vec<Stretch>) {
+    let samples = samples(terrain, own, legs);
     let mut blocks: Vec<Block> = Vec::new();
     let mut start = 0;
     while start < samples.len() {
@@ -90,7 +91,7 @@ pub fn divide(terrain: &Terrain<'_>, legs: &[TrackLeg]) -> (Vec<TrackLeg>, Vec<S
     (divided, stretches)
 }
 
-fn samples(terrain: &Terrain<'_>, legs: &[TrackLeg]) -> Vec<Sample> {
+fn samples(terrain: &Terrain<'_>, own: &str, legs: &[TrackLeg]) -> Vec<Sample> {
     let mut samples = Vec::new();
     for (index, leg) in legs.iter().enumerate() {
         let length = leg.from.distance(leg.to);
@@ -98,7 +99,7 @@ fn samples(terrain: &Terrain<'_>, legs: &[TrackLeg]) -> Vec<Sample> {
         for k in 0..n {
             let parts = (k as f64 / n as f64, (k + 1) as f64 / n as f64);
             let at = point_at((leg.from, leg.to), 0.5 * (parts.0 + parts.1));
-            let (plane, other) = nearest(terrain, leg.layer, at);
+            let (plane, other) = nearest(terrain, own, leg.layer, at);
             samples.push(Sample { leg: index, parts, length_m: length / n as f64, plane, other });
         }
     }
@@ -109,12 +110,16 @@ fn samples(terrain: &Terrain<'_>, legs: &[TrackLeg]) -> Vec<Sample> {
 /// the return.
 fn nearest(
     terrain: &Terrain<'_>,
+    own: &str,
     layer: usize,
     at: crate::geom::Point,
 ) -> (Option<PlaneId>, Option<PlaneId>) {
     let look = |other: usize| {
         let area = terrain.area_at(other, at)?;
         let net = terrain.net_name(terrain.net_of(other, area)).to_owned();
+        if net == own {
+            return None;
+        }
         let gap_m = terrain.board.stackup.gap_m(layer, other);
         Some((gap_m, PlaneId { layer: other, net }))
     };
