@@ -129,8 +129,23 @@ impl<'b> NetCopper<'b> {
             pours.insert(area, vec![Cow::Owned(boolean::union_with([], &rings))]);
         }
         for (_, shapes) in pours {
+            self.add_pours(layer, shapes);
+        }
+    }
+
+    /// Adds the fills of one connected piece of copper. Fills that do not touch each other, such as teardrops at the
+    /// two ends of a track, are pours of their own: no current crosses from one to the other but through the track.
+    fn add_pours(&mut self, layer: usize, shapes: Vec<Cow<'b, Region>>) {
+        let mut add = |shapes: Vec<Cow<'b, Region>>| {
             let bounds = shapes.iter().fold(Bounds::EMPTY, |all, shape| all.union(shape.bounds()));
             self.pours.push(Pour { layer, shapes, bounds });
+        };
+        let united = boolean::union(shapes.iter().map(|shape| shape.as_ref()));
+        if united.0.len() < 2 {
+            return add(shapes);
+        }
+        for polygon in united.0 {
+            add(vec![Cow::Owned(Region(vec![polygon]))]);
         }
     }
 
