@@ -79,7 +79,8 @@ impl<'b> Terrain<'b> {
         net.map_or("(no net)", |net| self.board.net_name(net))
     }
 
-    /// Plated holes that touch the plane, in the order of the board.
+    /// Plated holes that touch an area of the plane, in the order of the board. A pad of the plane's net that stands
+    /// alone on the layer is no way into the plane.
     pub fn vias_to(&self, plane: &PlaneId) -> Vec<Via> {
         let mut vias = Vec::new();
         for (hole, drilled) in self.board.holes.iter().enumerate() {
@@ -87,7 +88,9 @@ impl<'b> Terrain<'b> {
                 continue;
             }
             let contact = drilled.contacts.iter().find(|(layer, area)| {
-                *layer == plane.layer && self.net_name(self.net_of(*layer, *area)) == plane.net
+                *layer == plane.layer
+                    && self.layers[*layer].is_area[*area]
+                    && self.net_name(self.net_of(*layer, *area)) == plane.net
             });
             if let Some(&(_, area)) = contact {
                 vias.push(Via { hole, area });
