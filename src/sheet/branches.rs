@@ -44,6 +44,8 @@ pub struct Branches {
     pub copper_nodes: usize,
     /// For each vertical the nodes it touches with what leaves them for 1 A.
     pub ends: Vec<Vec<(u32, f64)>>,
+    /// Weights of the faces' own currents in their resistive voltages.
+    resistive: Vec<f64>,
     /// Symmetric edge terms: two faces and a weight, to be multiplied by [`EDGE_PART`] mu0 d/2.
     edges: Vec<(u32, u32, f64)>,
 }
@@ -71,12 +73,13 @@ impl Branches {
             }
         }
         let edges = edge_terms(nx, ny, &conducts);
+        let resistive = own_weights(nx, ny, &conducts);
         let ends = problem.verticals.iter().flat_map(|vertical| [&vertical.from, &vertical.to]);
         let outside = ends.filter(|patch| patch.sheet == Patch::OUTSIDE).flat_map(|patch| &patch.cells);
         let copper_nodes = nodes as usize;
         let nodes = copper_nodes + outside.map(|(node, _)| node + 1).max().unwrap_or(0);
         let mut branches =
-            Self { nx, ny, sheets, conducts, node, nodes, copper_nodes, ends: Vec::new(), edges };
+            Self { nx, ny, sheets, conducts, node, nodes, copper_nodes, ends: Vec::new(), resistive, edges };
         let ends =
             problem.verticals.iter().enumerate().map(|(index, vertical)| branches.ends_of(vertical, index));
         branches.ends = ends.collect::<Result<_, _>>()?;
@@ -198,38 +201,47 @@ impl Branches {
         currents: &[Complex64],
         out: &mut [Complex64],
     ) {
+        // faces that do not conduct carry nothing, so that only the centre's weight depends on the neighbours
         let (nx, ny) = (self.nx, self.ny);
-        let conducts = &self.conducts[self.plane(sheet, direction)];
-        // along x with plus on x-faces, with minus on y-faces
-        let along_x = if direction == 0 { zs / 24.0 } else { -zs / 24.0 };
+        let centre = &self.resistive[self.plane(sheet, direction)];
+        let part = if direction == 0 { zs / 24.0 } else { -zs / 24.0 };
+        let nothing = vec![Complex64::default(); nx];
         for iy in 0..ny {
-            for at in iy * nx..(iy + 1) * nx {
-                if !conducts[at] {
+            let row = iy * nx..(iy + 1) * nx;
+            let here = &currents[row.clone()];
+            let below = if iy > 0 { &currents[row.start - nx..row.start] } else { &nothing };
+            let above = if iy + 1 < ny { &currents[row.end..row.end + nx] } else { &nothing };
+            let (centre, out) = (&centre[row.clone()], &mut out[row]);
+            for ix in 0..nx {
+                // zero marks a face that does not conduct
+                if centre[ix] == 0.0 {
                     continue;
                 }
-                let here = currents[at];
-                let mut sum = zs * here;
-                let second = |neighbour: usize| {
-                    if conducts[neighbour] { currents[neighbour] - here } else { Complex64::default() }
-                };
-                let mut bend = Complex64::default();
-                if at > iy * nx {
-                    bend += second(at - 1);
-                }
-                if at + 1 < (iy + 1) * nx {
-                    bend += second(at + 1);
-                }
-                if iy > 0 {
-                    bend -= second(at - nx);
-                }
-                if iy + 1 < ny {
-                    bend -= second(at + nx);
-                }
-                sum += along_x * bend;
-                out[at] += sum;
+                let left = if ix > 0 { here[ix - 1] } else { nothing[0] };
+                let right = if ix + 1 < nx { here[ix + 1] } else { nothing[0] };
+                out[ix] += zs * here[ix] * centre[ix] + part * (left + right - above[ix] - below[ix]);
             }
         }
     }
+}
+
+/// Weight of a face's own current in its resistive voltage: 1 less 1/24 for each neighbour along and plus 1/24 for each
+/// across the current; zero for faces that do not conduct.
+fn own_weights(nx: usize, ny: usize, conducts: &[bool]) -> Vec<f64> {
+    let mut weights = vec![0.0; conducts.len()];
+    for (plane, (faces, weights)) in
+        conducts.chunks_exact(nx * ny).zip(weights.chunks_exact_mut(nx * ny)).enumerate()
+    {
+        let sign = if plane % 2 == 0 { 1.0 } else { -1.0 };
+        for (at, weight) in weights.iter_mut().enumerate().filter(|(at, _)| faces[*at]) {
+            let (ix, iy) = (at % nx, at / nx);
+            let count = |exists: bool, at: usize| f64::from(u8::from(exists && faces[at]));
+            let along_x = count(ix > 0, at.wrapping_sub(1)) + count(ix + 1 < nx, at + 1);
+            let along_y = count(iy > 0, at.wrapping_sub(nx)) + count(iy + 1 < ny, at + nx);
+            *weight = 1.0 - sign * (along_x - along_y) / 24.0;
+        }
+    }
+    weights
 }
 
 /// Weights of the faces along edges: 1/2 on an outermost face for each side that has no neighbour, 1/4 between two that

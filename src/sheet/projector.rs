@@ -34,7 +34,8 @@ pub struct Projector {
     /// Unknown of each node, [`HELD`] for one node of each piece.
     unknown: Vec<u32>,
     unknowns: usize,
-    symbolic: SymbolicCholesky<u32>,
+    /// None where every piece is a single cell.
+    symbolic: Option<SymbolicCholesky<u32>>,
     values: Vec<f64>,
 }
 
@@ -75,6 +76,9 @@ impl Projector {
                 unknown[node] = unknowns as u32;
                 unknowns += 1;
             }
+        }
+        if unknowns == 0 {
+            return Ok(Self { conductance, piece, unknown, unknowns, symbolic: None, values: Vec::new() });
         }
         let mut diagonal = vec![0.0; unknowns];
         let mut entries = Vec::with_capacity(3 * unknowns);
@@ -125,7 +129,7 @@ impl Projector {
                 Default::default(),
             )
             .map_err(|_| failed())?;
-        Ok(Self { conductance, piece, unknown, unknowns, symbolic, values })
+        Ok(Self { conductance, piece, unknown, unknowns, symbolic: Some(symbolic), values })
     }
 
     /// Size of voltages, those of verticals by the root of their inverse weight: in a branch of high impedance a
@@ -149,19 +153,20 @@ impl Projector {
         for (&value, &unknown) in current.iter().zip(&self.unknown).filter(|(_, u)| **u != HELD) {
             rhs[unknown as usize] = value;
         }
-        let mut permuted = rhs.clone();
-        if let Some(order) = self.symbolic.perm() {
-            let (forward, _) = order.arrays();
-            permuted.iter_mut().zip(forward).for_each(|(to, &from)| *to = rhs[from as usize]);
-        }
-        if let SymbolicCholeskyRaw::Supernodal(symbolic) = self.symbolic.raw() {
-            substitute(SupernodalLltRef::new(symbolic, &self.values), &mut permuted);
-        }
-        if let Some(order) = self.symbolic.perm() {
-            let (forward, _) = order.arrays();
-            permuted.iter().zip(forward).for_each(|(&from, &to)| rhs[to as usize] = from);
-        } else {
-            rhs = permuted;
+        if let Some(SymbolicCholeskyRaw::Supernodal(symbolic)) =
+            self.symbolic.as_ref().map(SymbolicCholesky::raw)
+        {
+            let factor = SupernodalLltRef::new(symbolic, &self.values);
+            match self.symbolic.as_ref().and_then(SymbolicCholesky::perm) {
+                None => substitute(factor, &mut rhs),
+                Some(order) => {
+                    let (forward, _) = order.arrays();
+                    let mut permuted: Vec<Complex64> =
+                        forward.iter().map(|&from| rhs[from as usize]).collect();
+                    substitute(factor, &mut permuted);
+                    permuted.iter().zip(forward).for_each(|(&from, &to)| rhs[to as usize] = from);
+                }
+            }
         }
         let value = |&unknown: &u32| if unknown == HELD { zero } else { rhs[unknown as usize] };
         self.unknown.iter().map(value).collect()

@@ -235,6 +235,17 @@ fn landings_on_separate_copper_are_refused() {
         }
         other => panic!("must be refused, got {other:?}"),
     }
+    // copper in single cells only: nothing to factor, nothing to solve, no panic
+    let mut crumbs = plate(9, 9, 0.2e-3);
+    crumbs.sheets[0].copper = (0..81).map(|i| i % 9 % 2 == 0 && i / 9 % 2 == 0).collect();
+    let apart = landings(cell(&crumbs, 0, 0, 0), cell(&crumbs, 0, 4, 4));
+    let crumbs = System::new(crumbs).unwrap();
+    let refused = crumbs.solve(
+        &Drive { strips: Vec::new(), injections: apart },
+        &at(1e6, Complex64::new(5e-4, 0.0), 1),
+        1e-6,
+    );
+    assert!(matches!(refused, Err(SolveFailure::Unbalanced { .. })));
     // a landing on a void
     let drive = Drive {
         strips: Vec::new(),
