@@ -8,7 +8,9 @@ use crate::diag::code::run as code;
 use crate::field::{ReturnMap, Workshop};
 use crate::figure::{Charted, Figures, chart};
 use crate::plan::{ChartPlan, NetPlan, Plan};
-use crate::report::{Findings, Picture, Subject, TicketInput, numbers, ticket};
+use crate::report::{
+    ContactCell, ContactRow, Findings, Picture, Subject, Thumbnail, TicketInput, numbers, thumbnail, ticket,
+};
 use crate::review::{Band, Review};
 use crate::style::Style;
 use std::sync::{Mutex, PoisonError};
@@ -39,8 +41,18 @@ pub struct Done {
     pub frequency_hz: f64,
     /// File stem.
     pub stem: String,
-    /// The map and its figures, or the reason for none.
-    pub map: Result<(ReturnMap, Figures), Diagnostic>,
+    /// The map, or the reason for none.
+    pub map: Result<Drawn, Diagnostic>,
+}
+
+/// What is kept of a map that was drawn.
+pub struct Drawn {
+    /// The map without its cells, which would fill the memory.
+    pub map: ReturnMap,
+    /// Its figures.
+    pub figures: Figures,
+    /// The map reduced for the contact sheet.
+    pub thumbnail: Thumbnail,
 }
 
 /// What a chart leaves for the summary.
@@ -89,8 +101,8 @@ impl Charting<'_> {
         charted: Charted,
         stem: &str,
         at: (usize, usize),
-    ) -> Result<Result<(ReturnMap, Figures), Diagnostic>, Diagnostic> {
-        let Charted { map, figures, .. } = charted;
+    ) -> Result<Result<Drawn, Diagnostic>, Diagnostic> {
+        let Charted { mut map, figures, .. } = charted;
         let picture = match self.picture(net, plan, &self.plan.bands[band], &map, &figures, at) {
             Ok(picture) => picture,
             Err(reason) => return Ok(Err(reason)),
@@ -103,7 +115,10 @@ impl Charting<'_> {
             })?;
             self.write(&format!("numbers/{}", numbers::file_name(stem)), &bytes)?;
         }
-        Ok(Ok((map, figures)))
+        let (board, review, height) = (self.board, self.review, self.scale_height_m);
+        let thumbnail = thumbnail(board, review, net, plan, &map, &figures, height, self.style);
+        (map.jx, map.jy, map.copper) = (Vec::new(), Vec::new(), Vec::new());
+        Ok(Ok(Drawn { map, figures, thumbnail }))
     }
 
     fn picture(
@@ -181,10 +196,23 @@ impl ChartDone {
             let chart = &net.charts[self.at.1];
             let subject = Subject { net, chart, band, frequency_hz: done.frequency_hz };
             match &done.map {
-                Ok((map, figures)) => findings.add_map(subject, &done.stem, map, figures),
+                Ok(drawn) => findings.add_map(subject, &done.stem, &drawn.map, &drawn.figures),
                 Err(reason) => findings.add_withheld(subject, reason),
             }
         }
+    }
+
+    /// The row of the contact sheet.
+    pub fn row<'a>(&self, plan: &'a Plan) -> ContactRow<'a> {
+        let cell = |done: &Done| match &done.map {
+            Ok(drawn) => {
+                let ticket = format!("maps/{}.svg", done.stem);
+                ContactCell::Map(Box::new(drawn.thumbnail.clone()), Some(ticket))
+            }
+            Err(reason) => ContactCell::Withheld(reason.text.clone()),
+        };
+        let net = &plan.nets[self.at.0];
+        ContactRow { net, chart: &net.charts[self.at.1], cells: self.maps.iter().map(cell).collect() }
     }
 
     /// The entries of the index of numbers.
@@ -192,7 +220,7 @@ impl ChartDone {
         let net = &plan.nets[self.at.0];
         let plane = &net.charts[self.at.1].plane;
         let entry = |done: &'a Done| match &done.map {
-            Ok((map, _)) => numbers::Numbers::Map { stem: &done.stem, map },
+            Ok(drawn) => numbers::Numbers::Map { stem: &done.stem, map: &drawn.map },
             Err(reason) => numbers::Numbers::Withheld {
                 net: &net.net,
                 plane: Some((plane.layer, &plane.net)),

@@ -13,7 +13,7 @@ use crate::field::Workshop;
 use crate::plan::{Plan, apply_review, build};
 use crate::read::review::{ReviewFile, read_review};
 use crate::read::{read_board, style};
-use crate::report::{Findings, json, numbers};
+use crate::report::{ContactInput, Findings, contact, json, numbers};
 use crate::review::{Band, Review};
 use crate::style::Style;
 use crate::unit::quantity_text;
@@ -153,8 +153,25 @@ fn draw_plan(
     done.iter().for_each(|done| done.add_to(&mut findings, plan));
     plan.messages.iter().filter(|message| is_skip(message)).for_each(|reason| findings.add_skipped(reason));
     messages.iter().for_each(|message| findings.add_message(message));
+    let sheets = contact(&ContactInput {
+        board,
+        review,
+        columns: frequencies(plan).into_iter().map(|(band, hz)| (&plan.bands[band], hz)).collect(),
+        rows: done.iter().map(|done| done.row(plan)).collect(),
+        scale_height_m: charting.scale_height_m,
+        style: charting.style,
+        input_hash: charting.input_hash,
+    });
+    let sheets = sheets.map_err(|fault| {
+        let text = format!("contact sheet cannot be rendered: {}", fault.0);
+        tell(watch, &[Diagnostic::error(code::CANNOT_RENDER, text)])
+    })?;
     let mut store = store.into_inner().unwrap_or_else(PoisonError::into_inner);
     let rest = || {
+        for (sheet, index) in sheets.iter().zip(1..) {
+            store.write(&format!("contact-sheet-{index}.svg"), sheet.svg.as_bytes())?;
+            store.write(&format!("contact-sheet-{index}.png"), &sheet.png)?;
+        }
         store.write("findings.json", &json(&findings))?;
         if order.numbers {
             let entries: Vec<numbers::Numbers> = done.iter().flat_map(|done| done.numbers(plan)).collect();

@@ -14,12 +14,12 @@ from conftest import ROOT
 from copper import compose, copper_files, counts, drill_files, file_function, largest_region, read_drill, read_gerber
 from gerber_board import write_board
 
-SETS = sorted(path for path in (ROOT / "samples").glob("*/fab") if path.is_dir())
+SETS = sorted(path for path in (ROOT / "samples").rglob("fab") if path.is_dir())
 SETS += sorted(path for path in (ROOT.parent / "shared" / "boards").glob("x2-*") if path.is_dir())
 
 
 def name_of(path):
-    return path.parent.name if path.name == "fab" else path.name
+    return "sample-" + path.parent.name if path.name == "fab" else path.name
 
 
 def check_layers(look, folder):
