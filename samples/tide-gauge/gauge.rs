@@ -14,9 +14,9 @@ const BOTTOM: usize = 3;
 const W: f64 = 0.2;
 
 /// Nets from which the areas on the outer layers keep three times the height over the ground plane.
-const QUIET: [&str; 14] = [
+const QUIET: [&str; 15] = [
     "ADC_SCK", "ADC_DOUT", "ADC_CLK", "MEM_SCK", "MEM_SI", "RTC_SCL", "RTC_SDA", "RTC_INT", "BUS_TX",
-    "TEMP_IN", "SYNC", "AMP_OUT", "SIG_P", "SIG_N",
+    "TEMP_IN", "SYNC", "AMP_OUT", "SIG_P", "SIG_N", "SW_NODE",
 ];
 
 /// Places of the vias where `BUS_TX` changes its layer.
@@ -391,7 +391,8 @@ fn wishes() -> Vec<Wish> {
 
 /// Ground vias wherever all layers have room: a fence along the edge and a grid over the board.
 fn stitch(d: &mut Design) {
-    let mut places = Vec::new();
+    // Where the layer change finds a distant way between the two ground areas.
+    let mut places = vec![(75.0, 62.4)];
     let fence = |n: usize, length: f64, k: usize| 2.2 + (length - 4.4) * k as f64 / (n - 1) as f64;
     for k in 0..20 {
         let x = fence(20, 100.0, k);
@@ -422,7 +423,7 @@ fn stitch(d: &mut Design) {
         let things = obstacles(d, 0, 0);
         let fits = |at: Xy| {
             let inside = at.0 > 1.0 && at.1 > 1.0 && at.0 < 99.0 && at.1 < 79.0;
-            let far = CHANGES.iter().all(|change| length(change.0 - at.0, change.1 - at.1) > 5.0);
+            let far = CHANGES.iter().all(|change| length(change.0 - at.0, change.1 - at.1) > 4.2);
             inside
                 && far
                 && things.iter().all(|thing| {
@@ -453,6 +454,9 @@ fn widen(d: &mut Design) {
     }
     let mut drops = Vec::new();
     for track in &d.tracks {
+        if track.layer == BOTTOM && QUIET.contains(&track.net.as_str()) {
+            continue;
+        }
         for forward in [true, false] {
             let n = track.path.len();
             let (end, next) =

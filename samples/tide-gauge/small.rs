@@ -62,11 +62,11 @@ fn parts(d: &mut Design) {
         (27.5, 16.0),
         0,
         "+3V3 GND ADC_SCK ADC_DOUT ADC_CS ADC_DRDY ADC_RST - \
-         IO0 IO1 IO2 IO3 SYNC IO4 IO5 IO6 \
+         IO0 IO1 IO2 IO3 SYNC IO4 IO5 - \
          GND RXD TXD RUN - - +3V3 GND - - - - - - - -",
     );
     d.place("J2", "ROW6", "service port", (37.0, 15.0), 0, "+3V3 RUN TXD RXD - GND");
-    d.place("J3", "ROW8", "expansion", (24.0, 3.0), 1, "IO0 IO1 IO2 IO3 SYNC IO4 IO5 IO6");
+    d.place("J3", "ROW8", "expansion", (24.0, 3.0), 1, "IO0 IO1 IO2 IO3 SYNC IO4 IO5 GND");
     d.place("C1", "0603", "100nF", (10.6, 20.2), 2, "GND +3V3");
     d.place("C2", "0603", "100nF", (16.6, 20.2), 0, "+3V3 GND");
     d.place("C3", "0603", "100nF", (21.8, 20.0), 1, "GND +3V3");
@@ -86,7 +86,7 @@ fn tracks(d: &mut Design) {
     d.track("ADC_DRDY", TOP, W, &[(16.35, 15.025), (23.075, 15.025), (23.3, 14.8)]);
     d.track("ADC_RST", TOP, W, &[(16.35, 14.375), (21.6, 14.375), (21.975, 14.0), (23.3, 14.0)]);
     // A row of vias whose antipads run into each other; one net passes between them on the top layer.
-    let row = ["IO0", "IO1", "IO2", "IO3", "IO4", "IO5", "IO6"];
+    let row = ["IO0", "IO1", "IO2", "IO3", "IO4", "IO5"];
     for (index, net) in row.into_iter().enumerate() {
         let pin = 24.7 + 0.8 * (index + usize::from(index > 3)) as f64;
         let via = 24.2 + 1.1 * index as f64;
