@@ -244,8 +244,12 @@ fn draws_everything_it_names_and_nothing_else() {
     }
     want.sort();
     let manifest: serde_json::Value = serde_json::from_slice(&files["manifest.json"]).unwrap();
-    let listed: Vec<String> =
-        manifest["files"].as_array().unwrap().iter().map(|f| f["file"].as_str().unwrap().to_owned()).collect();
+    let listed: Vec<String> = manifest["files"]
+        .as_array()
+        .unwrap()
+        .iter()
+        .map(|f| f["file"].as_str().unwrap().to_owned())
+        .collect();
     assert_eq!(listed, want);
     want.push("manifest.json".to_owned());
     want.sort();
@@ -260,7 +264,10 @@ fn draws_everything_it_names_and_nothing_else() {
     for map in findings["maps"].as_array().unwrap() {
         let share = map["figures"]["share_3h"]["value"].as_f64().unwrap();
         assert!((0.0..1.0).contains(&share), "{share}");
-        assert!(files.contains_key(map["svg"].as_str().unwrap()) && files.contains_key(map["png"].as_str().unwrap()));
+        assert!(
+            files.contains_key(map["svg"].as_str().unwrap())
+                && files.contains_key(map["png"].as_str().unwrap())
+        );
     }
 }
 
@@ -282,7 +289,9 @@ fn outputs_hold_no_path_and_no_time() {
     let desk = Desk::new();
     desk.run(&["draw", "review.toml", "--out", "out"]).exits(0);
     let folder = desk.folder.path().to_str().unwrap().to_owned();
-    let year = std::time::SystemTime::now().duration_since(std::time::UNIX_EPOCH).unwrap().as_secs() / 31_556_952 + 1970;
+    let year = std::time::SystemTime::now().duration_since(std::time::UNIX_EPOCH).unwrap().as_secs()
+        / 31_556_952
+        + 1970;
     for (name, bytes) in desk.files("out") {
         let text = String::from_utf8_lossy(&bytes);
         assert!(!text.contains(&folder), "{name} names the folder");
@@ -311,9 +320,11 @@ fn only_draws_the_chosen_net_on_the_common_scale() {
 #[test]
 fn unknown_only_names_a_near_net() {
     let desk = Desk::new();
-    desk.run(&["draw", "review.toml", "--out", "out", "--only", "SGI"])
-        .exits(2)
-        .says(&["error[only-unknown]", "`SGI`", "did you mean `SIG`?"]);
+    desk.run(&["draw", "review.toml", "--out", "out", "--only", "SGI"]).exits(2).says(&[
+        "error[only-unknown]",
+        "`SGI`",
+        "did you mean `SIG`?",
+    ]);
     assert!(!desk.path("out").exists());
 }
 
@@ -321,9 +332,12 @@ fn unknown_only_names_a_near_net() {
 fn unknown_net_of_the_review_is_refused_with_its_line_and_a_near_name() {
     let desk = Desk::new();
     desk.put("review.toml", &REVIEW.replace("name = \"SIG\"", "name = \"SIGG\""));
-    desk.run(&["draw", "review.toml", "--out", "out"])
-        .exits(2)
-        .says(&["error[net-unknown]", "review.toml:13", "SIGG", "`SIG`"]);
+    desk.run(&["draw", "review.toml", "--out", "out"]).exits(2).says(&[
+        "error[net-unknown]",
+        "review.toml:13",
+        "SIGG",
+        "`SIG`",
+    ]);
     assert!(!desk.path("out").exists());
 }
 
@@ -370,7 +384,11 @@ fn a_second_run_removes_its_own_leftovers_only() {
     desk.put("out/maps/sketch.svg", "mine too");
     desk.run(&["draw", "review.toml", "--out", "out", "--only", "CLK"]).exits(0);
     let files = desk.files("out");
-    assert!(files.keys().all(|name| !name.contains("SIG") && !name.starts_with("numbers/")), "{:?}", files.keys());
+    assert!(
+        files.keys().all(|name| !name.contains("SIG") && !name.starts_with("numbers/")),
+        "{:?}",
+        files.keys()
+    );
     assert!(files.contains_key("notes.txt") && files.contains_key("maps/sketch.svg"));
     assert!(!desk.path("out/numbers").exists(), "an emptied folder goes too");
 }
@@ -380,11 +398,14 @@ fn what_is_withheld_is_named_and_ends_with_3() {
     let desk = Desk::new();
     // without the driver's reference pin and without any via the return has no way down
     desk.put("fab/copper-1.gbr", &TOP.replace("%TO.N,GND*%\n%TO.P,U1,2*%", "%TO.N,OTHER*%\n%TO.P,U1,2*%"));
-    desk.put("fab/copper-2.gbr", &BOTTOM.replace("%TO.P,U1,2*%\nD12*\nX2000000Y4000000D03*\n%TO", "%TO").replace(
-        "%LPC*%",
-        "D12*\nX10000000Y4000000D03*\n%LPC*%\nG36*\nX1400000Y3400000D02*\nG01*\nX2600000Y3400000D01*\n\
+    desk.put(
+        "fab/copper-2.gbr",
+        &BOTTOM.replace("%TO.P,U1,2*%\nD12*\nX2000000Y4000000D03*\n%TO", "%TO").replace(
+            "%LPC*%",
+            "D12*\nX10000000Y4000000D03*\n%LPC*%\nG36*\nX1400000Y3400000D02*\nG01*\nX2600000Y3400000D01*\n\
          X2600000Y4600000D01*\nX1400000Y4600000D01*\nX1400000Y3400000D01*\nG37*",
-    ));
+        ),
+    );
     desk.run(&["draw", "review.toml", "--out", "out"]).exits(3).says(&["[landing-none]", "driver_landing"]);
     let files = desk.files("out");
     let findings: serde_json::Value = serde_json::from_slice(&files["findings.json"]).unwrap();

@@ -183,8 +183,6 @@ fn heavy_crates_stay_in_their_file() {
         ("clap", "src/cli"),
         ("indicatif", "src/cli"),
         ("i_overlay", "src/geom"),
-        ("lib_gerber_edit", "src/read"),
-        ("gerber_parser", "src/read"),
         ("toml", "src/read"),
     ];
     let mut wrong = Vec::new();

@@ -1,4 +1,6 @@
 //! The problem as plain data: sheets on one grid, verticals between them, source strips and landings.
+//!
+//! Checked by: `dense_direct_solve_agrees` and `both_routes_agree` in tests/physics.
 
 use crate::geom::{Grid, Point};
 

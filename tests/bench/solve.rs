@@ -60,7 +60,11 @@ fn board(cell_m: f64, sheets: usize, vias: usize) -> (Problem, Drive) {
                 .filter(|&i| problem.sheets[sheet].copper[i] && grid.centre(i % nx, i / nx).distance(at) < r)
                 .collect()
         };
-        let cells = [0.3e-3, 0.7e-3, 1.5e-3, 3e-3].into_iter().map(inside).find(|c| !c.is_empty()).unwrap();
+        let cells = [0.3e-3, 0.7e-3, 1.5e-3, 3e-3]
+            .into_iter()
+            .map(inside)
+            .find(|c| !c.is_empty())
+            .expect("a sound problem");
         let weight = 1.0 / cells.len() as f64;
         Patch { sheet, cells: cells.into_iter().map(|c| (c, weight)).collect() }
     };
@@ -112,10 +116,10 @@ fn main() {
             1e3 * u
         );
         let start = seconds();
-        let system = System::new(problem).unwrap();
+        let system = System::new(problem).expect("a sound problem");
         let new = seconds() - start;
         let start = seconds();
-        let prepared = system.prepare(&drive).unwrap();
+        let prepared = system.prepare(&drive).expect("a sound problem");
         let prepare = seconds() - start;
         println!(
             "  factor and kernels {:.0} ms = {:.1} u ({:.0} MB, {} bytes a cell); source {:.0} ms = {:.1} u",
@@ -129,8 +133,9 @@ fn main() {
         for f in [0.0, 1e2, 1e4, 1e5, 1e6, 1e7, 1e9] {
             let zs_ohm = vec![Complex64::new(0.5e-3, 0.0); sheets];
             let start = seconds();
-            let solution =
-                system.solve_prepared(&prepared, &OperatingPoint { frequency_hz: f, zs_ohm }, 1e-5).unwrap();
+            let solution = system
+                .solve_prepared(&prepared, &OperatingPoint { frequency_hz: f, zs_ohm }, 1e-5)
+                .expect("a sound problem");
             let time = seconds() - start;
             println!("  {f:8.0e} Hz: {:3} steps, {:6.0} ms = {:6.1} u", solution.steps, 1e3 * time, time / u);
         }

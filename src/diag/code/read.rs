@@ -143,8 +143,11 @@ pub const HOLE_NETS: Code = Code {
     meaning: "A plated hole touches copper of different nets. Its barrel joins nothing in the maps.",
 };
 /// Layers that do not exist.
-pub const DRILL_SPAN: Code =
-    Code { name: "drill-span", meaning: "A drill file names layers that the board does not have." };
+pub const DRILL_SPAN: Code = Code {
+    name: "drill-span",
+    meaning: "A drill file names a span of layers that the board does not have, so its barrels cannot be placed. \
+                  Compare the file's `TF.FileFunction` with the number of copper layers.",
+};
 /// Holes of unknown plating.
 pub const DRILL_PLATING: Code = Code {
     name: "drill-plating",
