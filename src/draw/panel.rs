@@ -194,7 +194,9 @@ fn draw_figures(x: f64, y: f64, figures: &[KeyFigure], style: &Style) -> Group {
             row += 4.9;
             let base = row - 1.0;
             group.text(Text::new(x, base, style.font.label, Face::Narrow, color.ink, &entry.name));
-            bar(&mut group, (x + 9.0, base - 2.0, 20.0), entry.bar, entry.tick, style);
+            if entry.bar.is_some() {
+                bar(&mut group, (x + 9.0, base - 2.0, 20.0), entry.bar, entry.tick, style);
+            }
             let value =
                 Text::new(x + 46.0, base, style.font.label, Face::NarrowBold, color.ink, &entry.value);
             group.text(value.anchored(Anchor::End));

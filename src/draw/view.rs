@@ -87,8 +87,8 @@ impl View {
 
 /// The largest round scale that is at most `room`: n : 1 or 1 : n.
 fn round_scale(room: f64) -> f64 {
-    const STEPS: [f64; 18] =
-        [1.0, 1.1, 1.25, 1.5, 1.75, 2.0, 2.25, 2.5, 2.75, 3.0, 3.5, 4.0, 4.5, 5.0, 6.0, 7.0, 8.0, 9.0];
+    const STEPS: [f64; 19] =
+        [1.0, 1.1, 1.25, 1.4, 1.5, 1.75, 2.0, 2.25, 2.5, 2.75, 3.0, 3.5, 4.0, 4.5, 5.0, 6.0, 7.0, 8.0, 9.0];
     let mut best = 0.0;
     for decade in 0..=3 {
         for step in STEPS {

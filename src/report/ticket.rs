@@ -358,7 +358,7 @@ fn key_figures(input: &TicketInput) -> Vec<KeyFigure> {
         name: format!("{share} %"),
         value: words(figure.value),
         reference: figure.without_voids.map_or("\u{2013}".to_owned(), millimeters),
-        bar: Some(figure.value.map_or(1.0, |value| value / full)),
+        bar: figure.value.map(|value| value / full),
         tick: figure.without_voids.map(|value| value / full),
     };
     all.push(KeyFigure {
