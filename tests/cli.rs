@@ -1,5 +1,7 @@
 //! The program as a process: exit codes, messages, the output folder, the same bytes for any number of threads.
 
+#![allow(clippy::unwrap_used)] // a failed step of a test is a failed test
+
 use std::collections::BTreeMap;
 use std::fs;
 use std::path::{Path, PathBuf};

@@ -1,5 +1,7 @@
 //! The house rules as tests: floors, headers, sizes, documents in step, nothing that must not be in the repository.
 
+#![allow(clippy::unwrap_used)] // a failed step of a test is a failed test
+
 use std::collections::{BTreeMap, BTreeSet};
 use std::fs;
 use std::path::{Path, PathBuf};

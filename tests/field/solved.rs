@@ -113,7 +113,8 @@ fn the_formula_here_matches_the_table() {
         (1e5, 2.0e-3, 0.738000257, 0.33774796),
     ] {
         let share = sheet_share(x, 0.2e-3, hertz, zs);
-        assert!((share.re - re).abs() < 1e-5 && !((share.im - im).abs() > 1e-5), "{share} at {hertz}");
+        assert!((share.re - re).abs() < 1e-5, "{share} at {hertz}");
+        assert!(im.is_nan() || (share.im - im).abs() < 1e-5, "{share} at {hertz}");
     }
 }
 

@@ -30,6 +30,9 @@
 //! | Z_AB | Z_BA | Lorentz reciprocity | 1e-6 of sqrt abs(Z_AA Z_BB) | - |
 //! | bits with one thread | bits with many | fixed order of sums | equal | - |
 
+#![allow(clippy::unwrap_used)] // a failed step of a test is a failed test
+#![allow(clippy::needless_range_loop)] // indices are places on the grid
+
 mod closed_form_edges;
 // tables hold printed digits, some of which happen to be 1/pi
 #[allow(clippy::approx_constant)]
