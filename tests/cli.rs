@@ -398,16 +398,13 @@ fn a_second_run_removes_its_own_leftovers_only() {
 #[test]
 fn what_is_withheld_is_named_and_ends_with_3() {
     let desk = Desk::new();
-    // without the driver's reference pin and without any via the return has no way down
-    desk.put("fab/copper-1.gbr", &TOP.replace("%TO.N,GND*%\n%TO.P,U1,2*%", "%TO.N,OTHER*%\n%TO.P,U1,2*%"));
-    desk.put(
-        "fab/copper-2.gbr",
-        &BOTTOM.replace("%TO.P,U1,2*%\nD12*\nX2000000Y4000000D03*\n%TO", "%TO").replace(
-            "%LPC*%",
-            "D12*\nX10000000Y4000000D03*\n%LPC*%\nG36*\nX1400000Y3400000D02*\nG01*\nX2600000Y3400000D01*\n\
-         X2600000Y4600000D01*\nX1400000Y4600000D01*\nX1400000Y3400000D01*\nG37*",
-        ),
-    );
+    // without the driver's reference pin the nearest via is 8 mm away
+    let pad = "%TO.P,U1,2*%\nD12*\nX2000000Y4000000D03*\n";
+    for (name, text) in [("fab/copper-1.gbr", TOP), ("fab/copper-2.gbr", BOTTOM)] {
+        assert!(text.contains(pad));
+        desk.put(name, &text.replace(pad, "D12*\n"));
+    }
+    desk.put("fab/plated.drl", &DRILL.replace("X2.000Y4.000\n", ""));
     desk.run(&["draw", "review.toml", "--out", "out"]).exits(3).says(&["[landing-none]", "driver_landing"]);
     let files = desk.files("out");
     let findings: serde_json::Value = serde_json::from_slice(&files["findings.json"]).unwrap();
