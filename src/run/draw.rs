@@ -146,6 +146,10 @@ fn draw_plan(
     let done: Result<Vec<ChartDone>, Diagnostic> = charts.par_iter().map(|&at| charting.chart(at)).collect();
     let done = done.map_err(|failure| tell(watch, &[failure]))?;
     for message in done.iter().flat_map(ChartDone::messages) {
+        // Nets of one plane share what its cells leave out: said once.
+        if messages.contains(&message) {
+            continue;
+        }
         watch.message(&message, None);
         messages.push(message);
     }
