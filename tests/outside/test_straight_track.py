@@ -89,11 +89,12 @@ def test_wide_track(ebbmap, tmp_path):
         assert min(errors) <= 0.01, (entry["frequency_hz"], errors)
 
 
-def test_coarser_cells(ebbmap, tmp_path):
+@pytest.mark.parametrize("h_mm", [0.1, 0.2, 1.0])
+def test_coarser_cells(ebbmap, tmp_path, h_mm):
     """d = h: 2 %, d = 2 h: 6 %."""
     for cells_per_h, tolerance in [(1, 0.02), (0.5, 0.06)]:
         folder = tmp_path / f"cells-{cells_per_h}"
-        numbers, width_m, track_y_m = draw(ebbmap, folder, 0.2, cells_per_h, 0.5, 0.04, [1e5, 1e6, 1e7, 1e8])
+        numbers, width_m, track_y_m = draw(ebbmap, folder, h_mm, cells_per_h, 0.5, h_mm / 5, [1e5, 1e6, 1e7, 1e8])
         for entry in numbers.maps():
             error, place = worst_error(numbers, entry, width_m, track_y_m, "uniform", entry["width_m"])
             print(f"d = h / {cells_per_h}, {entry['frequency_hz']:.0e} Hz: worst {100 * error:.2f} % at {place:.1f} h")
