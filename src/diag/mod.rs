@@ -22,6 +22,17 @@ pub enum Severity {
     Error,
 }
 
+impl Severity {
+    /// Its name in texts and files.
+    pub fn name(self) -> &'static str {
+        match self {
+            Self::Note => "note",
+            Self::Warning => "warning",
+            Self::Error => "error",
+        }
+    }
+}
+
 /// Where a message belongs: in a file, on the board, both or neither.
 #[derive(Clone, Debug, Default, PartialEq)]
 pub struct Place {

@@ -11,8 +11,8 @@
 //! Checked by: `closed_form_integrates_to_the_strip_shares` in tests/field.rs.
 
 use crate::geom::{Grid, Point};
+use crate::spread::strip;
 use num_complex::Complex64;
-use std::f64::consts::PI;
 
 /// A leg of the track as the closed form sees it.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -29,12 +29,7 @@ pub struct SpreadLeg {
 
 /// In-phase return between the track and the distance `u_m` to one side, odd in u: -1/2 to 1/2.
 fn one_sided_share(u_m: f64, width_m: f64, height_m: f64) -> f64 {
-    let (u, w) = (u_m / height_m, width_m / height_m);
-    if w < 1e-3 {
-        return libm::atan(u) / PI;
-    }
-    let g = |u: f64| u * libm::atan(u) - 0.5 * libm::log1p(u * u);
-    (g(u + 0.5 * w) - g(u - 0.5 * w)) / (PI * w)
+    0.5 * strip::share_within(u_m, width_m, height_m)
 }
 
 /// What the distance is measured from.

@@ -3,7 +3,7 @@
 //! Quantities are in SI units with the unit in the member's name; coordinates are in millimetres from the review's
 //! origin. A member that does not apply is `null`.
 
-use crate::diag::{Diagnostic, Severity};
+use crate::diag::Diagnostic;
 use crate::field::{PlaneId, ReturnMap};
 use crate::figure::{Figure, Figures};
 use crate::geom::Point;
@@ -213,11 +213,7 @@ impl Findings {
     fn message(&self, message: &Diagnostic) -> MessageEntry {
         let at = message.place.at.map(|at| self.millimetres(at));
         MessageEntry {
-            severity: match message.severity {
-                Severity::Note => "note",
-                Severity::Warning => "warning",
-                Severity::Error => "error",
-            },
+            severity: message.severity.name(),
             code: message.code.name,
             text: message.text.clone(),
             file: message.place.file.clone(),

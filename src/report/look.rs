@@ -3,7 +3,7 @@
 //! Coordinates and lengths are in millimetres as in the files, thicknesses of the stackup in metres.
 
 use crate::board::{Board, CopperKind, CopperLayer, LayerRole, ObjectFunction, Origin, Plating, TieKind};
-use crate::diag::{Diagnostic, Severity};
+use crate::diag::Diagnostic;
 use crate::geom::Polygon;
 use serde::Serialize;
 use std::collections::BTreeMap;
@@ -430,11 +430,7 @@ fn tie_entries(board: &Board) -> Vec<TieEntry> {
 
 fn warning_entry(message: &Diagnostic) -> WarningEntry {
     WarningEntry {
-        severity: match message.severity {
-            Severity::Note => "note",
-            Severity::Warning => "warning",
-            Severity::Error => "error",
-        },
+        severity: message.severity.name(),
         code: message.code.name,
         text: message.text.clone(),
         file: message.place.file.clone(),

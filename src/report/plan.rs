@@ -2,7 +2,7 @@
 //!
 //! Coordinates are in mm from the review's origin, as in the pictures; thicknesses and cells in metres in the JSON.
 
-use crate::diag::{Diagnostic, Severity};
+use crate::diag::Diagnostic;
 use crate::geom::Point;
 use crate::plan::{ChartPlan, Landing, NetPlan, Plan, TrackLeg};
 use crate::review::{Model, Review};
@@ -248,11 +248,7 @@ fn chart_entry(net: &NetPlan, chart: &ChartPlan, origin: Point) -> ChartEntry {
 fn message_entry(message: &Diagnostic, origin: Point) -> MessageEntry {
     let at = message.place.at.map(|at| (at - origin) * 1e3);
     MessageEntry {
-        severity: match message.severity {
-            Severity::Error => "error",
-            Severity::Warning => "warning",
-            Severity::Note => "note",
-        },
+        severity: message.severity.name(),
         code: message.code.name,
         text: message.text.clone(),
         hints: message.hints.clone(),

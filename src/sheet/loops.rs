@@ -17,7 +17,7 @@
 
 use super::branches::Branches;
 use super::kernel;
-use super::operator::{dot, inverse_symbols, norm};
+use super::operator::{dot, inverse_symbols, mix_sheets, norm};
 use super::projector::root;
 use crate::math::filter::{Filter, Scratch};
 use num_complex::Complex64;
@@ -257,22 +257,7 @@ impl Loops {
             let row = kx.min(px - kx) * half;
             for ky in 0..py {
                 let table = &inverse[(row + ky.min(py - ky)) * triangle..][..triangle];
-                if sheets == 1 {
-                    columns[ky] *= table[0];
-                    continue;
-                }
-                mixed.fill(Complex64::default());
-                let mut at = 0;
-                for p in 0..sheets {
-                    for q in p..sheets {
-                        mixed[p] += table[at] * columns[q * py + ky];
-                        if q > p {
-                            mixed[q] += table[at] * columns[p * py + ky];
-                        }
-                        at += 1;
-                    }
-                }
-                mixed.iter().enumerate().for_each(|(p, mix)| columns[p * py + ky] = *mix);
+                mix_sheets(table, columns, (ky, py), &mut mixed);
             }
         });
         self.restrict(&desk.out, result);

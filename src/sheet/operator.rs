@@ -67,6 +67,33 @@ impl Coupling {
     }
 }
 
+/// Multiplies the values of all sheets at wave number `ky` of a column of `py` by a symmetric matrix, given as its
+/// upper triangle row by row; `mixed` is room for one value of each sheet.
+pub(super) fn mix_sheets(
+    table: &[Complex64],
+    columns: &mut [Complex64],
+    (ky, py): (usize, usize),
+    mixed: &mut [Complex64],
+) {
+    let sheets = mixed.len();
+    if sheets == 1 {
+        columns[ky] *= table[0];
+        return;
+    }
+    mixed.fill(Complex64::default());
+    let mut at = 0;
+    for p in 0..sheets {
+        for q in p..sheets {
+            mixed[p] += table[at] * columns[q * py + ky];
+            if q > p {
+                mixed[q] += table[at] * columns[p * py + ky];
+            }
+            at += 1;
+        }
+    }
+    mixed.iter().enumerate().for_each(|(p, mix)| columns[p * py + ky] = *mix);
+}
+
 /// Index in a quarter spectrum of wave number `m` of `size`.
 fn folded(m: usize, size: usize) -> usize {
     m.min(size - m)
@@ -202,22 +229,7 @@ impl<'a> Impedance<'a> {
             let row = folded(kx, px) * half;
             for ky in 0..py {
                 let table = &inverse[(row + folded(ky, py)) * triangle..][..triangle];
-                if sheets == 1 {
-                    columns[ky] *= table[0];
-                    continue;
-                }
-                mixed.fill(Complex64::default());
-                let mut at = 0;
-                for p in 0..sheets {
-                    for q in p..sheets {
-                        mixed[p] += table[at] * columns[q * py + ky];
-                        if q > p {
-                            mixed[q] += table[at] * columns[p * py + ky];
-                        }
-                        at += 1;
-                    }
-                }
-                mixed.iter().enumerate().for_each(|(p, mix)| columns[p * py + ky] = *mix);
+                mix_sheets(table, columns, (ky, py), &mut mixed);
             }
         });
         self.inverse = inverse;
