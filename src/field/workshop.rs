@@ -10,7 +10,7 @@ use crate::board::Board;
 use crate::diag::Diagnostic;
 use crate::diag::code::field as code;
 use crate::geom::Point;
-use crate::plan::{ChartPlan, NetPlan};
+use crate::plan::{ChartPlan, PathPlan};
 use crate::review::{Band, Model};
 use crate::sheet::{Drive, Injection, OperatingPoint, SolveFailure};
 use num_complex::Complex64;
@@ -57,7 +57,7 @@ pub struct Progress<'a> {
 /// A chart ready to be solved at any frequency.
 pub struct Bench<'w, 'a> {
     workshop: &'w Workshop<'a>,
-    net: &'w NetPlan,
+    net: &'w PathPlan,
     chart: &'w ChartPlan,
     source: Source<'w>,
     fine: Option<Pair>,
@@ -85,7 +85,7 @@ impl<'a> Workshop<'a> {
     }
 
     /// Makes a chart ready: puts its plane on cells and finds its landings.
-    pub fn bench<'w>(&'w self, net: &'w NetPlan, chart: &'w ChartPlan) -> Result<Bench<'w, 'a>, Diagnostic> {
+    pub fn bench<'w>(&'w self, net: &'w PathPlan, chart: &'w ChartPlan) -> Result<Bench<'w, 'a>, Diagnostic> {
         if let Some(reason) = &chart.withheld {
             return Err(reason.clone());
         }
@@ -165,7 +165,7 @@ impl Bench<'_, '_> {
             let Some((patch, island)) = landing_patch(mask, landing) else {
                 let text = format!(
                     "landing `{}` of net `{}` must lie on plane `{}`; no copper within two cells",
-                    landing.what, self.net.net, self.chart.plane
+                    landing.what, self.net.name, self.chart.plane
                 );
                 return Err(self.placed(Diagnostic::error(code::LANDING_OFF_COPPER, text), landing.at));
             };
@@ -191,7 +191,7 @@ impl Bench<'_, '_> {
         let solve = || stage.system()?.solve(&drive, &point, self.workshop.tolerance);
         let mut solution = solve().map_err(|failure| self.failed(&failure, band))?;
         Ok(ReturnMap {
-            net: self.net.net.clone(),
+            net: self.net.name.clone(),
             plane: self.chart.plane.clone(),
             band: band.name.clone(),
             frequency_hz,
@@ -227,7 +227,7 @@ impl Bench<'_, '_> {
             let legs: Vec<SpreadLeg> = self.net.track[chart.legs.clone()].iter().map(leg).collect();
             let (jx, jy) = face_currents(&legs, &grid);
             ReturnMap {
-                net: self.net.net.clone(),
+                net: self.net.name.clone(),
                 plane: chart.plane.clone(),
                 band: band.name.clone(),
                 frequency_hz,
@@ -255,7 +255,7 @@ impl Bench<'_, '_> {
         let (driver, receiver) = (&self.chart.driver_landing, &self.chart.receiver_landing);
         let text = format!(
             "landings `{}` and `{}` of net `{}` must lie on connected copper of plane `{}`; they lie on two islands",
-            driver.what, receiver.what, self.net.net, self.chart.plane
+            driver.what, receiver.what, self.net.name, self.chart.plane
         );
         self.placed(Diagnostic::error(code::LANDINGS_APART, text), receiver.at)
             .hint("name landings on one island with `driver_landing` and `receiver_landing`")
@@ -275,7 +275,7 @@ impl Bench<'_, '_> {
     fn halved(&self, cell_m: f64) -> Diagnostic {
         let text = format!(
             "net `{}` on plane `{}` is solved on cells of {:.4} mm; cells of {:.4} mm cannot keep its copper apart",
-            self.net.net,
+            self.net.name,
             self.chart.plane,
             cell_m * 1e3,
             self.chart.cell_m * 1e3
@@ -317,7 +317,7 @@ impl Bench<'_, '_> {
                 let text = format!(
                     "solve of net `{}` on plane `{}` in band `{}` must reach a residual of {tolerance:.0e}; got \
                      {residual:.1e} after {steps} steps",
-                    self.net.net, self.chart.plane, band.name
+                    self.net.name, self.chart.plane, band.name
                 );
                 Diagnostic::error(code::NOT_CONVERGED, text).hint("try another `cell` under `[solver]`")
             }

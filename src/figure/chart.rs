@@ -4,7 +4,7 @@ use super::Figures;
 use super::compute::{Maps, Track, figures};
 use crate::diag::Diagnostic;
 use crate::field::{Progress, ReturnMap, Solved, Workshop};
-use crate::plan::{ChartPlan, NetPlan};
+use crate::plan::{ChartPlan, PathPlan};
 use crate::review::Band;
 
 /// A solved map with its figures.
@@ -34,7 +34,7 @@ pub struct ChartResult {
 /// Solves `chart` of `net` at all frequencies of `bands`. Calls `progress` after each frequency.
 pub fn chart(
     workshop: &Workshop,
-    net: &NetPlan,
+    net: &PathPlan,
     chart: &ChartPlan,
     bands: &[Band],
     progress: &(dyn Fn(Progress) + Sync),
@@ -56,7 +56,7 @@ pub fn chart(
             let track = Track { legs, landings: &landings, height_m: chart.height_m };
             charted(solved, band, hertz, &track)
         }));
-        progress(Progress { net: &net.net, band: &band.name, done: maps.len(), total });
+        progress(Progress { net: &net.name, band: &band.name, done: maps.len(), total });
     }
     ChartResult { maps, notes: bench.notes }
 }

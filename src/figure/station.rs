@@ -85,7 +85,13 @@ mod tests {
     use super::*;
 
     fn leg(from: (f64, f64), to: (f64, f64)) -> TrackLeg {
-        TrackLeg { from: Point::mm(from.0, from.1), to: Point::mm(to.0, to.1), layer: 0, width_m: 1e-4 }
+        TrackLeg {
+            from: Point::mm(from.0, from.1),
+            to: Point::mm(to.0, to.1),
+            layer: 0,
+            width_m: 1e-4,
+            current: 1.0,
+        }
     }
 
     #[test]

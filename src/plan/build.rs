@@ -5,7 +5,7 @@ use super::landing::{Landed, Landings};
 use super::request::{self, Ends};
 use super::stretch::{self, Stretch};
 use super::terrain::Terrain;
-use super::{ChartPlan, Landing, NetPlan, Plan, TrackLeg, Void, route, void};
+use super::{ChartPlan, Landing, PathPlan, Plan, TrackLeg, Void, route, void};
 use crate::board::Board;
 use crate::diag::Diagnostic;
 use crate::diag::code::plan as code;
@@ -31,7 +31,12 @@ pub fn build(board: &Board, review: &Review) -> Plan {
             Err(message) => planner.messages.push(message),
         }
     }
-    Plan { nets, bands: review.bands.clone(), messages: planner.messages }
+    Plan {
+        paths: nets,
+        conductors: Default::default(),
+        bands: review.bands.clone(),
+        messages: planner.messages,
+    }
 }
 
 /// Copper, voids and box of a plane, kept for all nets over it.
@@ -68,7 +73,7 @@ impl<'b> Planner<'b> {
         Self { terrain, review, grounds: BTreeMap::new(), messages }
     }
 
-    fn net(&mut self, ends: &Ends, request: &NetRequest) -> Result<NetPlan, Diagnostic> {
+    fn net(&mut self, ends: &Ends, request: &NetRequest) -> Result<PathPlan, Diagnostic> {
         let board = self.terrain.board;
         let name = board.net_name(ends.net).to_owned();
         let route = route::find(&self.terrain, ends, self.review.origin)
@@ -83,11 +88,13 @@ impl<'b> Planner<'b> {
             charts.push(self.chart(&name, &legs, stretch));
         }
         self.land(ends, request, &name, &legs, &mut charts);
-        Ok(NetPlan {
-            net: name,
+        Ok(PathPlan {
+            name,
             driver: board.pins[ends.driver.0 as usize].label(),
             receiver: board.pins[ends.receiver.0 as usize].label(),
             track: legs,
+            entries: Vec::new(),
+            joints: Vec::new(),
             charts,
         })
     }

@@ -75,6 +75,7 @@ pub fn find(terrain: &Terrain<'_>, ends: &Ends, origin: Point) -> Result<Route, 
             to: graph.nodes[pair[1]].1,
             layer: graph.nodes[pair[0]].0,
             width_m,
+            current: 1.0,
         };
         push_leg(&mut route.legs, leg);
     }

@@ -9,7 +9,7 @@ use crate::draw::set::{COLUMNS, CellMap, ROWS, SetCell, SetColumn, SetPage, SetR
 use crate::draw::{DensityScale, Scene, italic, plain, with_prefix};
 use crate::field::ReturnMap;
 use crate::figure::Figures;
-use crate::plan::{ChartPlan, NetPlan};
+use crate::plan::{ChartPlan, PathPlan};
 use crate::review::{Band, Model, Review};
 use crate::style::Style;
 
@@ -28,7 +28,7 @@ pub struct Thumbnail {
 pub fn thumbnail(
     board: &Board,
     review: &Review,
-    net: &NetPlan,
+    net: &PathPlan,
     chart: &ChartPlan,
     map: &ReturnMap,
     figures: &Figures,
@@ -38,7 +38,7 @@ pub fn thumbnail(
     let data = map_data(board, review, net, chart, map, figures.contour_levels);
     let scale = DensityScale { height_m: scale_height_m, range_db: style.density.range_db };
     let label =
-        format!("{} on {} at {}", plain(&net.net), plain(&chart.plane.to_string()), hertz(map.frequency_hz));
+        format!("{} on {} at {}", plain(&net.name), plain(&chart.plane.to_string()), hertz(map.frequency_hz));
     Thumbnail {
         map: cell_map(&data, board.outline.bounds(), scale, style, &label),
         figures: figures.clone(),
@@ -61,7 +61,7 @@ pub enum ContactCell {
 #[derive(Clone, Debug)]
 pub struct ContactRow<'a> {
     /// Net.
-    pub net: &'a NetPlan,
+    pub net: &'a PathPlan,
     /// Plane.
     pub chart: &'a ChartPlan,
     /// One cell for each column.
@@ -116,7 +116,7 @@ pub fn contact_scenes(input: &ContactInput) -> Vec<Scene> {
             (Some(a), Some(b)) => b.total_cmp(&a),
             (a, b) => b.is_some().cmp(&a.is_some()),
         };
-        by_worst.then_with(|| a.net.net.cmp(&b.net.net)).then_with(|| a.chart.plane.cmp(&b.chart.plane))
+        by_worst.then_with(|| a.net.name.cmp(&b.net.name)).then_with(|| a.chart.plane.cmp(&b.chart.plane))
     });
     let rows: Vec<SetRow> = order.iter().map(|row| set_row(row, input)).collect();
     let columns: Vec<SetColumn> =
@@ -191,7 +191,7 @@ fn set_row(row: &ContactRow, input: &ContactInput) -> SetRow {
         ContactCell::Withheld(reason) => SetCell::Withheld { reason: plain(reason) },
     });
     SetRow {
-        name: plain(&row.net.net),
+        name: plain(&row.net.name),
         lines: vec![
             format!(
                 "on {}, {} to {}",
@@ -230,7 +230,7 @@ fn headline(order: &[&ContactRow], input: &ContactInput) -> String {
     });
     match top {
         Some((row, extra, band)) if extra > 0.0 => {
-            let name = crate::draw::shortened(crate::style::Face::Bold, 8.0, &row.net.net, 130.0);
+            let name = crate::draw::shortened(crate::style::Face::Bold, 8.0, &row.net.name, 130.0);
             format!(
                 "Voids cost {name} the most: {} of loop inductance in {}",
                 signed_henry(extra),
@@ -258,7 +258,7 @@ fn lead(order: &[&ContactRow]) -> Vec<String> {
     }
     let mut second =
         "Under each map: left, loop inductance caused by voids (worst net first); right, share of the return.".to_owned();
-    if order.iter().any(|row| hints_at_hazard(&row.net.net)) {
+    if order.iter().any(|row| hints_at_hazard(&row.net.name)) {
         second = "Says nothing about insulation or safety: for mains, medical and safety circuits follow local codes \
                   and licensed practice."
             .to_owned();
@@ -324,7 +324,7 @@ fn description(order: &[&ContactRow], input: &ContactInput) -> String {
         for (cell, (band, hz)) in row.cells.iter().zip(&input.columns) {
             let place = format!(
                 "{} on {} in {} at {}",
-                plain(&row.net.net),
+                plain(&row.net.name),
                 plain(&row.chart.plane.to_string()),
                 plain(&band.name),
                 hertz(*hz)

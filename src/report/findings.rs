@@ -7,7 +7,7 @@ use crate::diag::Diagnostic;
 use crate::field::{PlaneId, ReturnMap};
 use crate::figure::{Figure, Figures};
 use crate::geom::Point;
-use crate::plan::{ChartPlan, NetPlan};
+use crate::plan::{ChartPlan, PathPlan};
 use crate::review::Model;
 use serde::Serialize;
 
@@ -114,7 +114,7 @@ struct MessageEntry {
 #[derive(Clone, Copy, Debug)]
 pub struct Subject<'a> {
     /// The net.
-    pub net: &'a NetPlan,
+    pub net: &'a PathPlan,
     /// The plane's chart.
     pub chart: &'a ChartPlan,
     /// Name of the band.
@@ -171,7 +171,7 @@ impl Findings {
             LandingEntry { what: landing.what.clone(), x_mm, y_mm, radius_m: landing.radius_m }
         };
         MapEntry {
-            net: net.net.clone(),
+            net: net.name.clone(),
             driver: net.driver.clone(),
             receiver: net.receiver.clone(),
             plane: plane(&chart.plane),

@@ -4,7 +4,7 @@
 
 use crate::diag::Diagnostic;
 use crate::geom::Point;
-use crate::plan::{ChartPlan, Landing, NetPlan, Plan, TrackLeg};
+use crate::plan::{ChartPlan, Landing, PathPlan, Plan, TrackLeg};
 use crate::review::{Model, Review};
 use crate::unit::{length_text, quantity_text};
 use serde::Serialize;
@@ -82,7 +82,7 @@ impl PlanAccount {
     /// The account of `plan`, which was made for `review`.
     pub fn new(plan: &Plan, review: &Review) -> Self {
         let origin = review.origin;
-        let nets: Vec<NetEntry> = plan.nets.iter().map(|net| net_entry(net, origin)).collect();
+        let nets: Vec<NetEntry> = plan.paths.iter().map(|net| net_entry(net, origin)).collect();
         let charts = nets.iter().map(|net| net.charts.len()).sum();
         let withheld =
             nets.iter().flat_map(|net| &net.charts).filter(|chart| chart.withheld.is_some()).count();
@@ -200,7 +200,7 @@ impl ChartEntry {
     }
 }
 
-fn net_entry(net: &NetPlan, origin: Point) -> NetEntry {
+fn net_entry(net: &PathPlan, origin: Point) -> NetEntry {
     let mut layers: Vec<String> = Vec::new();
     for leg in &net.track {
         let name = format!("L{}", leg.layer + 1);
@@ -209,7 +209,7 @@ fn net_entry(net: &NetPlan, origin: Point) -> NetEntry {
         }
     }
     NetEntry {
-        name: net.net.clone(),
+        name: net.name.clone(),
         driver: net.driver.clone(),
         receiver: net.receiver.clone(),
         length_mm: length_m(&net.track) * 1e3,
@@ -220,7 +220,7 @@ fn net_entry(net: &NetPlan, origin: Point) -> NetEntry {
     }
 }
 
-fn chart_entry(net: &NetPlan, chart: &ChartPlan, origin: Point) -> ChartEntry {
+fn chart_entry(net: &PathPlan, chart: &ChartPlan, origin: Point) -> ChartEntry {
     let landing = |landing: &Landing| {
         let at = (landing.at - origin) * 1e3;
         (landing.radius_m > 0.0).then(|| LandingEntry {

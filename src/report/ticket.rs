@@ -14,7 +14,7 @@ use crate::draw::{DensityScale, Scene, View, italic, plain, shortened, with_pref
 use crate::field::ReturnMap;
 use crate::figure::{Figure, Figures};
 use crate::geom::{Bounds, Point, Polygon};
-use crate::plan::{ChartPlan, NetPlan};
+use crate::plan::{ChartPlan, PathPlan};
 use crate::review::{Band, Model, Review};
 use crate::style::{Face, Style};
 
@@ -26,7 +26,7 @@ pub struct TicketInput<'a> {
     /// Review.
     pub review: &'a Review,
     /// Net.
-    pub net: &'a NetPlan,
+    pub net: &'a PathPlan,
     /// Plane and what of the track it carries.
     pub chart: &'a ChartPlan,
     /// Band.
@@ -134,7 +134,7 @@ fn holds_cell(shape: &Polygon, density: &Density) -> bool {
 pub(super) fn map_data(
     board: &Board,
     review: &Review,
-    net: &NetPlan,
+    net: &PathPlan,
     chart: &ChartPlan,
     map: &ReturnMap,
     levels: [f64; 3],
@@ -219,18 +219,18 @@ fn sheet(input: &TicketInput) -> TicketSheet {
     let cut = window.width() < bounds.width() || window.height() < bounds.height();
     let number = picture_number(
         input.input_hash,
-        &[&net.net, &chart.plane.to_string(), &band.name, &map.frequency_hz.to_string(), &style.name],
+        &[&net.name, &chart.plane.to_string(), &band.name, &map.frequency_hz.to_string(), &style.name],
     );
     let headline = headline(input);
     let lead = format!(
         "Return current of {} ({} to {}) on plane {} at {}, per ampere in the net. Seen from the top.",
-        shortened(Face::Regular, style.font.lead, &net.net, 70.0),
+        shortened(Face::Regular, style.font.lead, &net.name, 70.0),
         shortened(Face::Regular, style.font.lead, &net.driver, 25.0),
         shortened(Face::Regular, style.font.lead, &net.receiver, 25.0),
         shortened(Face::Regular, style.font.lead, &chart.plane.to_string(), 35.0),
         hertz(map.frequency_hz),
     );
-    let caution = caution_text(board, map.model, map.frequency_hz, &[&net.net, &chart.plane.net]);
+    let caution = caution_text(board, map.model, map.frequency_hz, &[&net.name, &chart.plane.net]);
     let mut panels =
         vec![Panel::figures(key_figures(input)), Panel::section(section(board, chart, net, scale))];
     if cut {
@@ -238,7 +238,7 @@ fn sheet(input: &TicketInput) -> TicketSheet {
     }
     let description = format!(
         "{}. {} {} {caution}",
-        headline_text(input, &plain(&net.net)),
+        headline_text(input, &plain(&net.name)),
         plain_lead(input),
         figures_text(figures)
     );
@@ -255,13 +255,13 @@ fn sheet(input: &TicketInput) -> TicketSheet {
         panels,
         fields: fields(input, &number),
         caution,
-        title: format!("{}, {}, {}", plain(&net.net), plain(&chart.plane.to_string()), plain(&band.name)),
+        title: format!("{}, {}, {}", plain(&net.name), plain(&chart.plane.to_string()), plain(&band.name)),
         description,
         number,
         facts: vec![
             ("board".into(), plain(&review.title)),
             ("revision".into(), plain(&review.revision)),
-            ("net".into(), plain(&net.net)),
+            ("net".into(), plain(&net.name)),
             ("plane".into(), plain(&chart.plane.to_string())),
             ("band".into(), plain(&band.name)),
             ("frequency_hz".into(), map.frequency_hz.to_string()),
@@ -310,14 +310,14 @@ fn headline(input: &TicketInput) -> String {
     let room = style.ticket.width - 2.0 * style.ticket.margin[0];
     let size = 0.8 * style.font.headline;
     let rest = crate::draw::width_mm(Face::Bold, size, &headline_text(input, ""));
-    let name = shortened(Face::Bold, size, &input.net.net, (room - rest - 2.0).max(30.0));
+    let name = shortened(Face::Bold, size, &input.net.name, (room - rest - 2.0).max(30.0));
     headline_text(input, &name)
 }
 
 fn plain_lead(input: &TicketInput) -> String {
     format!(
         "Return current of net {} from {} to {} on plane {} at {}, per ampere in the net, seen from the top.",
-        plain(&input.net.net),
+        plain(&input.net.name),
         plain(&input.net.driver),
         plain(&input.net.receiver),
         plain(&input.chart.plane.to_string()),
@@ -458,7 +458,7 @@ fn fields(input: &TicketInput, number: &str) -> Vec<(&'static str, String)> {
     vec![
         ("Board", or(&review.title, &board.title)),
         ("Revision", or(&review.revision, &board.revision)),
-        ("Net", plain(&net.net)),
+        ("Net", plain(&net.name)),
         (
             "Band",
             format!("{}, {}, at {}{over}", plain(&band.name), band_range(band), hertz(map.frequency_hz)),
@@ -474,7 +474,7 @@ fn fields(input: &TicketInput, number: &str) -> Vec<(&'static str, String)> {
 }
 
 /// Layers from one above to one below what matters.
-fn section(board: &Board, chart: &ChartPlan, net: &NetPlan, scale: DensityScale) -> Section {
+fn section(board: &Board, chart: &ChartPlan, net: &PathPlan, scale: DensityScale) -> Section {
     let track = net.track.get(chart.legs.start).map_or(chart.plane.layer, |leg| leg.layer);
     let count = board.layers.len().max(chart.plane.layer.max(track) + 1);
     let (low, high) = (track.min(chart.plane.layer), track.max(chart.plane.layer));

@@ -7,7 +7,7 @@ use crate::diag::Diagnostic;
 use crate::diag::code::run as code;
 use crate::field::{ReturnMap, Workshop};
 use crate::figure::{Charted, Figures, chart};
-use crate::plan::{ChartPlan, NetPlan, Plan};
+use crate::plan::{ChartPlan, PathPlan, Plan};
 use crate::report::{
     ContactCell, ContactRow, Findings, Picture, Subject, Thumbnail, TicketInput, numbers, thumbnail, ticket,
 };
@@ -68,7 +68,7 @@ pub struct ChartDone {
 impl Charting<'_> {
     /// Solves, draws and writes all maps of a chart. An error means that a file could not be written.
     pub fn chart(&self, at: (usize, usize)) -> Result<ChartDone, Diagnostic> {
-        let net = &self.plan.nets[at.0];
+        let net = &self.plan.paths[at.0];
         let plan = &net.charts[at.1];
         let solved = chart(self.workshop, net, plan, &self.plan.bands, &|step| {
             self.watch.mapped(step.net, step.band);
@@ -82,7 +82,7 @@ impl Charting<'_> {
             let map = match map {
                 Ok(charted) => self.draw(net, plan, band, charted, stem, at)?,
                 Err(reason) => {
-                    self.watch.mapped(&net.net, &self.plan.bands[band].name);
+                    self.watch.mapped(&net.name, &self.plan.bands[band].name);
                     Err(reason)
                 }
             };
@@ -95,7 +95,7 @@ impl Charting<'_> {
     /// Draws and writes one map. The outer error is a file that cannot be written, the inner one withholds the map.
     fn draw(
         &self,
-        net: &NetPlan,
+        net: &PathPlan,
         plan: &ChartPlan,
         band: usize,
         charted: Charted,
@@ -123,7 +123,7 @@ impl Charting<'_> {
 
     fn picture(
         &self,
-        net: &NetPlan,
+        net: &PathPlan,
         chart: &ChartPlan,
         band: &Band,
         map: &ReturnMap,
@@ -146,7 +146,7 @@ impl Charting<'_> {
         };
         ticket(&input).map_err(|fault| {
             let text =
-                format!("map of net `{}` in band `{}` cannot be rendered: {}", net.net, band.name, fault.0);
+                format!("map of net `{}` in band `{}` cannot be rendered: {}", net.name, band.name, fault.0);
             Diagnostic::error(code::CANNOT_RENDER, text)
         })
     }
@@ -190,7 +190,7 @@ impl ChartDone {
 
     /// Adds the maps to the findings.
     pub fn add_to(&self, findings: &mut Findings, plan: &Plan) {
-        let net = &plan.nets[self.at.0];
+        let net = &plan.paths[self.at.0];
         for done in &self.maps {
             let band = &plan.bands[done.band].name;
             let chart = &net.charts[self.at.1];
@@ -211,18 +211,18 @@ impl ChartDone {
             }
             Err(reason) => ContactCell::Withheld(reason.text.clone()),
         };
-        let net = &plan.nets[self.at.0];
+        let net = &plan.paths[self.at.0];
         ContactRow { net, chart: &net.charts[self.at.1], cells: self.maps.iter().map(cell).collect() }
     }
 
     /// The entries of the index of numbers.
     pub fn numbers<'a>(&'a self, plan: &'a Plan) -> Vec<numbers::Numbers<'a>> {
-        let net = &plan.nets[self.at.0];
+        let net = &plan.paths[self.at.0];
         let plane = &net.charts[self.at.1].plane;
         let entry = |done: &'a Done| match &done.map {
             Ok(drawn) => numbers::Numbers::Map { stem: &done.stem, map: &drawn.map },
             Err(reason) => numbers::Numbers::Withheld {
-                net: &net.net,
+                net: &net.name,
                 plane: Some((plane.layer, &plane.net)),
                 band: &plan.bands[done.band].name,
                 frequency_hz: done.frequency_hz,

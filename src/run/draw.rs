@@ -70,7 +70,7 @@ pub struct Prepared {
 impl Prepared {
     /// Whether every net of the review will be drawn, as far as can be known before a solve.
     pub fn is_complete(&self) -> bool {
-        let charts = self.plan.nets.iter().flat_map(|net| &net.charts);
+        let charts = self.plan.paths.iter().flat_map(|net| &net.charts);
         !self.plan.messages.iter().any(is_skip) && charts.into_iter().all(|chart| chart.withheld.is_none())
     }
 }
@@ -96,7 +96,7 @@ pub fn prepare(path: &Path, cell_m: Option<f64>, watch: &dyn Watch) -> Result<Pr
     let plan = build(&board, &review);
     told.all(plan.messages.iter().cloned());
     told.usable()?;
-    if plan.nets.is_empty() {
+    if plan.paths.is_empty() {
         return Err(Unusable);
     }
     Ok(Prepared { file, review, board, plan, messages: told.messages })
@@ -139,9 +139,9 @@ fn draw_plan(
         store: &store,
         watch,
     };
-    let nets = (0..plan.nets.len()).filter(|&net| chosen[net]);
+    let nets = (0..plan.paths.len()).filter(|&net| chosen[net]);
     let charts: Vec<(usize, usize)> =
-        nets.flat_map(|net| (0..plan.nets[net].charts.len()).map(move |chart| (net, chart))).collect();
+        nets.flat_map(|net| (0..plan.paths[net].charts.len()).map(move |chart| (net, chart))).collect();
     watch.planned(charts.len() * frequencies(plan).len());
     let done: Result<Vec<ChartDone>, Diagnostic> = charts.par_iter().map(|&at| charting.chart(at)).collect();
     let done = done.map_err(|failure| tell(watch, &[failure]))?;
@@ -191,7 +191,7 @@ fn draw_plan(
 
 /// The smallest height of all charts that can be drawn: the anchor of the common scale depends on inputs only.
 fn scale_height_m(plan: &Plan) -> f64 {
-    let charts = plan.nets.iter().flat_map(|net| &net.charts);
+    let charts = plan.paths.iter().flat_map(|net| &net.charts);
     let heights = |with_withheld: bool| {
         let kept = charts.clone().filter(move |chart| with_withheld || chart.withheld.is_none());
         kept.map(|chart| chart.height_m).filter(|&height| height > 0.0).min_by(f64::total_cmp)
@@ -204,10 +204,10 @@ fn scale_height_m(plan: &Plan) -> f64 {
 fn stems(plan: &Plan) -> Vec<Vec<Vec<String>>> {
     let each = frequencies(plan);
     let mut names = Vec::new();
-    for net in &plan.nets {
+    for net in &plan.paths {
         for chart in &net.charts {
             names.extend(each.iter().map(|&(band, hz)| MapName {
-                net: net.net.clone(),
+                net: net.name.clone(),
                 plane: chart.plane.to_string(),
                 band: band_part(&plan.bands[band], hz),
             }));
@@ -215,7 +215,7 @@ fn stems(plan: &Plan) -> Vec<Vec<Vec<String>>> {
     }
     let mut stems = file_stems(&names).into_iter();
     let of_chart = |stems: &mut std::vec::IntoIter<String>| stems.by_ref().take(each.len()).collect();
-    plan.nets.iter().map(|net| net.charts.iter().map(|_| of_chart(&mut stems)).collect()).collect()
+    plan.paths.iter().map(|net| net.charts.iter().map(|_| of_chart(&mut stems)).collect()).collect()
 }
 
 /// The band in a file name: with the frequency where the band is solved at several.

@@ -7,9 +7,9 @@ use crate::plan::{Plan, matches};
 /// For each net of the plan, whether it is drawn. A name or pattern that matches no net is an error with a near name.
 pub fn chosen(plan: &Plan, only: &[String]) -> Result<Vec<bool>, Vec<Diagnostic>> {
     if only.is_empty() {
-        return Ok(vec![true; plan.nets.len()]);
+        return Ok(vec![true; plan.paths.len()]);
     }
-    let names: Vec<&str> = plan.nets.iter().map(|net| net.net.as_str()).collect();
+    let names: Vec<&str> = plan.paths.iter().map(|net| net.name.as_str()).collect();
     let lost = only.iter().filter(|pattern| !names.iter().any(|name| matches(pattern, name)));
     let errors: Vec<Diagnostic> = lost.map(|pattern| unknown(pattern, &names)).collect();
     if !errors.is_empty() {

@@ -128,12 +128,12 @@ fn nets_of_real_boards_are_charted() {
     for set in sets() {
         let Ok((mut board, _)) = read_board(&set) else { continue };
         let plan = planned(&mut board);
-        let charts = plan.nets.iter().flat_map(|net| net.charts.iter().map(move |chart| (net, chart)));
-        let length = |net: &ebbmap::plan::NetPlan| -> f64 {
+        let charts = plan.paths.iter().flat_map(|net| net.charts.iter().map(move |chart| (net, chart)));
+        let length = |net: &ebbmap::plan::PathPlan| -> f64 {
             net.track.iter().map(|leg| leg.from.distance(leg.to)).sum()
         };
         let ready: Vec<_> = charts.filter(|(_, chart)| chart.withheld.is_none()).collect();
-        eprintln!("{} nets planned, {} charts ready", plan.nets.len(), ready.len());
+        eprintln!("{} nets planned, {} charts ready", plan.paths.len(), ready.len());
         plan.messages.iter().for_each(|message| eprintln!("plan: {}", message.text));
         // The longest track that is not withheld, on cells that keep the test short.
         let Some(&(net, planned)) = ready.iter().max_by(|a, b| length(a.0).total_cmp(&length(b.0))) else {
@@ -152,7 +152,7 @@ fn nets_of_real_boards_are_charted() {
                     let figures = &charted.figures;
                     eprintln!(
                         "{} of {:.1} mm over {}: h {:.3} mm, {} cells of {:.2} mm, {:.1} s; share {:?}, extra path {:?}",
-                        net.net,
+                        net.name,
                         length(net) * 1e3,
                         map.plane,
                         planned.height_m * 1e3,

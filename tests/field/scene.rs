@@ -5,7 +5,7 @@ use ebbmap::board::{
 };
 use ebbmap::field::PlaneId;
 use ebbmap::geom::{Point, Polygon, Region};
-use ebbmap::plan::{ChartPlan, Landing, NetPlan, TrackLeg, Void};
+use ebbmap::plan::{ChartPlan, Landing, PathPlan, TrackLeg, Void};
 use ebbmap::review::Band;
 
 /// What a test wants of its board, in mm.
@@ -80,13 +80,14 @@ impl Scene {
         }
     }
 
-    pub fn net(&self) -> NetPlan {
+    pub fn net(&self) -> PathPlan {
         let point = |&(x, y): &(f64, f64)| Point::mm(x, y);
         let leg = |ends: &[(f64, f64)]| TrackLeg {
             from: point(&ends[0]),
             to: point(&ends[1]),
             layer: 0,
             width_m: self.track_width * 1e-3,
+            current: 1.0,
         };
         let legs: Vec<TrackLeg> = self.track.windows(2).map(leg).collect();
         let landing = |at: &(f64, f64), what: &str| Landing {
@@ -101,6 +102,7 @@ impl Scene {
             receiver_landing: landing(&self.track[self.track.len() - 1], "via of U2.2"),
             height_m: self.gap * 1e-3,
             width_m: self.track_width * 1e-3,
+            current: 1.0,
             voids: self
                 .voids
                 .iter()
@@ -112,11 +114,13 @@ impl Scene {
             memory_bytes: 0,
             withheld: None,
         };
-        NetPlan {
-            net: "TIDE_CLK".into(),
+        PathPlan {
+            name: "TIDE_CLK".into(),
             driver: "U1.1".into(),
             receiver: "U2.1".into(),
             track: legs,
+            entries: Vec::new(),
+            joints: Vec::new(),
             charts: vec![chart],
         }
     }

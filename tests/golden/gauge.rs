@@ -5,7 +5,7 @@ use ebbmap::field::spread::{SpreadLeg, face_currents};
 use ebbmap::field::{PlaneId, ReturnMap};
 use ebbmap::figure::{Figure, Figures};
 use ebbmap::geom::{Grid, Point, Polygon, Region, Ring};
-use ebbmap::plan::{ChartPlan, Landing, NetPlan, TrackLeg, Void};
+use ebbmap::plan::{ChartPlan, Landing, PathPlan, TrackLeg, Void};
 use ebbmap::review::{Band, Model, Review, Zone};
 use std::f64::consts::PI;
 
@@ -13,7 +13,7 @@ use std::f64::consts::PI;
 pub struct Gauge {
     pub board: Board,
     pub review: Review,
-    pub net: NetPlan,
+    pub net: PathPlan,
     pub band: Band,
     pub map: ReturnMap,
     pub figures: Figures,
@@ -90,6 +90,7 @@ pub fn gauge(shape: &Shape) -> Gauge {
             to: Point::mm(pair[1].0, pair[1].1),
             layer: 0,
             width_m: 0.2e-3,
+            current: 1.0,
         })
         .collect();
     let grid = Grid {
@@ -193,11 +194,13 @@ pub fn gauge(shape: &Shape) -> Gauge {
         zones,
         ..Review::default()
     };
-    let net = NetPlan {
-        net: shape.net.clone(),
+    let net = PathPlan {
+        name: shape.net.clone(),
         driver: "U5.19".to_owned(),
         receiver: "U2.6".to_owned(),
         track: legs,
+        entries: Vec::new(),
+        joints: Vec::new(),
         charts: vec![chart],
     };
     let band = Band {

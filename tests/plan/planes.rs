@@ -33,7 +33,7 @@ fn reason(chart: &ChartPlan) -> (&'static str, String) {
 fn a_track_over_a_supply_is_withheld_and_the_way_out_is_named() {
     let board = four_layers("GND", "V3").board();
     let planned = plan(board.clone(), &review("LEVEL_OUT"));
-    let (code, text) = reason(&planned.nets[0].charts[0]);
+    let (code, text) = reason(&planned.paths[0].charts[0]);
     assert_eq!(code, "plane-not-reference");
     assert!(text.contains("`L3-V3`") && text.contains("`[reference]`"), "{text}");
     let mut wanted = review("LEVEL_OUT");
@@ -44,7 +44,7 @@ fn a_track_over_a_supply_is_withheld_and_the_way_out_is_named() {
     let mut wanted = review("LEVEL_OUT");
     wanted.nets[0].plane = Some("L2-GND".into());
     let planned = plan(board, &wanted);
-    let chart = &planned.nets[0].charts[0];
+    let chart = &planned.paths[0].charts[0];
     assert_eq!((chart.withheld.as_ref(), chart.plane.to_string().as_str()), (None, "L2-GND"));
     assert!((chart.height_m - (0.2 + 0.035 + 1.0) * 1e-3).abs() < 1e-9, "{}", chart.height_m);
     assert_eq!(messages(&planned, "plane-chosen").len(), 1);
@@ -61,7 +61,7 @@ fn an_island_in_the_plane_is_a_void_of_it() {
     }
     draft.track(0, "TIDE_SCK", &[(5.0, 10.0), (35.0, 10.0)], 0.2);
     let planned = plan(draft.board(), &review("TIDE_SCK"));
-    let charts = &planned.nets[0].charts;
+    let charts = &planned.paths[0].charts;
     assert_eq!((charts.len(), charts[0].plane.to_string().as_str()), (1, "L2-GND"));
     assert_eq!(charts[0].withheld, None);
     // The island and the moat round it: one void, as large as both.
@@ -83,7 +83,7 @@ fn an_area_nearer_than_the_plane_hides_it() {
         }
         draft.track(3, "TIDE_SCK", &[(5.0, 10.0), (35.0, 10.0)], 0.2);
         let planned = plan(draft.board(), &review("TIDE_SCK"));
-        let charts = &planned.nets[0].charts;
+        let charts = &planned.paths[0].charts;
         let found: Vec<String> = charts.iter().map(|chart| chart.plane.to_string()).collect();
         assert_eq!(found, planes);
         assert!(charts.iter().all(|chart| chart.withheld.is_some() == (planes.len() > 1)), "{charts:#?}");
@@ -95,7 +95,7 @@ fn own_pins_are_landings_before_nearer_vias() {
     let mut draft = four_layers("GND", "V3");
     draft.via("GND", (5.9, 10.0), 0.2);
     let planned = plan(draft.board(), &review("TIDE_SCK"));
-    let chart = &planned.nets[0].charts[0];
+    let chart = &planned.paths[0].charts[0];
     assert_eq!(chart.driver_landing.what, "via of U1.9");
     assert!(chart.driver_landing.at.distance(Point::mm(5.0, 11.5)) < 1e-9);
 }
@@ -106,12 +106,12 @@ fn landings_of_the_review_win() {
     wanted.nets[0].driver_landing = Some(LandingRequest::At(Point::mm(8.0, 20.0)));
     wanted.nets[0].receiver_landing = Some(LandingRequest::Pin("U1.9".into()));
     let planned = plan(four_layers("GND", "V3").board(), &wanted);
-    let chart = &planned.nets[0].charts[0];
+    let chart = &planned.paths[0].charts[0];
     assert!(chart.driver_landing.at.distance(Point::mm(8.0, 20.0)) < 1e-9);
     assert!(chart.receiver_landing.at.distance(Point::mm(5.0, 11.5)) < 1e-9);
     wanted.nets[0].receiver_landing = Some(LandingRequest::Pin("U1.0".into()));
     let planned = plan(four_layers("GND", "V3").board(), &wanted);
-    let (code, text) = reason(&planned.nets[0].charts[0]);
+    let (code, text) = reason(&planned.paths[0].charts[0]);
     assert_eq!(code, "landing-bad");
     assert!(text.contains("it is on net `TIDE_SCK`"), "{text}");
 }
@@ -127,7 +127,7 @@ fn without_a_pin_or_a_via_near_the_key_is_named() {
     }
     draft.track(0, "TIDE_SCK", &[(5.0, 10.0), (35.0, 10.0)], 0.2);
     let planned = plan(draft.board(), &review("TIDE_SCK"));
-    let (code, text) = reason(&planned.nets[0].charts[0]);
+    let (code, text) = reason(&planned.paths[0].charts[0]);
     assert_eq!(code, "landing-none");
     assert!(text.contains("4 mm away") && text.contains("`driver_landing`"), "{text}");
 }
@@ -142,7 +142,7 @@ fn a_split_plane_puts_the_landings_on_two_islands() {
     }
     draft.track(0, "TIDE_SCK", &[(5.0, 10.0), (35.0, 10.0)], 0.2);
     let planned = plan(draft.board(), &review("TIDE_SCK"));
-    let (code, text) = reason(&planned.nets[0].charts[0]);
+    let (code, text) = reason(&planned.paths[0].charts[0]);
     assert_eq!(code, "landings-on-islands");
     assert!(text.contains("551.0 mm2 round 10.0, 15.0") && text.contains("round 30.0, 15.0"), "{text}");
 }
@@ -166,7 +166,7 @@ fn a_net_that_changes_plane_is_charted_plane_by_plane() {
         plan(draft.board(), &review("TIDE_SCK"))
     };
     let planned = build(true);
-    let charts = &planned.nets[0].charts;
+    let charts = &planned.paths[0].charts;
     let planes: Vec<String> = charts.iter().map(|chart| chart.plane.to_string()).collect();
     assert_eq!(planes, ["L2-GND", "L3-GND"]);
     assert_eq!((charts[0].legs.end, charts[1].legs.start), (charts[1].legs.start, charts[0].legs.end));
@@ -230,7 +230,7 @@ fn names_of_the_review_are_checked_against_the_board() {
     assert!(codes("GND")[0].starts_with("net-is-reference"));
     assert!(codes("V3")[0].starts_with("net-few-pins"));
     let planned = plan(board.clone(), &review("*"));
-    let names: Vec<&str> = planned.nets.iter().map(|net| net.net.as_str()).collect();
+    let names: Vec<&str> = planned.paths.iter().map(|net| net.name.as_str()).collect();
     assert_eq!(names, ["LEVEL_OUT", "TIDE_SCK"], "a pattern leaves out reference nets");
     let mut wanted = review("TIDE_SCK");
     wanted.nets[0].driver = Some("U1.3".into());

@@ -53,41 +53,41 @@ fn requests(board: &Board, reference: NetId) -> Vec<NetRequest> {
 fn check(board: &Board, plan: &Plan, wanted: usize) {
     let explained = plan.messages.iter().filter(|m| m.severity == ebbmap::diag::Severity::Error).count();
     assert!(
-        plan.nets.len() + explained >= wanted,
+        plan.paths.len() + explained >= wanted,
         "{} nets of {wanted}, {explained} errors",
-        plan.nets.len()
+        plan.paths.len()
     );
-    for net in &plan.nets {
-        assert!(!net.charts.is_empty() && net.charts[0].legs.start == 0, "{}", net.net);
-        assert_eq!(net.charts.last().unwrap().legs.end, net.track.len(), "{}", net.net);
+    for net in &plan.paths {
+        assert!(!net.charts.is_empty() && net.charts[0].legs.start == 0, "{}", net.name);
+        assert_eq!(net.charts.last().unwrap().legs.end, net.track.len(), "{}", net.name);
         for pair in net.track.windows(2) {
             let step = pair[0].to.distance(pair[1].from);
-            assert!(step < 1e-7, "{}: the way jumps by {step} m", net.net);
+            assert!(step < 1e-7, "{}: the way jumps by {step} m", net.name);
         }
         for leg in &net.track {
             let middle = (leg.from + leg.to) * 0.5;
-            let own = board.layers[leg.layer].areas.iter().filter(|a| a.net == board.net(&net.net));
+            let own = board.layers[leg.layer].areas.iter().filter(|a| a.net == board.net(&net.name));
             let on_copper = own.into_iter().any(|area| area.shape.contains(middle));
             // Across a pour a straight line may leave it; its width then is that of the narrowest draw.
             let length = leg.from.distance(leg.to);
-            assert!(on_copper || length > 0.2e-3, "{}: {leg:?} is not on copper", net.net);
-            assert!(leg.width_m > 0.0 && leg.width_m < 0.1, "{}: {leg:?}", net.net);
+            assert!(on_copper || length > 0.2e-3, "{}: {leg:?} is not on copper", net.name);
+            assert!(leg.width_m > 0.0 && leg.width_m < 0.1, "{}: {leg:?}", net.name);
         }
         for pair in net.charts.windows(2) {
-            assert_eq!(pair[0].legs.end, pair[1].legs.start, "{}", net.net);
-            assert!(pair[0].plane != pair[1].plane, "{}", net.net);
+            assert_eq!(pair[0].legs.end, pair[1].legs.start, "{}", net.name);
+            assert!(pair[0].plane != pair[1].plane, "{}", net.name);
         }
         for chart in net.charts.iter().filter(|chart| chart.withheld.is_none()) {
-            assert!(chart.height_m > 0.0 && chart.cell_m > 0.0 && chart.unknowns > 0, "{}", net.net);
+            assert!(chart.height_m > 0.0 && chart.cell_m > 0.0 && chart.unknowns > 0, "{}", net.name);
             let areas = board.layers[chart.plane.layer].areas.iter();
             let of_plane: Vec<_> = areas.filter(|area| area.net == board.net(&chart.plane.net)).collect();
             for landing in [&chart.driver_landing, &chart.receiver_landing] {
                 let reach = landing.radius_m + 1e-6;
                 let near = ebbmap::geom::locate::Locator::new(of_plane.iter().map(|area| &area.shape));
-                assert!(!near.touching(&[landing.at], reach).is_empty(), "{}: {landing:?}", net.net);
+                assert!(!near.touching(&[landing.at], reach).is_empty(), "{}: {landing:?}", net.name);
             }
             for void in &chart.voids {
-                assert!(void.shape.area() > 0.0, "{}: {}", net.net, void.id);
+                assert!(void.shape.area() > 0.0, "{}: {}", net.name, void.id);
             }
         }
     }

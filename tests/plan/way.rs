@@ -3,9 +3,9 @@
 use super::draft::{Draft, disc, rectangle};
 use super::{messages, plan, review};
 use ebbmap::geom::Point;
-use ebbmap::plan::{NetPlan, Plan};
+use ebbmap::plan::{PathPlan, Plan};
 
-fn length_mm(net: &NetPlan) -> f64 {
+fn length_mm(net: &PathPlan) -> f64 {
     net.track.iter().map(|leg| leg.from.distance(leg.to)).sum::<f64>() * 1e3
 }
 
@@ -22,9 +22,9 @@ fn two_parts() -> Draft {
     draft
 }
 
-fn net(plan: &Plan) -> &NetPlan {
-    assert_eq!(plan.nets.len(), 1, "{:#?}", plan.messages);
-    &plan.nets[0]
+fn net(plan: &Plan) -> &PathPlan {
+    assert_eq!(plan.paths.len(), 1, "{:#?}", plan.messages);
+    &plan.paths[0]
 }
 
 #[test]
@@ -81,7 +81,7 @@ fn pens_that_miss_each_other_are_named_with_the_gap() {
     draft.track(0, "TIDE_SCK", &[(5.0, 15.0), (20.0, 15.0)], 0.2);
     draft.track(0, "TIDE_SCK", &[(20.25, 15.0), (35.0, 15.0)], 0.2);
     let plan = plan(draft.board(), &review("TIDE_SCK"));
-    assert!(plan.nets.is_empty());
+    assert!(plan.paths.is_empty());
     let open = messages(&plan, "track-open");
     assert_eq!(open.len(), 1, "{:?}", plan.messages);
     let place = open[0].place.at.unwrap();
@@ -100,7 +100,7 @@ fn branches_loops_and_further_pins_are_stated() {
     let mut wanted = review("TIDE_SCK");
     let board = draft.board();
     let plain = plan(board.clone(), &wanted);
-    assert!(plain.nets.is_empty());
+    assert!(plain.paths.is_empty());
     let needed = messages(&plain, "net-pins-needed");
     assert!(needed[0].hints[0].contains("`U1.1`, `U2.1`, `U3.7`"), "{:?}", needed[0].hints);
     wanted.nets[0].driver = Some("U1.1".into());
