@@ -102,7 +102,6 @@ impl Scene {
             receiver_landing: landing(&self.track[self.track.len() - 1], "via of U2.2"),
             height_m: self.gap * 1e-3,
             width_m: self.track_width * 1e-3,
-            current: 1.0,
             voids: self
                 .voids
                 .iter()

@@ -38,7 +38,7 @@ fn a_track_over_a_supply_is_withheld_and_the_way_out_is_named() {
     assert!(text.contains("`L3-V3`") && text.contains("`[reference]`"), "{text}");
     let mut wanted = review("LEVEL_OUT");
     wanted.reference_nets.push("V3".into());
-    let (code, text) = reason(&plan(board.clone(), &wanted).nets[0].charts[0]);
+    let (code, text) = reason(&plan(board.clone(), &wanted).paths[0].charts[0]);
     assert_eq!(code, "landing-none", "V3 has no via: {text}");
     // The review may insist on the plane behind.
     let mut wanted = review("LEVEL_OUT");
@@ -174,7 +174,7 @@ fn a_net_that_changes_plane_is_charted_plane_by_plane() {
     let joint = Point::mm(21.0, 11.0);
     assert!(charts[0].receiver_landing.at.distance(joint) < 1e-9);
     assert!(charts[1].driver_landing.at.distance(joint) < 1e-9);
-    assert!(build(false).nets[0].charts[0].receiver_landing.at.distance(joint) > 1e-3);
+    assert!(build(false).paths[0].charts[0].receiver_landing.at.distance(joint) > 1e-3);
 }
 
 #[test]
