@@ -16,7 +16,8 @@ pub use source::Source;
 pub use stage::Voids;
 pub use workshop::{Bench, Progress, Solved, TOLERANCE, Workshop};
 
-use crate::geom::Grid;
+use crate::geom::{Grid, Point};
+use crate::plan::JointKind;
 use crate::review::Model;
 use num_complex::Complex64;
 
@@ -71,6 +72,22 @@ pub struct ReturnMap {
     /// Loop impedance of track and plane seen at the driver in ohm (resistance of the track included); none for the
     /// closed form.
     pub loop_impedance_ohm: Option<Complex64>,
+}
+
+/// What a joint (via, part, tie) carries of a path's return, per ampere of the driver's current. Of several joints at
+/// one place on different layers each has its own entry.
+#[derive(Clone, Debug, PartialEq)]
+pub struct JointCurrent {
+    /// Its name in words, as in the plan: `C14`, `via`.
+    pub what: String,
+    /// What it is.
+    pub kind: JointKind,
+    /// Where it is drawn.
+    pub at: Point,
+    /// Layers of its two ends (index from 0); none for an end outside the board's copper.
+    pub layers: [Option<usize>; 2],
+    /// Current from its first end to its second in A per A, rms phasor with the phase reference of the maps.
+    pub current: Complex64,
 }
 
 impl ReturnMap {
