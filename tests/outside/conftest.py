@@ -2,6 +2,9 @@
 
 import json
 import os
+
+os.environ.setdefault("OPENBLAS_NUM_THREADS", "1")  # small dense systems: threads cost more than they give
+
 import subprocess
 from pathlib import Path
 
