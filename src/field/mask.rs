@@ -30,10 +30,14 @@ pub struct Mask {
     pub island: Vec<u32>,
     /// Number of islands.
     pub islands: usize,
+    /// Group (of those that make the copper) of each copper cell; [`NO_ISLAND`] elsewhere.
+    pub group: Vec<u32>,
     /// Cells that are copper by less than half, added to keep necks.
     pub neck_cells: usize,
     /// Pieces of copper too small for a cell, left out.
     pub crumbs: usize,
+    /// Connections that the cells could not keep; always 0 for [`Mask::new`].
+    pub severed: usize,
 }
 
 /// No island.
@@ -53,8 +57,23 @@ impl Mask {
     pub fn new(copper: &Copper, grid: &Grid) -> Result<Self, TooCoarse> {
         let pieces = Pieces::find(copper, grid);
         let mut choice = Choice::by_half(&pieces, grid);
-        let crumbs = choice.link(&pieces, grid)?;
-        Ok(choice.into_mask(&pieces, grid, crumbs))
+        let crumbs = choice.link(&pieces, grid, |place| Err(place))?;
+        Ok(choice.into_mask(&pieces, grid, crumbs, 0))
+    }
+
+    /// The same where connections that the cells cannot keep may be lost; they are counted. Nothing is joined that
+    /// the copper does not join.
+    pub fn lenient(copper: &Copper, grid: &Grid) -> Self {
+        let pieces = Pieces::find(copper, grid);
+        let mut choice = Choice::by_half(&pieces, grid);
+        let mut severed = 0;
+        let count = |_| {
+            severed += 1;
+            Ok(())
+        };
+        // every place is counted and none refused, so there is no error
+        let crumbs = choice.link(&pieces, grid, count).unwrap_or(0);
+        choice.into_mask(&pieces, grid, crumbs, severed)
     }
 }
 
@@ -85,8 +104,14 @@ impl Choice {
         self.chosen[pieces.cell[piece as usize] as usize] == piece
     }
 
-    /// Adds cells until connected copper is connected; gives the number of crumbs left out.
-    fn link(&mut self, pieces: &Pieces, grid: &Grid) -> Result<usize, TooCoarse> {
+    /// Adds cells until connected copper is connected, or `refuse` bears that it is not; gives the number of crumbs
+    /// left out.
+    fn link(
+        &mut self,
+        pieces: &Pieces,
+        grid: &Grid,
+        mut refuse: impl FnMut(TooCoarse) -> Result<(), TooCoarse>,
+    ) -> Result<usize, TooCoarse> {
         let mut whole = Sets::new(pieces.len());
         let mut parts = Sets::new(pieces.len());
         for &(a, b) in &pieces.contacts {
@@ -129,7 +154,7 @@ impl Choice {
                     None => {
                         let cell = pieces.cell[members[0] as usize] as usize;
                         let at = grid.centre(cell % grid.nx, cell / grid.nx);
-                        return Err(TooCoarse { at, cell_m: grid.cell_m });
+                        refuse(TooCoarse { at, cell_m: grid.cell_m })?;
                     }
                 }
             }
@@ -190,7 +215,7 @@ impl Choice {
         }
     }
 
-    fn into_mask(self, pieces: &Pieces, grid: &Grid, crumbs: usize) -> Mask {
+    fn into_mask(self, pieces: &Pieces, grid: &Grid, crumbs: usize, severed: usize) -> Mask {
         let (nx, ny) = (grid.nx, grid.ny);
         let copper: Vec<bool> = self.chosen.iter().map(|&piece| piece != NONE).collect();
         let mut open_x = vec![false; (nx + 1) * ny];
@@ -208,6 +233,11 @@ impl Choice {
                 open_y[to] = true;
             }
         }
+        let group = self.chosen.iter().map(|&piece| match piece {
+            NONE => NO_ISLAND,
+            piece => pieces.group[piece as usize],
+        });
+        let group = group.collect();
         let mut cut_x = Vec::new();
         let mut cut_y = Vec::new();
         for cell in 0..grid.len() {
@@ -241,8 +271,10 @@ impl Choice {
             cut_y,
             island,
             islands: islands as usize,
+            group,
             neck_cells: self.neck_cells,
             crumbs,
+            severed,
         }
     }
 }

@@ -1,20 +1,26 @@
-//! The return-current density of one net on one plane at one frequency, and how it comes from a model.
+//! The return-current density of one path on the planes that carry it at one frequency, and how it comes from a model.
 
+mod complaint;
 mod foil;
+mod lay;
+mod laybench;
 mod mask;
 mod pieces;
 mod source;
 pub mod spread;
+mod stack;
 mod stage;
 pub mod track;
+mod wiring;
 mod workshop;
 
 pub use foil::Foil;
 pub use mask::{Mask, NO_ISLAND, TooCoarse};
 pub use pieces::Copper;
 pub use source::Source;
+pub use stack::Stack;
 pub use stage::Voids;
-pub use workshop::{Bench, Progress, Solved, TOLERANCE, Workshop};
+pub use workshop::{Bench, PlaneMaps, Progress, Solved, TOLERANCE, Workshop};
 
 use crate::geom::{Grid, Point};
 use crate::plan::JointKind;

@@ -23,6 +23,8 @@ pub struct Run {
     pub z_m: f64,
     /// Geometric mean distance of its cross-section from itself in metres.
     pub gmd_m: f64,
+    /// Current from start to end in A per A.
+    pub current: f64,
 }
 
 /// Geometric mean distance from itself of a rectangle `width_m` by `thickness_m` with even current, in metres:
@@ -37,13 +39,13 @@ pub fn gmd_edge(width_m: f64) -> f64 {
     0.25 * width_m
 }
 
-/// Partial inductance in henry of the path that `runs` make.
+/// Partial inductance in henry of the path that `runs` make, seen by a current of 1 A.
 pub fn partial_inductance_h(runs: &[Run]) -> f64 {
     let mut sum = 0.0;
     for (i, a) in runs.iter().enumerate() {
-        sum += own(a);
+        sum += a.current * a.current * own(a);
         for b in &runs[i + 1..] {
-            sum += 2.0 * mutual(a, b);
+            sum += 2.0 * a.current * b.current * mutual(a, b);
         }
     }
     MU0 / (4.0 * std::f64::consts::PI) * sum
@@ -109,7 +111,7 @@ mod tests {
     use super::*;
 
     fn run(from: (f64, f64), to: (f64, f64), gmd_m: f64) -> Run {
-        Run { from: Point::mm(from.0, from.1), to: Point::mm(to.0, to.1), z_m: 0.0, gmd_m }
+        Run { from: Point::mm(from.0, from.1), to: Point::mm(to.0, to.1), z_m: 0.0, gmd_m, current: 1.0 }
     }
 
     #[test]

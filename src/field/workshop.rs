@@ -1,50 +1,54 @@
-//! From a chart of the plan to solved maps, sharing prepared planes between nets.
+//! From a path of the plan to solved maps, sharing prepared copper between paths.
 
-use super::ReturnMap;
-use super::mask::{Mask, TooCoarse};
-use super::source::{Source, landing_patch};
+use super::lay::Lay;
+use super::laybench::LayBench;
 use super::spread::{SpreadLeg, face_currents};
-use super::stage::{Stage, Stages, Voids};
-use super::track::partial_inductance_h;
+use super::stage::Stages;
+use super::{JointCurrent, ReturnMap};
 use crate::board::Board;
 use crate::diag::Diagnostic;
-use crate::diag::code::field as code;
-use crate::geom::Point;
-use crate::plan::{ChartPlan, PathPlan};
+use crate::plan::{ChartPlan, Joint, PathPlan, Plan};
 use crate::review::{Band, Model};
-use crate::sheet::{Drive, Injection, OperatingPoint, SolveFailure};
-use num_complex::Complex64;
-use std::sync::Arc;
 
 /// Relative residual to which maps are solved unless asked otherwise.
 pub const TOLERANCE: f64 = 1e-5;
-/// How often the cell is halved where it cannot stand for the plane.
-const HALVINGS: usize = 2;
 
-/// Solves charts of one board. May be shared between threads.
+/// Solves paths of one board. May be shared between threads.
 #[derive(Debug)]
 pub struct Workshop<'a> {
-    board: &'a Board,
-    model: Model,
-    tolerance: f64,
-    stages: Stages,
+    pub(super) board: &'a Board,
+    pub(super) plan: &'a Plan,
+    /// Joints of the conductors and of all paths, each once: a part's inside is there whatever path is charted.
+    pub(super) joints: Vec<Joint>,
+    pub(super) model: Model,
+    pub(super) tolerance: f64,
+    pub(super) stages: Stages,
 }
 
-/// Maps of one net, plane and frequency.
+/// Everything solved of one path at one frequency.
 #[derive(Clone, Debug)]
 pub struct Solved {
+    /// Maps of each chart of the bench, in its order, or why there are none.
+    pub planes: Vec<Result<PlaneMaps, Diagnostic>>,
+    /// What joints carry, those of at least a thousandth of the driver's current, in the order of the plan.
+    pub joints: Vec<JointCurrent>,
+}
+
+/// Maps of one path on one plane at one frequency.
+#[derive(Clone, Debug)]
+pub struct PlaneMaps {
     /// The map.
     pub map: ReturnMap,
-    /// The same with all voids filled.
+    /// The same with the voids of the charted planes filled.
     pub without_voids: ReturnMap,
-    /// Both on cells of twice the size; none where those cannot stand for the plane.
+    /// Both on cells of twice the size; none where those cannot stand for the copper.
     pub coarse: Option<(ReturnMap, ReturnMap)>,
 }
 
-/// What a chart has done so far.
+/// What a path has done so far.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub struct Progress<'a> {
-    /// Net.
+    /// Path.
     pub net: &'a str,
     /// Name of the band.
     pub band: &'a str,
@@ -54,28 +58,25 @@ pub struct Progress<'a> {
     pub total: usize,
 }
 
-/// A chart ready to be solved at any frequency.
+/// A path ready to be solved at any frequency.
 pub struct Bench<'w, 'a> {
     workshop: &'w Workshop<'a>,
-    net: &'w PathPlan,
-    chart: &'w ChartPlan,
-    source: Source<'w>,
-    fine: Option<Pair>,
-    coarse: Option<Pair>,
-    /// What was assumed while it was made ready.
-    pub notes: Vec<Diagnostic>,
-}
-
-/// A plane with and without voids, and the currents that enter it.
-struct Pair {
-    kept: (Arc<Stage>, Vec<Injection>),
-    filled: (Arc<Stage>, Vec<Injection>),
+    path: &'w PathPlan,
+    charts: Vec<ChartPlan>,
+    lays: Vec<Result<LayBench<'w, 'a>, (Vec<usize>, Diagnostic)>>,
 }
 
 impl<'a> Workshop<'a> {
-    /// A workshop for `board` that uses `model`.
-    pub fn new(board: &'a Board, model: Model) -> Self {
-        Self { board, model, tolerance: TOLERANCE, stages: Stages::default() }
+    /// A workshop for `board` and its `plan` that uses `model`.
+    pub fn new(board: &'a Board, plan: &'a Plan, model: Model) -> Self {
+        let mut joints: Vec<Joint> = Vec::new();
+        let of_paths = plan.paths.iter().flat_map(|path| &path.joints);
+        for joint in plan.conductors.joints.iter().chain(of_paths) {
+            if !joints.contains(joint) {
+                joints.push(joint.clone());
+            }
+        }
+        Self { board, plan, joints, model, tolerance: TOLERANCE, stages: Stages::default() }
     }
 
     /// The same with another relative residual for the sheet model.
@@ -84,138 +85,92 @@ impl<'a> Workshop<'a> {
         self
     }
 
-    /// Makes a chart ready: puts its plane on cells and finds its landings.
-    pub fn bench<'w>(&'w self, net: &'w PathPlan, chart: &'w ChartPlan) -> Result<Bench<'w, 'a>, Diagnostic> {
-        if let Some(reason) = &chart.withheld {
-            return Err(reason.clone());
-        }
-        let source = Source::new(self.board, chart.plane.layer, &net.track[chart.legs.clone()]);
-        let mut bench =
-            Bench { workshop: self, net, chart, source, fine: None, coarse: None, notes: Vec::new() };
+    /// Makes a path ready: puts its copper on cells and finds what it is charted on.
+    pub fn bench<'w>(&'w self, path: &'w PathPlan) -> Bench<'w, 'a> {
+        let charts = distinct(path);
+        let mut bench = Bench { workshop: self, path, charts, lays: Vec::new() };
         if self.model == Model::Sheet {
-            let cell_m = bench.set_up_fine()?;
-            // A second solve that cannot be had leaves the error to the bound; it withholds nothing.
-            bench.coarse = bench.pair(2.0 * cell_m).ok();
+            let lays = Lay::of_path(self.board, &self.plan.conductors, &self.joints, path, &bench.charts);
+            bench.lays = lays
+                .into_iter()
+                .map(|lay| {
+                    let charts = lay.charts.iter().map(|(index, _)| *index).collect();
+                    LayBench::new(self, lay).map_err(|reason| (charts, reason))
+                })
+                .collect();
         }
-        Ok(bench)
+        bench
     }
 }
 
-/// Why a plane cannot be put on cells of a given size.
-enum Misfit {
-    Coarse(TooCoarse),
-    Other(Box<Diagnostic>),
+/// One chart for each plane, in the order of the track: of several on one plane that with the longest stretch, one
+/// that is withheld last.
+fn distinct(path: &PathPlan) -> Vec<ChartPlan> {
+    let length_m = |chart: &ChartPlan| -> f64 {
+        path.track[chart.legs.clone()].iter().map(|leg| leg.from.distance(leg.to)).sum()
+    };
+    let rank = |chart: &ChartPlan| (chart.withheld.is_none(), length_m(chart));
+    let mut charts: Vec<ChartPlan> = Vec::new();
+    for chart in &path.charts {
+        match charts.iter_mut().find(|known| known.plane == chart.plane) {
+            None => charts.push(chart.clone()),
+            Some(known) if rank(chart) > rank(known) => *known = chart.clone(),
+            Some(_) => {}
+        }
+    }
+    charts
 }
 
 impl Bench<'_, '_> {
+    /// What is charted: a map for each at every frequency, unless withheld. Planes that no stretch of the track lies
+    /// over have no legs and landings without a radius.
+    pub fn charts(&self) -> &[ChartPlan] {
+        &self.charts
+    }
+
+    /// What was assumed while it was made ready.
+    pub fn notes(&self) -> Vec<Diagnostic> {
+        self.lays.iter().flatten().flat_map(LayBench::notes).collect()
+    }
+
     /// Solves at one frequency of a band.
-    pub fn solve(&self, band: &Band, frequency_hz: f64) -> Result<Solved, Diagnostic> {
-        let Some(fine) = &self.fine else { return Ok(self.spread(band, frequency_hz)) };
-        let track = self.track_impedance_ohm(frequency_hz);
-        let sheet = |prepared: &(Arc<Stage>, Vec<Injection>)| self.sheet(band, frequency_hz, track, prepared);
-        let pair = |pair: &Pair| {
-            if Arc::ptr_eq(&pair.kept.0, &pair.filled.0) {
-                return sheet(&pair.kept).map(|map| (map.clone(), map));
-            }
-            let (kept, filled) = rayon::join(|| sheet(&pair.kept), || sheet(&pair.filled));
-            Ok((kept?, filled?))
+    pub fn solve(&self, band: &Band, frequency_hz: f64) -> Solved {
+        let missing = |chart: &ChartPlan| match &chart.withheld {
+            Some(reason) => Err(reason.clone()),
+            None => Ok(self.spread(chart, band, frequency_hz)),
         };
-        let (map, without_voids) = pair(fine)?;
-        let coarse = self.coarse.as_ref().map(pair).transpose()?;
-        Ok(Solved { map, without_voids, coarse })
-    }
-
-    /// Sets up the plane on the plan's cells, or on smaller ones where those cannot stand for it.
-    fn set_up_fine(&mut self) -> Result<f64, Diagnostic> {
-        let mut cell_m = self.chart.cell_m;
-        for halving in 0..=HALVINGS {
-            match self.pair(cell_m) {
-                Ok(pair) => {
-                    self.fine = Some(pair);
-                    if halving > 0 {
-                        self.notes.push(self.halved(cell_m));
-                    }
-                    self.notes.extend(self.mended());
-                    return Ok(cell_m);
-                }
-                Err(Misfit::Other(reason)) => return Err(*reason),
-                Err(Misfit::Coarse(place)) if halving == HALVINGS => return Err(self.too_coarse(place)),
-                Err(Misfit::Coarse(_)) => cell_m *= 0.5,
-            }
+        if self.workshop.model == Model::Spread {
+            return Solved { planes: self.charts.iter().map(missing).collect(), joints: Vec::new() };
         }
-        Ok(cell_m)
-    }
-
-    fn pair(&self, cell_m: f64) -> Result<Pair, Misfit> {
-        let stage = |voids| {
-            let stage = self.workshop.stages.get(self.workshop.board, self.chart, cell_m, voids);
-            let stage = stage.map_err(Misfit::Coarse)?;
-            let landings = self.landings(&stage.mask).map_err(|reason| Misfit::Other(Box::new(reason)))?;
-            Ok((stage, landings))
-        };
-        Ok(Pair { kept: stage(Voids::Kept)?, filled: stage(Voids::Filled)? })
-    }
-
-    /// The return enters the plane at the receiver and leaves it at the driver, against the track's current.
-    fn landings(&self, mask: &Mask) -> Result<Vec<Injection>, Diagnostic> {
-        let ends = [(&self.chart.receiver_landing, 1.0), (&self.chart.driver_landing, -1.0)];
-        let mut injections = Vec::with_capacity(2);
-        let mut islands = Vec::with_capacity(2);
-        for (landing, current_a) in ends {
-            let Some((patch, island)) = landing_patch(mask, landing) else {
-                let text = format!(
-                    "landing `{}` of net `{}` must lie on plane `{}`; no copper within two cells",
-                    landing.what, self.net.name, self.chart.plane
-                );
-                return Err(self.placed(Diagnostic::error(code::LANDING_OFF_COPPER, text), landing.at));
+        let mut planes: Vec<Option<Result<PlaneMaps, Diagnostic>>> = vec![None; self.charts.len()];
+        for (plane, chart) in planes.iter_mut().zip(&self.charts) {
+            *plane = chart.withheld.clone().map(Err);
+        }
+        let mut joints = Vec::new();
+        for lay in &self.lays {
+            let failed = |planes: &mut Vec<Option<_>>, charts: &[usize], reason: &Diagnostic| {
+                charts.iter().for_each(|&chart| planes[chart] = Some(Err(reason.clone())));
             };
-            injections.push(Injection { patch, current_a });
-            islands.push(island);
+            match lay {
+                Err((charts, reason)) => failed(&mut planes, charts, reason),
+                Ok(lay) => match lay.solve(band, frequency_hz) {
+                    Err(reason) => failed(&mut planes, &lay.charts(), &reason),
+                    Ok(solved) => {
+                        for (chart, maps) in solved.planes {
+                            planes[chart] = Some(Ok(maps));
+                        }
+                        joints.extend(solved.joints);
+                    }
+                },
+            }
         }
-        if islands[0] != islands[1] {
-            return Err(self.landings_apart());
-        }
-        Ok(injections)
+        // every chart is withheld or served by one lay
+        Solved { planes: planes.into_iter().flatten().collect(), joints }
     }
 
-    fn sheet(
-        &self,
-        band: &Band,
-        frequency_hz: f64,
-        track_ohm: Complex64,
-        (stage, injections): &(Arc<Stage>, Vec<Injection>),
-    ) -> Result<ReturnMap, Diagnostic> {
-        let drive = Drive { strips: self.source.strips(frequency_hz), injections: injections.clone() };
-        let zs_ohm = self.source.foil(self.chart.plane.layer).zs_ohm(frequency_hz);
-        let point = OperatingPoint { frequency_hz, zs_ohm: vec![zs_ohm] };
-        let solve = || stage.system()?.solve(&drive, &point, self.workshop.tolerance);
-        let mut solution = solve().map_err(|failure| self.failed(&failure, band))?;
-        Ok(ReturnMap {
-            net: self.net.name.clone(),
-            plane: self.chart.plane.clone(),
-            band: band.name.clone(),
-            frequency_hz,
-            grid: stage.mask.grid,
-            copper: stage.mask.copper.clone(),
-            jx: std::mem::take(&mut solution.jx[0]),
-            jy: std::mem::take(&mut solution.jy[0]),
-            model: Model::Sheet,
-            height_m: self.source.mean_height_m(frequency_hz),
-            width_m: self.source.mean_width_m(),
-            zs_ohm: Some(zs_ohm),
-            residual: Some(solution.residual),
-            loop_impedance_ohm: Some(track_ohm + solution.sheet_impedance_ohm),
-        })
-    }
-
-    fn track_impedance_ohm(&self, frequency_hz: f64) -> Complex64 {
-        let inductance_h = partial_inductance_h(&self.source.runs(frequency_hz));
-        let omega = std::f64::consts::TAU * frequency_hz;
-        Complex64::new(self.source.resistance_ohm(frequency_hz), omega * inductance_h)
-    }
-
-    fn spread(&self, band: &Band, frequency_hz: f64) -> Solved {
-        let (board, chart) = (self.workshop.board, self.chart);
+    fn spread(&self, chart: &ChartPlan, band: &Band, frequency_hz: f64) -> PlaneMaps {
+        let board = self.workshop.board;
+        let legs = &self.path.track[chart.legs.clone()];
         let map = |cell_m: f64| {
             let (grid, copper) = super::stage::cells_of_plane(board, chart, cell_m);
             let leg = |leg: &crate::plan::TrackLeg| SpreadLeg {
@@ -224,10 +179,9 @@ impl Bench<'_, '_> {
                 width_m: leg.width_m,
                 height_m: board.stackup.gap_m(leg.layer, chart.plane.layer),
             };
-            let legs: Vec<SpreadLeg> = self.net.track[chart.legs.clone()].iter().map(leg).collect();
-            let (jx, jy) = face_currents(&legs, &grid);
+            let (jx, jy) = face_currents(&legs.iter().map(leg).collect::<Vec<_>>(), &grid);
             ReturnMap {
-                net: self.net.name.clone(),
+                net: self.path.name.clone(),
                 plane: chart.plane.clone(),
                 band: band.name.clone(),
                 frequency_hz,
@@ -237,90 +191,13 @@ impl Bench<'_, '_> {
                 jy,
                 model: Model::Spread,
                 height_m: chart.height_m,
-                width_m: self.source.mean_width_m(),
+                width_m: chart.width_m,
                 zs_ohm: None,
                 residual: None,
                 loop_impedance_ohm: None,
             }
         };
         let (fine, coarse) = (map(chart.cell_m), map(2.0 * chart.cell_m));
-        Solved { without_voids: fine.clone(), map: fine, coarse: Some((coarse.clone(), coarse)) }
-    }
-
-    fn placed(&self, message: Diagnostic, at: Point) -> Diagnostic {
-        message.on_board(Some(self.chart.plane.layer + 1), at)
-    }
-
-    fn landings_apart(&self) -> Diagnostic {
-        let (driver, receiver) = (&self.chart.driver_landing, &self.chart.receiver_landing);
-        let text = format!(
-            "landings `{}` and `{}` of net `{}` must lie on connected copper of plane `{}`; they lie on two islands",
-            driver.what, receiver.what, self.net.name, self.chart.plane
-        );
-        self.placed(Diagnostic::error(code::LANDINGS_APART, text), receiver.at)
-            .hint("name landings on one island with `driver_landing` and `receiver_landing`")
-    }
-
-    fn too_coarse(&self, place: TooCoarse) -> Diagnostic {
-        let text = format!(
-            "cell of plane `{}` must be smaller here to keep its pieces apart; got {:.4} mm",
-            self.chart.plane,
-            place.cell_m * 1e3
-        );
-        let half_mm = 0.5e3 * place.cell_m;
-        self.placed(Diagnostic::error(code::CELL_TOO_LARGE, text), place.at)
-            .hint(format!("set `cell = \"{half_mm:.4}mm\"` or less under `[solver]`"))
-    }
-
-    fn halved(&self, cell_m: f64) -> Diagnostic {
-        let text = format!(
-            "net `{}` on plane `{}` is solved on cells of {:.4} mm; cells of {:.4} mm cannot keep its copper apart",
-            self.net.name,
-            self.chart.plane,
-            cell_m * 1e3,
-            self.chart.cell_m * 1e3
-        );
-        Diagnostic::note(code::CELL_HALVED, text)
-    }
-
-    /// What the cells do not show as it is drawn.
-    fn mended(&self) -> Option<Diagnostic> {
-        let mask = &self.fine.as_ref()?.kept.0.mask;
-        let mut parts = Vec::new();
-        if mask.neck_cells > 0 {
-            parts.push(format!("{} cells stand for necks narrower than a cell", mask.neck_cells));
-        }
-        if mask.crumbs > 0 {
-            parts.push(format!("{} pieces of copper smaller than half a cell are left out", mask.crumbs));
-        }
-        let text = format!("plane `{}` on cells of {:.4} mm: ", self.chart.plane, mask.grid.cell_m * 1e3);
-        (!parts.is_empty()).then(|| Diagnostic::note(code::PLANE_ON_CELLS, text + &parts.join("; ")))
-    }
-
-    fn failed(&self, failure: &SolveFailure, band: &Band) -> Diagnostic {
-        match failure {
-            SolveFailure::Unbalanced { .. } => self.landings_apart(),
-            SolveFailure::NoCopper { index } => {
-                let landing =
-                    if *index == 0 { &self.chart.receiver_landing } else { &self.chart.driver_landing };
-                let text = format!("landing `{}` must lie on plane `{}`", landing.what, self.chart.plane);
-                self.placed(Diagnostic::error(code::LANDING_OFF_COPPER, text), landing.at)
-            }
-            SolveFailure::Factor { .. } => {
-                let text = format!(
-                    "plane `{}` must be small enough to be factored in memory; {failure:?}",
-                    self.chart.plane
-                );
-                Diagnostic::error(code::NOT_FACTORED, text).hint("set a larger `cell` under `[solver]`")
-            }
-            SolveFailure::NoConvergence { steps, residual, tolerance } => {
-                let text = format!(
-                    "solve of net `{}` on plane `{}` in band `{}` must reach a residual of {tolerance:.0e}; got \
-                     {residual:.1e} after {steps} steps",
-                    self.net.name, self.chart.plane, band.name
-                );
-                Diagnostic::error(code::NOT_CONVERGED, text).hint("try another `cell` under `[solver]`")
-            }
-        }
+        PlaneMaps { without_voids: fine.clone(), map: fine, coarse: Some((coarse.clone(), coarse)) }
     }
 }

@@ -1,9 +1,9 @@
-//! A chart from the plan to maps and figures: what a run calls for each net and plane.
+//! A path from the plan to maps and figures: what a run calls for each path and frequency.
 
 use super::Figures;
 use super::compute::{Maps, Track, figures};
 use crate::diag::Diagnostic;
-use crate::field::{Progress, ReturnMap, Solved, Workshop};
+use crate::field::{Bench, JointCurrent, PlaneMaps, ReturnMap};
 use crate::plan::{ChartPlan, PathPlan};
 use crate::review::Band;
 
@@ -18,56 +18,38 @@ pub struct Charted {
     pub map: ReturnMap,
     /// The same with all voids filled.
     pub without_voids: ReturnMap,
-    /// Its figures.
+    /// Its figures; those that need a stretch of the track over the plane have no value where there is none.
     pub figures: Figures,
 }
 
-/// Maps and figures of one net on one plane.
+/// Maps and figures of one path at one frequency.
 #[derive(Clone, Debug)]
-pub struct ChartResult {
-    /// One entry for each frequency of each band, in their order: a map, or why there is none.
-    pub maps: Vec<Result<Charted, Diagnostic>>,
-    /// What was assumed on the way.
-    pub notes: Vec<Diagnostic>,
+pub struct ChartedPath {
+    /// One entry for each chart of the bench, in its order: a map, or why there is none.
+    pub planes: Vec<Result<Charted, Diagnostic>>,
+    /// What joints carry.
+    pub joints: Vec<JointCurrent>,
 }
 
-/// Solves `chart` of `net` at all frequencies of `bands`. Calls `progress` after each frequency.
-pub fn chart(
-    workshop: &Workshop,
-    net: &PathPlan,
-    chart: &ChartPlan,
-    bands: &[Band],
-    progress: &(dyn Fn(Progress) + Sync),
-) -> ChartResult {
-    let total = bands.iter().map(|band| band.at_hz.len()).sum();
-    let asked = bands.iter().flat_map(|band| band.at_hz.iter().map(move |&hertz| (band, hertz)));
-    let bench = match workshop.bench(net, chart) {
-        Ok(bench) => bench,
-        Err(reason) => {
-            return ChartResult { maps: asked.map(|_| Err(reason.clone())).collect(), notes: Vec::new() };
-        }
-    };
-    let legs = &net.track[chart.legs.clone()];
-    let landings = [chart.driver_landing.at, chart.receiver_landing.at];
-    let mut maps = Vec::with_capacity(total);
-    for (band, hertz) in asked {
-        let solved = bench.solve(band, hertz);
-        maps.push(solved.map(|solved| {
-            let track = Track { legs, landings: &landings, height_m: chart.height_m };
-            charted(solved, band, hertz, &track)
-        }));
-        progress(Progress { net: &net.name, band: &band.name, done: maps.len(), total });
-    }
-    ChartResult { maps, notes: bench.notes }
+/// Solves `path`, which is on `bench`, at one frequency of a band.
+pub fn chart(bench: &Bench, path: &PathPlan, band: &Band, frequency_hz: f64) -> ChartedPath {
+    let solved = bench.solve(band, frequency_hz);
+    let planes = solved.planes.into_iter().zip(bench.charts());
+    let planes = planes.map(|(maps, chart)| Ok(charted(maps?, path, chart, band, frequency_hz)));
+    ChartedPath { planes: planes.collect(), joints: solved.joints }
 }
 
-fn charted(solved: Solved, band: &Band, frequency_hz: f64, track: &Track) -> Charted {
+fn charted(solved: PlaneMaps, path: &PathPlan, chart: &ChartPlan, band: &Band, frequency_hz: f64) -> Charted {
+    let landings = [&chart.driver_landing, &chart.receiver_landing];
+    let landings: Vec<_> = landings.into_iter().filter(|l| l.radius_m > 0.0).map(|l| l.at).collect();
+    let track =
+        Track { legs: &path.track[chart.legs.clone()], landings: &landings, height_m: chart.height_m };
     let maps = Maps {
         map: &solved.map,
         without_voids: Some(&solved.without_voids),
         coarse: solved.coarse.as_ref().map(|(map, filled)| (map, Some(filled))),
     };
-    let figures = figures(&maps, track);
+    let figures = figures(&maps, &track);
     Charted {
         band: band.name.clone(),
         frequency_hz,

@@ -19,7 +19,7 @@ pub mod level;
 pub mod section;
 pub mod station;
 
-pub use chart::{ChartResult, Charted, chart};
+pub use chart::{Charted, ChartedPath, chart};
 
 use crate::geom::Point;
 

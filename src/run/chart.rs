@@ -1,11 +1,11 @@
-//! One chart of a run: solve, draw, write, and keep what the summary needs.
+//! One path of a run: solve, draw, write, and keep what the summary needs.
 
 use super::store::{Store, StoreFailure};
 use super::watch::Watch;
 use crate::board::Board;
 use crate::diag::Diagnostic;
 use crate::diag::code::run as code;
-use crate::field::{ReturnMap, Workshop};
+use crate::field::{Bench, JointCurrent, ReturnMap};
 use crate::figure::{Charted, Figures, chart};
 use crate::plan::{ChartPlan, PathPlan, Plan};
 use crate::report::{
@@ -15,8 +15,8 @@ use crate::review::{Band, Review};
 use crate::style::Style;
 use std::sync::{Mutex, PoisonError};
 
-/// Everything that the charts of a run share.
-pub struct Charting<'a> {
+/// Everything that the paths of a run share.
+pub struct Charting<'a, 's> {
     pub board: &'a Board,
     pub review: &'a Review,
     pub plan: &'a Plan,
@@ -25,12 +25,13 @@ pub struct Charting<'a> {
     pub input_hash: &'a str,
     /// Anchor of the common scale in metres.
     pub scale_height_m: f64,
-    /// File stems by net, chart and frequency.
+    /// Every path of the plan, made ready.
+    pub benches: &'a [Bench<'a, 'a>],
+    /// File stems by path, chart of its bench and frequency.
     pub stems: &'a [Vec<Vec<String>>],
-    pub workshop: &'a Workshop<'a>,
     /// Whether arrays are written.
     pub numbers: bool,
-    pub store: &'a Mutex<Store>,
+    pub store: &'s Mutex<Store>,
     pub watch: &'a dyn Watch,
 }
 
@@ -55,41 +56,39 @@ pub struct Drawn {
     pub thumbnail: Thumbnail,
 }
 
-/// What a chart leaves for the summary.
-pub struct ChartDone {
-    /// Index of the net in the plan, and of the chart in the net.
-    pub at: (usize, usize),
-    /// One entry for each frequency.
-    pub maps: Vec<Done>,
+/// What a path leaves for the summary.
+pub struct PathDone<'a> {
+    net: &'a PathPlan,
+    /// What is charted, with one entry for each frequency.
+    rows: Vec<(&'a ChartPlan, Vec<Done>)>,
     /// What was assumed on the way.
-    pub notes: Vec<Diagnostic>,
+    notes: Vec<Diagnostic>,
 }
 
-impl Charting<'_> {
-    /// Solves, draws and writes all maps of a chart. An error means that a file could not be written.
-    pub fn chart(&self, at: (usize, usize)) -> Result<ChartDone, Diagnostic> {
-        let net = &self.plan.paths[at.0];
-        let plan = &net.charts[at.1];
-        let solved = chart(self.workshop, net, plan, &self.plan.bands, &|step| {
-            self.watch.mapped(step.net, step.band);
-        });
-        let mut notes = solved.notes;
-        let stems = &self.stems[at.0][at.1];
-        let mut maps = Vec::with_capacity(solved.maps.len());
-        for ((map, (band, frequency_hz)), stem) in
-            solved.maps.into_iter().zip(frequencies(self.plan)).zip(stems)
-        {
-            let map = match map {
-                Ok(charted) => self.draw(net, plan, band, charted, stem, at)?,
-                Err(reason) => {
-                    self.watch.mapped(&net.name, &self.plan.bands[band].name);
-                    Err(reason)
-                }
-            };
-            maps.push(Done { band, frequency_hz, stem: stem.clone(), map });
+impl<'a> Charting<'a, '_> {
+    /// Solves, draws and writes all maps of a path. An error means that a file could not be written.
+    pub fn path(&self, index: usize) -> Result<PathDone<'a>, Diagnostic> {
+        let (net, bench) = (&self.plan.paths[index], &self.benches[index]);
+        let mut rows: Vec<(&ChartPlan, Vec<Done>)> =
+            bench.charts().iter().map(|chart| (chart, Vec::new())).collect();
+        for (at, (band, frequency_hz)) in frequencies(self.plan).into_iter().enumerate() {
+            let charted = chart(bench, net, &self.plan.bands[band], frequency_hz);
+            for (row, map) in charted.planes.into_iter().enumerate() {
+                let stem = &self.stems[index][row][at];
+                let (plan, done) = &mut rows[row];
+                let map = match map {
+                    Ok(charted_map) => {
+                        self.draw(net, plan, band, charted_map, &charted.joints, stem, (index, row))?
+                    }
+                    Err(reason) => Err(reason),
+                };
+                self.watch.mapped(&net.name, &self.plan.bands[band].name);
+                done.push(Done { band, frequency_hz, stem: stem.clone(), map });
+            }
         }
+        let mut notes = bench.notes();
         notes.dedup();
-        Ok(ChartDone { at, maps, notes })
+        Ok(PathDone { net, rows, notes })
     }
 
     /// Draws and writes one map. The outer error is a file that cannot be written, the inner one withholds the map.
@@ -99,6 +98,7 @@ impl Charting<'_> {
         plan: &ChartPlan,
         band: usize,
         charted: Charted,
+        _joints: &[JointCurrent],
         stem: &str,
         at: (usize, usize),
     ) -> Result<Result<Drawn, Diagnostic>, Diagnostic> {
@@ -171,16 +171,16 @@ impl Charting<'_> {
     }
 }
 
-impl ChartDone {
+impl<'a> PathDone<'a> {
     /// Whether every map was drawn.
     pub fn is_complete(&self) -> bool {
-        self.maps.iter().all(|done| done.map.is_ok())
+        self.rows.iter().flat_map(|(_, maps)| maps).all(|done| done.map.is_ok())
     }
 
     /// Notes and reasons, each once.
     pub fn messages(&self) -> Vec<Diagnostic> {
         let mut messages = self.notes.clone();
-        for reason in self.maps.iter().filter_map(|done| done.map.as_ref().err()) {
+        for reason in self.rows.iter().flat_map(|(_, maps)| maps).filter_map(|done| done.map.as_ref().err()) {
             if !messages.contains(reason) {
                 messages.push(reason.clone());
             }
@@ -190,20 +190,20 @@ impl ChartDone {
 
     /// Adds the maps to the findings.
     pub fn add_to(&self, findings: &mut Findings, plan: &Plan) {
-        let net = &plan.paths[self.at.0];
-        for done in &self.maps {
-            let band = &plan.bands[done.band].name;
-            let chart = &net.charts[self.at.1];
-            let subject = Subject { net, chart, band, frequency_hz: done.frequency_hz };
-            match &done.map {
-                Ok(drawn) => findings.add_map(subject, &done.stem, &drawn.map, &drawn.figures),
-                Err(reason) => findings.add_withheld(subject, reason),
+        for &(chart, ref maps) in &self.rows {
+            for done in maps {
+                let band = &plan.bands[done.band].name;
+                let subject = Subject { net: self.net, chart, band, frequency_hz: done.frequency_hz };
+                match &done.map {
+                    Ok(drawn) => findings.add_map(subject, &done.stem, &drawn.map, &drawn.figures),
+                    Err(reason) => findings.add_withheld(subject, reason),
+                }
             }
         }
     }
 
-    /// The row of the contact sheet.
-    pub fn row<'a>(&self, plan: &'a Plan) -> ContactRow<'a> {
+    /// The rows of the contact sheet.
+    pub fn contact(&self) -> Vec<ContactRow<'a>> {
         let cell = |done: &Done| match &done.map {
             Ok(drawn) => {
                 let ticket = format!("maps/{}.svg", done.stem);
@@ -211,25 +211,28 @@ impl ChartDone {
             }
             Err(reason) => ContactCell::Withheld(reason.text.clone()),
         };
-        let net = &plan.paths[self.at.0];
-        ContactRow { net, chart: &net.charts[self.at.1], cells: self.maps.iter().map(cell).collect() }
+        let row = |(chart, maps): &(&'a ChartPlan, Vec<Done>)| ContactRow {
+            net: self.net,
+            chart,
+            cells: maps.iter().map(cell).collect(),
+        };
+        self.rows.iter().map(row).collect()
     }
 
     /// The entries of the index of numbers.
-    pub fn numbers<'a>(&'a self, plan: &'a Plan) -> Vec<numbers::Numbers<'a>> {
-        let net = &plan.paths[self.at.0];
-        let plane = &net.charts[self.at.1].plane;
-        let entry = |done: &'a Done| match &done.map {
+    pub fn numbers<'s>(&'s self, plan: &'s Plan) -> Vec<numbers::Numbers<'s>> {
+        let entry = |chart: &'s ChartPlan, done: &'s Done| match &done.map {
             Ok(drawn) => numbers::Numbers::Map { stem: &done.stem, map: &drawn.map },
             Err(reason) => numbers::Numbers::Withheld {
-                net: &net.name,
-                plane: Some((plane.layer, &plane.net)),
+                net: &self.net.name,
+                plane: Some((chart.plane.layer, &chart.plane.net)),
                 band: &plan.bands[done.band].name,
                 frequency_hz: done.frequency_hz,
                 reason: &reason.text,
             },
         };
-        self.maps.iter().map(entry).collect()
+        let rows = self.rows.iter();
+        rows.flat_map(|(chart, maps)| maps.iter().map(move |done| entry(chart, done))).collect()
     }
 }
 

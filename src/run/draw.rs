@@ -1,6 +1,6 @@
 //! A whole review: everything that `ebbmap draw` does, without a terminal.
 
-use super::chart::{ChartDone, Charting, cannot_write, frequencies};
+use super::chart::{Charting, PathDone, cannot_write, frequencies};
 use super::input::input_hash;
 use super::name::{MapName, file_stems};
 use super::select::chosen;
@@ -9,7 +9,7 @@ use super::watch::Watch;
 use crate::board::{Board, Origin, Stackup};
 use crate::diag::code::{plan as plan_code, read as read_code, run as code};
 use crate::diag::{Diagnostic, Severity};
-use crate::field::Workshop;
+use crate::field::{Bench, Workshop};
 use crate::plan::{Plan, apply_review, build};
 use crate::read::review::{ReviewFile, read_review};
 use crate::read::{read_board, style};
@@ -126,6 +126,9 @@ fn draw_plan(
 ) -> Result<Ending, Unusable> {
     let Prepared { file, review, board, plan, messages } = prepared;
     let store = Mutex::new(store);
+    let workshop = Workshop::new(board, plan, review.solver.model);
+    // All paths of the review, whatever is drawn: what is charted of each decides the names and numbers of all maps.
+    let benches: Vec<Bench> = plan.paths.par_iter().map(|path| workshop.bench(path)).collect();
     let charting = Charting {
         board,
         review,
@@ -133,19 +136,18 @@ fn draw_plan(
         style: &style.0,
         input_hash: &input_hash(board, review, &file.text, &style.1),
         scale_height_m: scale_height_m(plan),
-        stems: &stems(plan),
-        workshop: &Workshop::new(board, review.solver.model),
+        benches: &benches,
+        stems: &stems(plan, &benches),
         numbers: order.numbers,
         store: &store,
         watch,
     };
-    let nets = (0..plan.paths.len()).filter(|&net| chosen[net]);
-    let charts: Vec<(usize, usize)> =
-        nets.flat_map(|net| (0..plan.paths[net].charts.len()).map(move |chart| (net, chart))).collect();
-    watch.planned(charts.len() * frequencies(plan).len());
-    let done: Result<Vec<ChartDone>, Diagnostic> = charts.par_iter().map(|&at| charting.chart(at)).collect();
+    let paths: Vec<usize> = (0..plan.paths.len()).filter(|&path| chosen[path]).collect();
+    let rows: usize = paths.iter().map(|&path| benches[path].charts().len()).sum();
+    watch.planned(rows * frequencies(plan).len());
+    let done: Result<Vec<PathDone>, Diagnostic> = paths.par_iter().map(|&path| charting.path(path)).collect();
     let done = done.map_err(|failure| tell(watch, &[failure]))?;
-    for message in done.iter().flat_map(ChartDone::messages) {
+    for message in done.iter().flat_map(PathDone::messages) {
         // Nets of one plane share what its cells leave out: said once.
         if messages.contains(&message) {
             continue;
@@ -161,7 +163,7 @@ fn draw_plan(
         board,
         review,
         columns: frequencies(plan).into_iter().map(|(band, hz)| (&plan.bands[band], hz)).collect(),
-        rows: done.iter().map(|done| done.row(plan)).collect(),
+        rows: done.iter().flat_map(PathDone::contact).collect(),
         scale_height_m: charting.scale_height_m,
         style: charting.style,
         input_hash: charting.input_hash,
@@ -185,7 +187,7 @@ fn draw_plan(
     };
     rest().map_err(|failure| tell(watch, &[cannot_write(&failure)]))?;
     let skipped = plan.messages.iter().any(is_skip);
-    let complete = !skipped && done.iter().all(ChartDone::is_complete);
+    let complete = !skipped && done.iter().all(PathDone::is_complete);
     Ok(if complete { Ending::Complete } else { Ending::Incomplete })
 }
 
@@ -200,12 +202,12 @@ fn scale_height_m(plan: &Plan) -> f64 {
     heights(false).or_else(|| heights(true)).unwrap_or(1e-3)
 }
 
-/// File stems by net, chart and frequency, for all maps of the review.
-fn stems(plan: &Plan) -> Vec<Vec<Vec<String>>> {
+/// File stems by path, chart of its bench and frequency, for all maps of the review.
+fn stems(plan: &Plan, benches: &[Bench]) -> Vec<Vec<Vec<String>>> {
     let each = frequencies(plan);
     let mut names = Vec::new();
-    for net in &plan.paths {
-        for chart in &net.charts {
+    for (net, bench) in plan.paths.iter().zip(benches) {
+        for chart in bench.charts() {
             names.extend(each.iter().map(|&(band, hz)| MapName {
                 net: net.name.clone(),
                 plane: chart.plane.to_string(),
@@ -215,7 +217,7 @@ fn stems(plan: &Plan) -> Vec<Vec<Vec<String>>> {
     }
     let mut stems = file_stems(&names).into_iter();
     let of_chart = |stems: &mut std::vec::IntoIter<String>| stems.by_ref().take(each.len()).collect();
-    plan.paths.iter().map(|net| net.charts.iter().map(|_| of_chart(&mut stems)).collect()).collect()
+    benches.iter().map(|bench| bench.charts().iter().map(|_| of_chart(&mut stems)).collect()).collect()
 }
 
 /// The band in a file name: with the frequency where the band is solved at several.

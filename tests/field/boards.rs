@@ -5,7 +5,7 @@ use ebbmap::board::Board;
 use ebbmap::field::{Copper, Mask, PlaneId, Workshop};
 use ebbmap::figure::chart;
 use ebbmap::geom::{Grid, Polygon, Region};
-use ebbmap::plan::{Plan, apply_review, build};
+use ebbmap::plan::{PathPlan, Plan, apply_review, build};
 use ebbmap::read::read_board;
 use ebbmap::review::{Model, NetRequest, Review};
 use std::path::PathBuf;
@@ -141,11 +141,14 @@ fn nets_of_real_boards_are_charted() {
         };
         let mut planned = planned.clone();
         planned.cell_m = planned.cell_m.max(0.25e-3);
-        let workshop = Workshop::new(&board, Model::Sheet);
+        let alone = PathPlan { charts: vec![planned.clone()], ..net.clone() };
+        let alone = Plan { paths: vec![alone], ..Plan::default() };
+        let workshop = Workshop::new(&board, &alone, Model::Sheet);
         let started = std::time::Instant::now();
-        let result = chart(&workshop, net, &planned, &plan.bands, &|_| ());
-        result.notes.iter().for_each(|note| eprintln!("{}", note.text));
-        for charted in result.maps {
+        let bench = workshop.bench(&alone.paths[0]);
+        bench.notes().iter().for_each(|note| eprintln!("{}", note.text));
+        let band = &plan.bands[0];
+        for charted in chart(&bench, &alone.paths[0], band, band.at_hz[0]).planes {
             match charted {
                 Ok(charted) => {
                     let map = &charted.map;

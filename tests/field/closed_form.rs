@@ -1,16 +1,12 @@
 //! The closed form on cells, and the figures of fields that are known.
 
-use crate::scene::{Scene, band};
-use ebbmap::field::Workshop;
-use ebbmap::figure::{ChartResult, Charted, chart, section};
+use crate::scene::{Scene, solved_path};
+use ebbmap::figure::{Charted, section};
 use ebbmap::geom::Point;
 use ebbmap::review::Model;
 
 fn spread(scene: &Scene) -> Charted {
-    let (board, net) = (scene.board(), scene.net());
-    let workshop = Workshop::new(&board, Model::Spread);
-    let ChartResult { mut maps, .. } = chart(&workshop, &net, &net.charts[0], &[band(1e7)], &|_| ());
-    maps.remove(0).unwrap()
+    solved_path(&scene.board(), &scene.plan(), Model::Spread, 1e7).planes.remove(0).unwrap()
 }
 
 #[test]

@@ -1,8 +1,6 @@
 //! The numbers files: readable as NPZ, the same bytes each time, index complete.
 
-use crate::scene::{Scene, band};
-use ebbmap::field::Workshop;
-use ebbmap::figure::chart;
+use crate::scene::{Scene, solved_path};
 use ebbmap::geom::Point;
 use ebbmap::report::numbers::{self, Numbers};
 use ebbmap::review::Model;
@@ -11,10 +9,8 @@ use std::io::Read;
 #[test]
 fn a_map_survives_the_file() {
     let scene = Scene { width: 12.0, height: 7.0, track: vec![(1.0, 3.0), (11.0, 3.0)], ..Scene::default() };
-    let (board, net) = (scene.board(), scene.net());
-    let workshop = Workshop::new(&board, Model::Spread);
-    let maps = chart(&workshop, &net, &net.charts[0], &[band(1e7)], &|_| ()).maps;
-    let map = &maps[0].as_ref().unwrap().map;
+    let charted = solved_path(&scene.board(), &scene.plan(), Model::Spread, 1e7);
+    let map = &charted.planes[0].as_ref().unwrap().map;
     let bytes = numbers::npz(map).unwrap();
     assert_eq!(bytes, numbers::npz(map).unwrap());
     let mut archive = zip::ZipArchive::new(std::io::Cursor::new(bytes)).unwrap();

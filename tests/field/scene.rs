@@ -3,10 +3,11 @@
 use ebbmap::board::{
     Board, CopperArea, CopperLayer, Dielectric, Foil, LayerRole, Net, NetId, Origin, Stackup,
 };
-use ebbmap::field::PlaneId;
+use ebbmap::field::{PlaneId, Workshop};
+use ebbmap::figure::{ChartedPath, chart};
 use ebbmap::geom::{Point, Polygon, Region};
-use ebbmap::plan::{ChartPlan, Landing, PathPlan, TrackLeg, Void};
-use ebbmap::review::Band;
+use ebbmap::plan::{ChartPlan, Landing, PathPlan, Plan, TrackLeg, Void};
+use ebbmap::review::{Band, Model};
 
 /// What a test wants of its board, in mm.
 pub struct Scene {
@@ -80,6 +81,11 @@ impl Scene {
         }
     }
 
+    /// A plan of the one path, without conductors.
+    pub fn plan(&self) -> Plan {
+        Plan { paths: vec![self.net()], ..Plan::default() }
+    }
+
     pub fn net(&self) -> PathPlan {
         let point = |&(x, y): &(f64, f64)| Point::mm(x, y);
         let leg = |ends: &[(f64, f64)]| TrackLeg {
@@ -123,6 +129,13 @@ impl Scene {
             charts: vec![chart],
         }
     }
+}
+
+/// The first path of a plan at one frequency.
+pub fn solved_path(board: &Board, plan: &Plan, model: Model, hertz: f64) -> ChartedPath {
+    let workshop = Workshop::new(board, plan, model);
+    let bench = workshop.bench(&plan.paths[0]);
+    chart(&bench, &plan.paths[0], &band(hertz), hertz)
 }
 
 pub fn band(hertz: f64) -> Band {

@@ -1,6 +1,6 @@
 //! The whole way from a plan to a solved map and its figures, against formulas.
 
-use crate::scene::{Scene, band, disc, rectangle};
+use crate::scene::{Scene, band, disc, rectangle, solved_path};
 use ebbmap::field::{ReturnMap, Workshop};
 use ebbmap::figure::{Charted, chart};
 use ebbmap::review::Model;
@@ -10,11 +10,9 @@ use std::f64::consts::PI;
 const MU0: f64 = 4e-7 * PI;
 
 fn solve(scene: &Scene, hertz: f64) -> Charted {
-    let (board, net) = (scene.board(), scene.net());
-    let workshop = Workshop::new(&board, Model::Sheet);
     let started = std::time::Instant::now();
-    let mut result = chart(&workshop, &net, &net.charts[0], &[band(hertz)], &|_| ());
-    let charted = result.maps.remove(0).unwrap();
+    let mut result = solved_path(&scene.board(), &scene.plan(), Model::Sheet, hertz);
+    let charted = result.planes.remove(0).unwrap();
     let map = &charted.map;
     eprintln!(
         "{} x {} cells at {hertz:e} Hz: {:.1} s, residual {:.1e}",
@@ -293,15 +291,14 @@ fn voids_lengthen_the_return() {
 #[test]
 fn landings_on_two_islands_are_refused() {
     let scene = Scene { voids: vec![], ..Scene::default() };
-    let (mut board, net) = (scene.board(), scene.net());
+    let mut board = scene.board();
     let area = &mut board.layers[1].areas[0];
     area.shape = rectangle(0.0, 0.0, 19.9, 30.0);
     let mut other = area.clone();
     other.shape = rectangle(20.05, 0.0, 40.0, 30.0);
     board.layers[1].areas.push(other);
-    let workshop = Workshop::new(&board, Model::Sheet);
-    let result = chart(&workshop, &net, &net.charts[0], &[band(1e7)], &|_| ());
-    let reason = result.maps[0].as_ref().unwrap_err();
+    let result = solved_path(&board, &scene.plan(), Model::Sheet, 1e7);
+    let reason = result.planes[0].as_ref().unwrap_err();
     assert_eq!(reason.code.name, "landings-apart");
     assert!(reason.text.contains("via of U1.2") && reason.text.contains("L2-GND"), "{}", reason.text);
 }
@@ -324,26 +321,21 @@ fn time_of_a_chart() {
         voids,
         ..Scene::default()
     };
-    let (board, net) = (scene.board(), scene.net());
+    let (board, plan) = (scene.board(), scene.plan());
     for tolerance in [1e-5, 1e-8] {
-        let workshop = Workshop::new(&board, Model::Sheet).with_tolerance(tolerance);
+        let workshop = Workshop::new(&board, &plan, Model::Sheet).with_tolerance(tolerance);
         let started = std::time::Instant::now();
-        let bench = workshop.bench(&net, &net.charts[0]).unwrap();
+        let bench = workshop.bench(&plan.paths[0]);
         eprintln!("set up: {:.2} s", started.elapsed().as_secs_f64());
-        drop(bench);
-        let bands: Vec<_> = [1e5, 1e6, 1e7, 1e8].map(band).into();
-        let last = std::sync::Mutex::new(std::time::Instant::now());
-        let result = chart(&workshop, &net, &net.charts[0], &bands, &|progress| {
-            let mut last = last.lock().unwrap();
-            eprintln!("{}: {:.2} s", progress.band, last.elapsed().as_secs_f64());
-            *last = std::time::Instant::now();
-        });
-        for charted in result.maps {
-            let Charted { map, figures, .. } = charted.unwrap();
+        for hertz in [1e5, 1e6, 1e7, 1e8] {
+            let started = std::time::Instant::now();
+            let mut result = chart(&bench, &plan.paths[0], &band(hertz), hertz);
+            let Charted { map, figures, .. } = result.planes.remove(0).unwrap();
             eprintln!(
-                "{} cells, {}: residual {:.1e}, share {:?}, path {:?}, L {:?}, extra L {:?}",
+                "{} cells, {}: {:.2} s, residual {:.1e}, share {:?}, path {:?}, L {:?}, extra L {:?}",
                 map.grid.len(),
                 map.band,
+                started.elapsed().as_secs_f64(),
                 map.residual.unwrap(),
                 figures.share_3h,
                 figures.extra_path_m,

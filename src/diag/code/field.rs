@@ -10,6 +10,14 @@ pub const LANDINGS_APART: Code = Code {
               one island with `driver_landing` and `receiver_landing`, or name another plane.",
 };
 
+/// The return finds no way between the places where it enters the copper.
+pub const RETURN_OPEN: Code = Code {
+    name: "return-does-not-close",
+    meaning: "The current enters copper that no copper, via, tie or part joins to where it must leave, at the \
+              frequency of the band (a capacitor joins nothing at DC). No current does that, so no map is drawn. Join \
+              the copper on the board, or tell of what joins it.",
+};
+
 /// A landing is nowhere near the plane's copper.
 pub const LANDING_OFF_COPPER: Code = Code {
     name: "landing-off-copper",
@@ -56,6 +64,7 @@ pub const NOT_FACTORED: Code = Code {
 /// All codes of this room.
 pub const ALL: &[Code] = &[
     LANDINGS_APART,
+    RETURN_OPEN,
     LANDING_OFF_COPPER,
     CELL_TOO_LARGE,
     CELL_HALVED,
