@@ -1,17 +1,19 @@
 //! From a board and a review to the plan: each net's way, planes, landings, voids and cells.
 
 use super::cell::{self, CellChoice};
+use super::course::{self, Course};
+use super::entry;
 use super::landing::{Landed, Landings};
-use super::request::{self, Ends};
+use super::route::{self, Way};
 use super::stretch::{self, Stretch};
 use super::terrain::Terrain;
-use super::{ChartPlan, Landing, PathPlan, Plan, TrackLeg, Void, route, void};
+use super::{ChartPlan, Entry, Landing, PathPlan, Plan, TrackLeg, Void, void};
 use crate::board::Board;
 use crate::diag::Diagnostic;
 use crate::diag::code::plan as code;
 use crate::field::PlaneId;
 use crate::geom::{Bounds, Point, Region};
-use crate::review::{NetRequest, Review};
+use crate::review::Review;
 use crate::unit::length_text;
 use std::collections::BTreeMap;
 
@@ -22,21 +24,14 @@ const BESIDE_HEIGHTS: f64 = 3.0;
 /// stackup.
 pub fn build(board: &Board, review: &Review) -> Plan {
     let mut planner = Planner::new(board, review);
-    let requests = request::expand(board, review, &mut planner.messages);
-    let mut nets = Vec::new();
-    for (net, request) in requests {
-        let planned = request::ends(board, review, net, request).and_then(|ends| planner.net(&ends, request));
-        match planned {
-            Ok(net) => nets.push(net),
+    let mut paths = Vec::new();
+    for course in course::courses(board, review, &mut planner.messages) {
+        match planner.path(&course) {
+            Ok(path) => paths.push(path),
             Err(message) => planner.messages.push(message),
         }
     }
-    Plan {
-        paths: nets,
-        conductors: Default::default(),
-        bands: review.bands.clone(),
-        messages: planner.messages,
-    }
+    Plan { paths, conductors: Default::default(), bands: review.bands.clone(), messages: planner.messages }
 }
 
 /// Copper, voids and box of a plane, kept for all nets over it.
@@ -73,48 +68,47 @@ impl<'b> Planner<'b> {
         Self { terrain, review, grounds: BTreeMap::new(), messages }
     }
 
-    fn net(&mut self, ends: &Ends, request: &NetRequest) -> Result<PathPlan, Diagnostic> {
+    fn path(&mut self, course: &Course<'_>) -> Result<PathPlan, Diagnostic> {
         let board = self.terrain.board;
-        let name = board.net_name(ends.net).to_owned();
-        let route = route::find(&self.terrain, ends, self.review.origin)
-            .map_err(|message| self.in_review(message, request, "name"))?;
-        let (legs, stretches) = match &request.plane {
-            None => stretch::divide(&self.terrain, &name, &route.legs),
-            Some(plane) => self.on_plane(plane, &name, request, route.legs)?,
+        let mut way = Way::default();
+        for line in &course.lines {
+            let found = route::find(&self.terrain, &course.who, line, self.review.origin)
+                .map_err(|message| course.in_review("name", message))?;
+            way.join(found);
+        }
+        let (legs, stretches) = match course.plane {
+            None => stretch::divide(&self.terrain, &course.own_nets(&self.terrain), &way.legs),
+            Some(plane) => self.on_plane(plane, course, std::mem::take(&mut way.legs))?,
         };
-        self.messages.extend(route.notes);
+        self.messages.append(&mut way.notes);
         let mut charts: Vec<ChartPlan> = Vec::new();
         for stretch in &stretches {
-            charts.push(self.chart(&name, &legs, stretch));
+            charts.push(self.chart(&course.who, &legs, stretch));
         }
-        self.land(ends, request, &name, &legs, &mut charts);
+        let entries = self.land(course, &way, &legs, &mut charts);
+        let label = |pin: crate::board::PinId| board.pins[pin.0 as usize].label();
         Ok(PathPlan {
-            name,
-            driver: board.pins[ends.driver.0 as usize].label(),
-            receiver: board.pins[ends.receiver.0 as usize].label(),
+            name: course.name.clone(),
+            driver: label(course.lines[0].driver),
+            receiver: label(course.lines[0].receiver()),
             track: legs,
-            entries: Vec::new(),
+            entries,
             joints: Vec::new(),
             charts,
         })
-    }
-
-    fn in_review(&self, message: Diagnostic, request: &NetRequest, key: &str) -> Diagnostic {
-        if message.place.at.is_some() { message } else { request::at_key(self.review, request, key, message) }
     }
 
     /// One stretch over the plane that the review names.
     fn on_plane(
         &mut self,
         wanted: &str,
-        net: &str,
-        request: &NetRequest,
+        course: &Course<'_>,
         legs: Vec<TrackLeg>,
     ) -> Result<(Vec<TrackLeg>, Vec<Stretch>), Diagnostic> {
         let board = self.terrain.board;
         let bad = |why: String| {
-            let text = format!("plane `{wanted}` of net `{net}` must be a plane of the board; {why}");
-            Err(request::at_key(self.review, request, "plane", Diagnostic::error(code::PLANE_UNKNOWN, text)))
+            let text = format!("plane `{wanted}` of {} must be a plane of the board; {why}", course.who);
+            Err(course.at_key("plane", Diagnostic::error(code::PLANE_UNKNOWN, text)))
         };
         let parsed = wanted.strip_prefix('L').and_then(|rest| rest.split_once('-'));
         let layer = parsed.and_then(|(layer, _)| layer.parse::<usize>().ok()).and_then(|n| n.checked_sub(1));
@@ -143,22 +137,23 @@ impl<'b> Planner<'b> {
         if legs.iter().any(|leg| leg.layer == layer) {
             return bad(format!("the track itself runs on L{}", layer + 1));
         }
-        let (_, nearest) = stretch::divide(&self.terrain, net, &legs);
+        let (_, nearest) = stretch::divide(&self.terrain, &course.own_nets(&self.terrain), &legs);
         for other in
             nearest.iter().filter_map(|stretch| stretch.plane.as_ref()).filter(|other| **other != plane)
         {
             let text = format!(
-                "net `{net}` is charted on `{plane}` as the review asks; nearer to the track is `{other}`"
+                "{} is charted on `{plane}` as the review asks; nearer to the track is `{other}`",
+                course.who
             );
             let message = Diagnostic::warning(code::PLANE_CHOSEN, text);
-            self.messages.push(request::at_key(self.review, request, "plane", message));
+            self.messages.push(course.at_key("plane", message));
         }
         let stretch = Stretch { plane: Some(plane), legs: 0..legs.len(), between: None };
         Ok((legs, vec![stretch]))
     }
 
     /// A chart without its landings.
-    fn chart(&mut self, net: &str, legs: &[TrackLeg], stretch: &Stretch) -> ChartPlan {
+    fn chart(&mut self, who: &str, legs: &[TrackLeg], stretch: &Stretch) -> ChartPlan {
         let own = &legs[stretch.legs.clone()];
         let start = own.first().map_or(Point::default(), |leg| leg.from);
         let nowhere = Landing { at: start, radius_m: 0.0, what: "none".into() };
@@ -177,7 +172,7 @@ impl<'b> Planner<'b> {
             withheld: None,
         };
         let Some(plane) = &stretch.plane else {
-            let text = format!("no copper area lies above or below the track of net `{net}` here");
+            let text = format!("no copper area lies above or below the track of {who} here");
             chart.withheld =
                 Some(Diagnostic::warning(code::PLANE_NONE, text).on_board(Some(layer + 1), start));
             return chart;
@@ -188,7 +183,7 @@ impl<'b> Planner<'b> {
         let plane_net = self.terrain.board.net(&plane.net);
         if !self.terrain.is_reference(plane_net) {
             let text = format!(
-                "net `{net}`: the copper area nearest to its track on L{}, {} away, is `{plane}`, and `{}` is not a \
+                "{who}: the copper area nearest to its track on L{}, {} away, is `{plane}`, and `{}` is not a \
                  reference net; the return flows there first, so a map of the plane behind it would be wrong",
                 layer + 1,
                 length_text(chart.height_m),
@@ -207,19 +202,19 @@ impl<'b> Planner<'b> {
         if let Some(between) = &stretch.between {
             let gap_m = cell::mean(own, |leg| stackup.gap_m(leg.layer, between.layer));
             let text = format!(
-                "net `{net}` lies between `{plane}`, {} away, and `{between}`, {} away, which takes a part of the \
+                "{who} lies between `{plane}`, {} away, and `{between}`, {} away, which takes a part of the \
                  return; only `{plane}` is charted",
                 length_text(chart.height_m),
                 length_text(gap_m)
             );
             self.messages.push(Diagnostic::warning(code::PLANE_BETWEEN, text));
         }
-        self.pour_beside(net, own, chart.height_m);
-        self.set_cells(net, own, plane, &mut chart);
+        self.pour_beside(who, own, chart.height_m);
+        self.set_cells(who, own, plane, &mut chart);
         chart
     }
 
-    fn set_cells(&mut self, net: &str, own: &[TrackLeg], plane: &PlaneId, chart: &mut ChartPlan) {
+    fn set_cells(&mut self, who: &str, own: &[TrackLeg], plane: &PlaneId, chart: &mut ChartPlan) {
         let board = self.terrain.board;
         let ground = self.grounds.entry(plane.clone()).or_insert_with(|| {
             let copper = void::plane_copper(board, plane);
@@ -242,7 +237,7 @@ impl<'b> Planner<'b> {
         (chart.unknowns, chart.memory_bytes) = cell::cost(ground.bounds, ground.copper.area(), choice.cell_m);
         if choice.enlarged {
             let text = format!(
-                "net `{net}` on `{plane}` is planned on cells of {}, more than its height of {}, to fit into memory",
+                "{who} on `{plane}` is planned on cells of {}, more than its height of {}, to fit into memory",
                 length_text(choice.cell_m),
                 length_text(chart.height_m)
             );
@@ -251,7 +246,7 @@ impl<'b> Planner<'b> {
     }
 
     /// States over which length reference copper lies beside the track on its own layer.
-    fn pour_beside(&mut self, net: &str, legs: &[TrackLeg], height_m: f64) {
+    fn pour_beside(&mut self, who: &str, legs: &[TrackLeg], height_m: f64) {
         const STEP_M: f64 = 0.25e-3;
         let (mut beside_m, mut total_m) = (0.0, 0.0);
         for leg in legs {
@@ -268,7 +263,7 @@ impl<'b> Planner<'b> {
         }
         if beside_m > 0.0 {
             let text = format!(
-                "reference copper lies within {} (3h) of net `{net}` on its own layer over {} of {}; its part of the \
+                "reference copper lies within {} (3h) of {who} on its own layer over {} of {}; its part of the \
                  return is not in the map",
                 length_text(BESIDE_HEIGHTS * height_m),
                 length_text(beside_m),
@@ -278,15 +273,28 @@ impl<'b> Planner<'b> {
         }
     }
 
-    /// Fills in the landings; a chart that gets none is withheld.
+    /// Fills in the landings and gives the entries of a path over one plane; a chart that gets none is withheld.
     fn land(
         &mut self,
-        ends: &Ends,
-        request: &NetRequest,
-        net: &str,
+        course: &Course<'_>,
+        way: &Way,
         legs: &[TrackLeg],
         charts: &mut [ChartPlan],
-    ) {
+    ) -> Vec<Entry> {
+        if let [chart] = charts {
+            return self.land_on_one(course, way, chart);
+        }
+        if course.lines.len() > 1 || course.lines[0].receivers.len() > 1 || way.ports.len() != 2 {
+            for chart in charts.iter_mut().filter(|chart| chart.withheld.is_none()) {
+                let text = format!("{} passes several planes and meets them at several places", course.who);
+                let at = legs[chart.legs.start].from;
+                chart.withheld = Some(
+                    Diagnostic::warning(code::PLANES_APART, text).on_board(Some(chart.plane.layer + 1), at),
+                );
+            }
+            return Vec::new();
+        }
+        let who = &course.who;
         let planes: Vec<PlaneId> = charts.iter().map(|chart| chart.plane.clone()).collect();
         let open: Vec<bool> = charts.iter().map(|chart| chart.withheld.is_none()).collect();
         let landings: Vec<Landings<'_, '_>> =
@@ -298,8 +306,7 @@ impl<'b> Planner<'b> {
             .map(|k| {
                 let at = legs[charts[k].legs.end - 1].to;
                 let apart = |why: String| {
-                    let text =
-                        format!("net `{net}` changes from `{}` to `{}`; {why}", planes[k], planes[k + 1]);
+                    let text = format!("{who} changes from `{}` to `{}`; {why}", planes[k], planes[k + 1]);
                     let layer = legs[charts[k].legs.end - 1].layer;
                     Diagnostic::warning(code::PLANES_APART, text).on_board(Some(layer + 1), at)
                 };
@@ -319,27 +326,27 @@ impl<'b> Planner<'b> {
             }
             let driver = if k == 0 {
                 landings[k]
-                    .at_pin(ends.driver, request.driver_landing.as_ref(), "driver_landing")
-                    .map_err(|message| self.in_review(message, request, "driver_landing"))
+                    .at_pin(course.lines[0].driver, course.driver_landing, "driver_landing")
+                    .map_err(|message| course.in_review("driver_landing", message))
             } else {
                 joints[k - 1].clone().map(|joint| joint.1)
             };
             let receiver = if k == last {
                 landings[k]
-                    .at_pin(ends.receiver, request.receiver_landing.as_ref(), "receiver_landing")
-                    .map_err(|message| self.in_review(message, request, "receiver_landing"))
+                    .at_pin(course.lines[0].receiver(), course.receiver_landing, "receiver_landing")
+                    .map_err(|message| course.in_review("receiver_landing", message))
             } else {
                 joints[k].clone().map(|joint| joint.0)
             };
             match (driver, receiver) {
                 (Ok(driver), Ok(receiver)) => {
                     if driver.area != receiver.area {
-                        chart.withheld = Some(self.on_islands(net, chart, &driver, &receiver));
+                        chart.withheld = Some(self.on_islands(who, chart, &driver, &receiver));
                     }
                     for assumed in
                         [&driver, &receiver].into_iter().filter_map(|landed| landed.assumed.clone())
                     {
-                        let text = format!("net `{net}`: {assumed}");
+                        let text = format!("{who}: {assumed}");
                         notes.push(Diagnostic::note(code::LANDING_NEAREST_VIA, text));
                     }
                     chart.driver_landing = driver.landing;
@@ -349,16 +356,44 @@ impl<'b> Planner<'b> {
             }
         }
         self.messages.extend(notes);
+        Vec::new()
     }
 
-    fn on_islands(&self, net: &str, chart: &ChartPlan, driver: &Landed, receiver: &Landed) -> Diagnostic {
+    /// Landings and entries of a path over one plane.
+    fn land_on_one(&mut self, course: &Course<'_>, way: &Way, chart: &mut ChartPlan) -> Vec<Entry> {
+        if chart.withheld.is_some() {
+            return Vec::new();
+        }
+        let plane = chart.plane.clone();
+        let landings = Landings::new(&self.terrain, &plane);
+        let (landed, notes) = match entry::land(&landings, course, &way.ports) {
+            Ok(found) => found,
+            Err(message) => {
+                chart.withheld = Some(message);
+                return Vec::new();
+            }
+        };
+        // The picture shows where most of the return enters and where most of it leaves.
+        let most = |sign: f64| landed.iter().max_by(|a, b| (sign * a.1).total_cmp(&(sign * b.1)));
+        if let (Some(driver), Some(receiver)) = (most(-1.0), most(1.0)) {
+            chart.driver_landing = driver.0.landing.clone();
+            chart.receiver_landing = receiver.0.landing.clone();
+            if let Some(other) = landed.iter().find(|other| other.0.area != driver.0.area) {
+                chart.withheld = Some(self.on_islands(&course.who, chart, &driver.0, &other.0));
+            }
+        }
+        self.messages.extend(notes);
+        entry::entries(plane.layer, &landed)
+    }
+
+    fn on_islands(&self, who: &str, chart: &ChartPlan, driver: &Landed, receiver: &Landed) -> Diagnostic {
         let island = |landed: &Landed| {
             let shape = &self.terrain.board.layers[chart.plane.layer].areas[landed.area].shape;
             let at = (shape.bounds().centre() - self.review.origin) * 1e3;
             format!("the piece of {:.1} mm2 round {:.1}, {:.1}", shape.area() * 1e6, at.x, at.y)
         };
         let text = format!(
-            "net `{net}`: its return leaves `{}` at `{}` on {}, and enters it at `{}` on {}; these are not connected \
+            "{who}: its return leaves `{}` at `{}` on {}, and enters it at `{}` on {}; these are not connected \
              on that layer",
             chart.plane,
             driver.landing.what,

@@ -39,6 +39,11 @@ impl<'t, 'b> Landings<'t, 'b> {
         Self { terrain, plane, vias: terrain.vias_to(plane) }
     }
 
+    /// The plane.
+    pub fn plane(&self) -> &PlaneId {
+        self.plane
+    }
+
     /// The landing at a signal's pin; `key` is the key of the review that would name it.
     pub fn at_pin(
         &self,

@@ -3,6 +3,8 @@
 mod build;
 mod cell;
 mod copper;
+mod course;
+mod entry;
 mod graph;
 mod landing;
 mod request;

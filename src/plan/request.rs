@@ -1,21 +1,11 @@
 //! What the review asks for, against the board: patterns become nets, names of pins become pins, overrides go in.
 
+use super::course::Line;
 use crate::board::{Board, NetId, Origin, PinId};
 use crate::diag::code::{plan as code, review as review_code};
 use crate::diag::{Diagnostic, nearest};
 use crate::review::{NetRequest, Review};
 use crate::unit::length_text;
-
-/// A net to chart with its two pins.
-#[derive(Clone, Debug)]
-pub struct Ends {
-    /// The net.
-    pub net: NetId,
-    /// Pin that drives.
-    pub driver: PinId,
-    /// Pin that receives.
-    pub receiver: PinId,
-}
 
 /// Puts the review's title, revision and stackup into the board. Each value that replaces one of the files is a note.
 pub fn apply_review(board: &mut Board, review: &Review) -> Vec<Diagnostic> {
@@ -161,8 +151,8 @@ pub fn expand<'r>(
     found
 }
 
-/// Driver and receiver of a net: those of the request, or its only two pins.
-pub fn ends(board: &Board, review: &Review, net: NetId, request: &NetRequest) -> Result<Ends, Diagnostic> {
+/// The line of a net from its driver to its receiver: those of the request, or its only two pins.
+pub fn ends(board: &Board, review: &Review, net: NetId, request: &NetRequest) -> Result<Line, Diagnostic> {
     let name = board.net_name(net);
     let pins: Vec<PinId> = (0..board.pins.len())
         .filter(|&index| board.pins[index].net == Some(net))
@@ -204,7 +194,9 @@ pub fn ends(board: &Board, review: &Review, net: NetId, request: &NetRequest) ->
         both => both,
     };
     match (driver, receiver) {
-        (Some(driver), Some(receiver)) => Ok(Ends { net, driver, receiver }),
+        (Some(driver), Some(receiver)) => {
+            Ok(Line { driver, through: Vec::new(), receivers: vec![(receiver, 1.0)], current: 1.0 })
+        }
         (driver, _) => {
             let missing = if driver.is_none() && receiver.is_none() {
                 "`driver` and `receiver`"

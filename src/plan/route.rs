@@ -1,11 +1,17 @@
-//! The way of a signal through the copper of its net, from driver to receiver, and what hangs on it.
+//! The way of a signal through parts and the copper of its nets, from driver to receivers, and what hangs on it.
+//!
+//! In one net the current takes the shortest way through draws, pads, barrels and filled copper; with several receivers
+//! the ways form a tree whose legs carry the sum of the shares behind them. Between two nets it passes a part straight
+//! from pad to pad. Where the way runs in copper that is solved as a sheet (a reference net, or a large area of its own
+//! net), there are no legs: the current enters the sheet at one port and leaves it at another.
 
 use super::TrackLeg;
 use super::copper::NetCopper;
+use super::course::{Line, net_of};
 use super::graph::{Graph, Run};
-use super::request::Ends;
 use super::terrain::Terrain;
-use crate::board::PinId;
+use super::touch::extent_across;
+use crate::board::{NetId, PinId};
 use crate::diag::Diagnostic;
 use crate::diag::code::plan as code;
 use crate::geom::Point;
@@ -18,80 +24,257 @@ const BRANCH_M: f64 = 0.5e-3;
 const LOOP_M: f64 = 1.5e-3;
 /// Most branches that a note lists.
 const LISTED: usize = 6;
+/// Radius of a port where nothing tells one, in metres.
+const PORT_RADIUS_M: f64 = 0.15e-3;
 
 /// The way of a signal.
 #[derive(Clone, Debug, Default)]
-pub struct Route {
-    /// Its straight pieces; where the layer changes between two, a barrel joins them.
+pub struct Way {
+    /// Its straight pieces; where the layer changes between two, a barrel joins them. Branches follow the way that
+    /// they leave.
     pub legs: Vec<TrackLeg>,
-    /// Branches, loops, pours and further receivers, stated.
+    /// Where its current meets the conductors; the currents sum to zero.
+    pub ports: Vec<Port>,
+    /// Parts passed, branches, loops, pours and further receivers, stated.
     pub notes: Vec<Diagnostic>,
 }
 
-/// Finds the way between two pins of a net.
-pub fn find(terrain: &Terrain<'_>, ends: &Ends, origin: Point) -> Result<Route, Diagnostic> {
-    let copper = NetCopper::of(terrain, ends.net);
-    let graph = Graph::new(&copper, &terrain.board.stackup);
-    let name = terrain.board.net_name(ends.net);
-    let no_copper = |pin: PinId| {
-        let label = terrain.board.pins[pin.0 as usize].label();
-        let text =
-            format!("pin `{label}` of net `{name}` must have copper in the fabrication data; it has none");
-        Diagnostic::error(code::TRACK_OPEN, text)
-    };
-    let sources = graph.pins.get(&ends.driver).ok_or_else(|| no_copper(ends.driver))?;
-    let targets = graph.pins.get(&ends.receiver).ok_or_else(|| no_copper(ends.receiver))?;
-    let best = graph.distances(sources, |_| false);
-    let target = targets.iter().copied().min_by(|&a, &b| best[a].0.total_cmp(&best[b].0).then(a.cmp(&b)));
-    let target = target.filter(|&node| best[node].0.is_finite());
-    let Some(target) = target else { return Err(open_track(terrain, &graph, ends, &best)) };
-    let mut edges = Vec::new();
-    let mut nodes = vec![target];
-    let mut node = target;
-    while let Some(index) = best[node].1 {
-        node = graph.edges[index].a + graph.edges[index].b - node;
-        edges.push(index);
-        nodes.push(node);
+/// A place where current of a way enters the conductors (positive) or leaves them.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Port {
+    /// Where.
+    pub place: PortPlace,
+    /// Current into the conductors in A per A of the driver's current.
+    pub current: f64,
+}
+
+/// Where a port is.
+#[derive(Clone, Debug, PartialEq)]
+pub enum PortPlace {
+    /// Where the return leaves the conductors for the driver with this pin.
+    Driver(PinId),
+    /// Where the return enters them at the receiver with this pin.
+    Receiver(PinId),
+    /// A pin of a reference net that the way itself passes.
+    Pin(PinId),
+    /// Where the way meets a large area of its own net.
+    Area {
+        /// Layer, index from 0.
+        layer: usize,
+        /// Index of the area in the layer's `areas`.
+        area: usize,
+        /// Middle.
+        at: Point,
+        /// Radius in metres.
+        radius_m: f64,
+    },
+}
+
+/// A part of a way in one net.
+struct Section {
+    net: NetId,
+    from: PinId,
+    to: Vec<(PinId, f64)>,
+}
+
+/// Finds the way of a line; `who` names its course in texts.
+pub fn find(terrain: &Terrain<'_>, who: &str, line: &Line, origin: Point) -> Result<Way, Diagnostic> {
+    let mut way = Way::default();
+    let mut at = line.driver;
+    let mut parts = Vec::new();
+    for &(enter, leave) in &line.through {
+        way.add_section(terrain, at, &[(enter, 1.0)], origin)?;
+        way.add_crossing(terrain, enter, leave);
+        parts.push(terrain.board.pins[enter.0 as usize].part.as_str());
+        at = leave;
     }
-    edges.reverse();
-    nodes.reverse();
-    let mut route = Route::default();
-    let mut poured_m = 0.0;
-    for (pair, &index) in nodes.windows(2).zip(&edges) {
-        let edge = &graph.edges[index];
-        if edge.run == Run::Barrel {
-            continue;
-        }
-        let mut width_m = edge.width_m;
-        if edge.run == Run::Pour {
-            poured_m += edge.length_m;
-            let narrowest =
-                copper.segments.iter().map(|segment| segment.width_m).fold(f64::INFINITY, f64::min);
-            let fallback = if narrowest.is_finite() { narrowest } else { 0.2e-3 };
-            width_m = graph.pour_width_m(&copper, edge).unwrap_or(fallback);
-        }
-        let leg = TrackLeg {
-            from: graph.nodes[pair[0]].1,
-            to: graph.nodes[pair[1]].1,
-            layer: graph.nodes[pair[0]].0,
-            width_m,
-            current: 1.0,
-        };
-        push_leg(&mut route.legs, leg);
-    }
-    if route.legs.is_empty() {
-        let text = format!("track of net `{name}` must have a length; its pins lie on top of each other");
+    way.add_section(terrain, at, &line.receivers, origin)?;
+    if way.legs.is_empty() {
+        let text = format!("track of {who} must have a length; its pins lie on top of each other");
         return Err(Diagnostic::error(code::TRACK_OPEN, text));
     }
-    if poured_m > 0.0 {
-        let text = format!(
-            "track of net `{name}` runs {} across filled copper of its own; a straight line across it is taken",
-            length_text(poured_m)
-        );
-        route.notes.push(Diagnostic::note(code::TRACK_ACROSS_AREA, text));
+    for &(pin, share) in line.receivers.iter().filter(|receiver| receiver.0 != line.driver) {
+        way.ports.push(Port { place: PortPlace::Driver(line.driver), current: -share });
+        way.ports.push(Port { place: PortPlace::Receiver(pin), current: share });
     }
-    route.notes.extend(branches(terrain, &graph, ends, &nodes, &edges, origin));
-    Ok(route)
+    if !parts.is_empty() {
+        let text = format!(
+            "{who} passes {} straight from pad to pad, in the height of the track",
+            listed_names(&parts)
+        );
+        way.notes.push(Diagnostic::note(code::PATH_THROUGH_PARTS, text));
+    }
+    for leg in &mut way.legs {
+        leg.current *= line.current;
+    }
+    let mut ports: Vec<Port> = Vec::new();
+    for port in way.ports {
+        match ports.iter_mut().find(|known| known.place == port.place) {
+            Some(known) => known.current += port.current * line.current,
+            None => ports.push(Port { current: port.current * line.current, ..port }),
+        }
+    }
+    ports.retain(|port| port.current != 0.0);
+    way.ports = ports;
+    Ok(way)
+}
+
+fn listed_names(names: &[&str]) -> String {
+    names.iter().map(|name| format!("`{name}`")).collect::<Vec<_>>().join(", ")
+}
+
+impl Way {
+    /// Adds the way of another line of the same course; the two of a pair share their landings, so that only the
+    /// difference of their currents lands.
+    pub fn join(&mut self, other: Way) {
+        self.legs.extend(other.legs);
+        self.notes.extend(other.notes);
+        let same_end = |a: &PortPlace, b: &PortPlace| {
+            matches!(
+                (a, b),
+                (PortPlace::Driver(_), PortPlace::Driver(_))
+                    | (PortPlace::Receiver(_), PortPlace::Receiver(_))
+            )
+        };
+        let own = self.ports.len();
+        for port in other.ports {
+            let shared = |known: &&mut Port| known.place == port.place || same_end(&known.place, &port.place);
+            match self.ports[..own].iter_mut().find(shared) {
+                Some(known) => known.current += port.current,
+                None => self.ports.push(port),
+            }
+        }
+        const NOTHING: f64 = 1e-12;
+        self.ports.retain(|port| port.current.abs() > NOTHING);
+    }
+
+    /// Adds the way in one net from a pin to one or several others.
+    fn add_section(
+        &mut self,
+        terrain: &Terrain<'_>,
+        from: PinId,
+        to: &[(PinId, f64)],
+        origin: Point,
+    ) -> Result<(), Diagnostic> {
+        let to: Vec<(PinId, f64)> = to.iter().copied().filter(|end| end.0 != from).collect();
+        // Pins without a net were refused with the review's entry.
+        let Some(net) = net_of(terrain.board, from).filter(|_| !to.is_empty()) else { return Ok(()) };
+        if terrain.is_reference(Some(net)) {
+            for (pin, share) in to {
+                self.ports.push(Port { place: PortPlace::Pin(from), current: share });
+                self.ports.push(Port { place: PortPlace::Pin(pin), current: -share });
+            }
+            return Ok(());
+        }
+        self.add_tracks(terrain, &Section { net, from, to }, origin)
+    }
+
+    /// Adds the straight leg from pad to pad of a part.
+    fn add_crossing(&mut self, terrain: &Terrain<'_>, enter: PinId, leave: PinId) {
+        let [enter, leave] = [enter, leave].map(|pin| &terrain.board.pins[pin.0 as usize]);
+        let across = |shape| extent_across(shape, enter.at, leave.at);
+        let width_m = across(&enter.pad).min(across(&leave.pad));
+        push_leg(
+            &mut self.legs,
+            TrackLeg { from: enter.at, to: leave.at, layer: enter.layer, width_m, current: 1.0 },
+        );
+    }
+
+    fn add_tracks(
+        &mut self,
+        terrain: &Terrain<'_>,
+        section: &Section,
+        origin: Point,
+    ) -> Result<(), Diagnostic> {
+        let copper = NetCopper::of(terrain, section.net);
+        let graph = Graph::new(&copper, &terrain.board.stackup);
+        let name = terrain.board.net_name(section.net);
+        let nodes_of = |pin: PinId| {
+            graph.pins.get(&pin).ok_or_else(|| {
+                let label = terrain.board.pins[pin.0 as usize].label();
+                let text = format!(
+                    "pin `{label}` of net `{name}` must have copper in the fabrication data; it has none"
+                );
+                Diagnostic::error(code::TRACK_OPEN, text)
+            })
+        };
+        let sources = nodes_of(section.from)?;
+        let best = graph.distances(sources, |_| false);
+        // Ways in the order of their shares, so that a branch leaves a way that is already there.
+        let mut ends = section.to.clone();
+        ends.sort_by(|a, b| b.1.total_cmp(&a.1));
+        let mut ways: Vec<Vec<(usize, usize)>> = Vec::new();
+        let mut carried: BTreeMap<usize, f64> = BTreeMap::new();
+        for &(pin, share) in &ends {
+            let nearest = nodes_of(pin)?
+                .iter()
+                .copied()
+                .min_by(|&a, &b| best[a].0.total_cmp(&best[b].0).then(a.cmp(&b)));
+            let Some(target) = nearest.filter(|&node| best[node].0.is_finite()) else {
+                return Err(open_track(terrain, &graph, section, pin, &best));
+            };
+            // Edges from the source to the pin, each with the node where it starts.
+            let mut steps = Vec::new();
+            let mut node = target;
+            while let Some(index) = best[node].1 {
+                node = graph.edges[index].a + graph.edges[index].b - node;
+                steps.push((node, index));
+                *carried.entry(index).or_default() += share;
+            }
+            steps.reverse();
+            ways.push(steps);
+        }
+        let mut walked = BTreeSet::new();
+        let mut poured_m = 0.0;
+        let narrowest = copper.segments.iter().map(|segment| segment.width_m).fold(f64::INFINITY, f64::min);
+        let narrowest = if narrowest.is_finite() { narrowest } else { 2.0 * PORT_RADIUS_M };
+        for steps in &ways {
+            for (k, &(node, index)) in steps.iter().enumerate() {
+                let edge = &graph.edges[index];
+                if !walked.insert(index) || edge.run == Run::Barrel {
+                    continue;
+                }
+                let current = carried[&index];
+                let next = edge.a + edge.b - node;
+                let (layer, from, to) = (graph.nodes[node].0, graph.nodes[node].1, graph.nodes[next].1);
+                if edge.run == Run::Pour
+                    && let Some(area) = [from, to].into_iter().find_map(|at| {
+                        terrain
+                            .copper_of_net(layer, at, section.net)
+                            .filter(|&area| terrain.is_sheet(layer, area))
+                    })
+                {
+                    let width_m = |step: Option<&(usize, usize)>| {
+                        let edge = &graph.edges[step?.1];
+                        (edge.run != Run::Pour).then_some(edge.width_m)
+                    };
+                    let mut port = |at, step, current| {
+                        let radius_m = width_m(step).map_or(PORT_RADIUS_M, |width_m| 0.5 * width_m);
+                        self.ports
+                            .push(Port { place: PortPlace::Area { layer, area, at, radius_m }, current });
+                    };
+                    port(from, k.checked_sub(1).and_then(|before| steps.get(before)), current);
+                    port(to, steps.get(k + 1), -current);
+                    continue;
+                }
+                let mut width_m = edge.width_m;
+                if edge.run == Run::Pour {
+                    poured_m += edge.length_m;
+                    width_m = graph.pour_width_m(&copper, edge).unwrap_or(narrowest);
+                }
+                push_leg(&mut self.legs, TrackLeg { from, to, layer, width_m, current });
+            }
+        }
+        if poured_m > 0.0 {
+            let text = format!(
+                "track of net `{name}` runs {} across filled copper of its own; a straight line across it is taken",
+                length_text(poured_m)
+            );
+            self.notes.push(Diagnostic::note(code::TRACK_ACROSS_AREA, text));
+        }
+        self.notes.extend(branches(terrain, &graph, section, sources, &ways, origin));
+        Ok(())
+    }
 }
 
 /// Adds a leg, or lengthens the last one where it goes straight on.
@@ -103,6 +286,7 @@ fn push_leg(legs: &mut Vec<TrackLeg>, leg: TrackLeg) {
         && last.layer == leg.layer
         && last.to == leg.from
         && (last.width_m - leg.width_m).abs() <= 1e-9
+        && last.current == leg.current
     {
         let (a, b) = (last.to - last.from, leg.to - leg.from);
         if a.dot(b) > 0.0 && a.cross(b).abs() <= 1e-9 * a.length() {
@@ -117,12 +301,13 @@ fn push_leg(legs: &mut Vec<TrackLeg>, leg: TrackLeg) {
 fn open_track(
     terrain: &Terrain<'_>,
     graph: &Graph,
-    ends: &Ends,
+    section: &Section,
+    target: PinId,
     best: &[(f64, Option<usize>)],
 ) -> Diagnostic {
     let label = |pin: PinId| terrain.board.pins[pin.0 as usize].label();
-    let name = terrain.board.net_name(ends.net);
-    let from_target = graph.distances(&graph.pins[&ends.receiver], |_| false);
+    let name = terrain.board.net_name(section.net);
+    let from_target = graph.distances(&graph.pins[&target], |_| false);
     let reached = |best: &[(f64, Option<usize>)]| -> Vec<usize> {
         (0..best.len()).filter(|&node| best[node].0.is_finite()).collect()
     };
@@ -140,11 +325,11 @@ fn open_track(
     }
     let text = format!(
         "copper of net `{name}` must lead from `{}` to `{}`; it does not",
-        label(ends.driver),
-        label(ends.receiver)
+        label(section.from),
+        label(target)
     );
     let message = Diagnostic::error(code::TRACK_OPEN, text);
-    let part = "a series part between them makes two nets: chart each of them";
+    let part = "where a series part lies between them they are two nets: chart a `[[path]]` with the part in `through`";
     match gap.1 {
         Some(node) => message
             .on_board(Some(graph.nodes[node].0 + 1), graph.nodes[node].1)
@@ -158,23 +343,38 @@ fn open_track(
 fn branches(
     terrain: &Terrain<'_>,
     graph: &Graph,
-    ends: &Ends,
-    nodes: &[usize],
-    edges: &[usize],
+    section: &Section,
+    sources: &[usize],
+    ways: &[Vec<(usize, usize)>],
     origin: Point,
 ) -> Vec<Diagnostic> {
-    let name = terrain.board.net_name(ends.net);
-    let on_way: BTreeSet<usize> = nodes.iter().copied().collect();
-    let way: BTreeSet<usize> = edges.iter().copied().collect();
+    let name = terrain.board.net_name(section.net);
+    let way: BTreeSet<usize> = ways.iter().flatten().map(|step| step.1).collect();
+    // Place of each node along the way from the driver's end.
     let mut along = BTreeMap::new();
-    let mut station = 0.0;
-    for (k, &node) in nodes.iter().enumerate() {
-        if k > 0 {
-            station += graph.edges[edges[k - 1]].length_m;
+    let mut nodes = Vec::new();
+    for steps in ways {
+        let mut station = 0.0;
+        for &(node, index) in steps {
+            let edge = &graph.edges[index];
+            let mut reach = |node: usize, station: f64| {
+                along.entry(node).or_insert_with(|| {
+                    nodes.push(node);
+                    station
+                });
+            };
+            reach(node, station);
+            station += edge.length_m;
+            reach(edge.a + edge.b - node, station);
         }
-        along.entry(node).or_insert(station);
     }
-    let best = graph.distances(nodes, |index| way.contains(&index));
+    if nodes.is_empty() {
+        // Pads on top of each other: the way has no length in this net.
+        nodes.extend(sources.first());
+        along.extend(sources.first().map(|&node| (node, 0.0)));
+    }
+    let on_way: BTreeSet<usize> = nodes.iter().copied().collect();
+    let best = graph.distances(&nodes, |index| way.contains(&index));
     let words = |at: Point| {
         let at = (at - origin) * 1e3;
         format!("{:.2}, {:.2}", at.x, at.y)
@@ -184,7 +384,7 @@ fn branches(
     let mut unreached = Vec::new();
     for (index, pin) in terrain.board.pins.iter().enumerate() {
         let id = PinId(index as u32);
-        if pin.net != Some(ends.net) || id == ends.driver || id == ends.receiver {
+        if pin.net != Some(section.net) || id == section.from || section.to.iter().any(|end| end.0 == id) {
             continue;
         }
         let Some(found) = graph.pins.get(&id) else { continue };
@@ -204,11 +404,13 @@ fn branches(
     let (stubs, loops) = Off { graph, way: &way, on_way: &on_way, along: &along, best: &best }.find(&at_pins);
     let mut notes = Vec::new();
     if !receivers.is_empty() {
+        let label = |end: &(PinId, f64)| format!("`{}`", terrain.board.pins[end.0.0 as usize].label());
+        let ends: Vec<String> = section.to.iter().map(label).collect();
         let text = format!(
-            "net `{name}` has further pins, {}; all current is taken to flow from `{}` to `{}`",
+            "net `{name}` has further pins, {}; all current is taken to flow from `{}` to {}",
             listed(&receivers),
-            terrain.board.pins[ends.driver.0 as usize].label(),
-            terrain.board.pins[ends.receiver.0 as usize].label()
+            terrain.board.pins[section.from.0 as usize].label(),
+            listed(&ends)
         );
         notes.push(Diagnostic::note(code::TRACK_FURTHER_PINS, text));
     }

@@ -46,9 +46,9 @@ struct Block {
     length_m: f64,
 }
 
-/// Divides a track of net `own` by the planes that serve it: the legs, divided where the plane changes, and the
-/// stretches. Copper of the net itself, such as a plated pin's pads on other layers, carries no return.
-pub fn divide(terrain: &Terrain<'_>, own: &str, legs: &[TrackLeg]) -> (Vec<TrackLeg>, Vec<Stretch>) {
+/// Divides a track of the nets `own` by the planes that serve it: the legs, divided where the plane changes, and the
+/// stretches. Copper of the nets themselves, such as a plated pin's pads on other layers, carries no return.
+pub fn divide(terrain: &Terrain<'_>, own: &[&str], legs: &[TrackLeg]) -> (Vec<TrackLeg>, Vec<Stretch>) {
     let samples = samples(terrain, own, legs);
     let mut blocks: Vec<Block> = Vec::new();
     let mut start = 0;
@@ -91,7 +91,7 @@ pub fn divide(terrain: &Terrain<'_>, own: &str, legs: &[TrackLeg]) -> (Vec<Track
     (divided, stretches)
 }
 
-fn samples(terrain: &Terrain<'_>, own: &str, legs: &[TrackLeg]) -> Vec<Sample> {
+fn samples(terrain: &Terrain<'_>, own: &[&str], legs: &[TrackLeg]) -> Vec<Sample> {
     let mut samples = Vec::new();
     for (index, leg) in legs.iter().enumerate() {
         let length = leg.from.distance(leg.to);
@@ -110,14 +110,14 @@ fn samples(terrain: &Terrain<'_>, own: &str, legs: &[TrackLeg]) -> Vec<Sample> {
 /// the return.
 fn nearest(
     terrain: &Terrain<'_>,
-    own: &str,
+    own: &[&str],
     layer: usize,
     at: crate::geom::Point,
 ) -> (Option<PlaneId>, Option<PlaneId>) {
     let look = |other: usize| {
         let area = terrain.area_at(other, at)?;
         let net = terrain.net_name(terrain.net_of(other, area)).to_owned();
-        if net == own {
+        if own.contains(&net.as_str()) {
             return None;
         }
         let gap_m = terrain.board.stackup.gap_m(layer, other);

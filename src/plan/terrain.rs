@@ -10,6 +10,9 @@ const AREA_M2: f64 = 4e-6;
 /// ... if it is this wide on average (twice its area over the length of its rims), in metres.
 const AREA_WIDTH_M: f64 = 0.4e-3;
 
+/// An area from this size on is solved as a sheet where a signal runs in it, in square metres.
+const SHEET_M2: f64 = 100e-6;
+
 /// A board with its copper prepared.
 pub struct Terrain<'b> {
     /// The board.
@@ -62,6 +65,11 @@ impl<'b> Terrain<'b> {
     /// The area of a layer at a point, by index.
     pub fn area_at(&self, layer: usize, point: Point) -> Option<usize> {
         self.copper_at(layer, point).into_iter().find(|&index| self.layers[layer].is_area[index])
+    }
+
+    /// Whether a piece of copper is an area so large that the current in it is solved for, not guessed.
+    pub fn is_sheet(&self, layer: usize, index: usize) -> bool {
+        self.layers[layer].is_area[index] && self.board.layers[layer].areas[index].shape.area() >= SHEET_M2
     }
 
     /// Net of a piece of copper.

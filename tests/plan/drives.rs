@@ -38,8 +38,8 @@ fn every_drive_arrives_in_si_units() {
         "{:#?}",
         file.messages
     );
-    // Eight keys of nets, two paths, one pair: nothing that no map uses goes by in silence.
-    assert_eq!(file.messages.len(), 10 + 2 + 1);
+    // Keys of nets, paths and the pair: nothing that no map uses goes by in silence.
+    assert_eq!(file.messages.len(), 10 + 2 + 2);
     let review = file.review.unwrap();
     let signal = |index: usize| review.nets[index].signal.clone();
     let clock = signal(0);

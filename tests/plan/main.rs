@@ -4,6 +4,7 @@
 
 mod draft;
 mod drives;
+mod paths;
 mod planes;
 mod review;
 mod sets;

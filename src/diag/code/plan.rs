@@ -37,6 +37,24 @@ pub const PINS_NEEDED: Code = Code {
               `receiver`. Only a net with exactly two pins needs neither.",
 };
 
+/// A path whose parts do not follow each other.
+pub const PATH_BROKEN: Code = Code {
+    name: "path-broken",
+    meaning: "A path must go on in one net from its driver to the first part that it passes, from the other pin of \
+              each part to the next, and from the last one to its receivers. The message names the two pins that lie \
+              on different nets, or a part that does not have two pins and must be given as its pins of entry and \
+              exit.",
+};
+
+/// A path passes parts.
+pub const PATH_THROUGH_PARTS: Code = Code {
+    name: "path-through-parts",
+    meaning: "Between two nets the current of a path passes a part. Its way inside the part is not in the \
+              fabrication data; a straight strip from pad to pad, as wide as the narrower pad and as high as the \
+              track, stands for it. The part's own resistance and inductance do not change the map and are not in \
+              the loop's.",
+};
+
 /// No copper between the pins.
 pub const TRACK_OPEN: Code = Code {
     name: "track-open",
@@ -177,6 +195,8 @@ pub const ALL: &[Code] = &[
     NET_FEW_PINS,
     PIN_UNKNOWN,
     PINS_NEEDED,
+    PATH_BROKEN,
+    PATH_THROUGH_PARTS,
     TRACK_OPEN,
     TRACK_ACROSS_AREA,
     TRACK_FURTHER_PINS,

@@ -98,8 +98,8 @@ fn fill(desk: &mut Desk<'_>, root: &DeTable<'_>, folder: &Path, review: &mut Rev
     review.pairs = paths::read_pairs(desk, root);
     paths::ensure_distinct(desk, root);
     not_yet_charted(desk, root);
-    if whole && root.get("net").is_none() {
-        desk.error(code::REVIEW_MISSING_KEY, 0..0, "review must chart one net at least")
+    if whole && ["net", "path", "pair"].iter().all(|kind| root.get(*kind).is_none()) {
+        desk.error(code::REVIEW_MISSING_KEY, 0..0, "review must chart one net, path or pair at least")
             .hints
             .push("add `[[net]]` with `name = \"...\"`".into());
     }
@@ -111,7 +111,7 @@ fn fill(desk: &mut Desk<'_>, root: &DeTable<'_>, folder: &Path, review: &mut Rev
 }
 
 /// Keys and tables that are read and checked but that no map uses yet.
-const NOT_YET: &[(&str, &[&str])] = &[("net", drives::KEYS), ("path", &["name"]), ("pair", &["name"])];
+const NOT_YET: &[(&str, &[&str])] = &[("net", drives::KEYS), ("path", drives::KEYS), ("pair", drives::KEYS)];
 
 /// Says of what is read but not charted that it is not, so that nobody takes a map for what it is not.
 fn not_yet_charted(desk: &mut Desk<'_>, root: &DeTable<'_>) {
@@ -122,11 +122,7 @@ fn not_yet_charted(desk: &mut Desk<'_>, root: &DeTable<'_>) {
         {
             for key in *keys {
                 let Some(value) = table.get(*key) else { continue };
-                let text = if *key == "name" {
-                    format!("a {kind} is read and checked but not charted yet")
-                } else {
-                    format!("key `{key}` is read and checked but not used yet: maps are of 1 A")
-                };
+                let text = format!("key `{key}` is read and checked but not used yet: maps are of 1 A");
                 let message = desk.place(Diagnostic::warning(code::REVIEW_NOT_USED, text), value.span());
                 desk.messages.push(message);
             }
