@@ -11,6 +11,7 @@ pub mod diag;
 pub mod draw;
 pub mod field;
 pub mod figure;
+pub mod finding;
 pub mod geom;
 pub mod math;
 pub mod plan;

@@ -22,10 +22,11 @@ const FLOORS: &[(&str, u32)] = &[
     ("plan", 4),
     ("field", 4),
     ("figure", 5),
-    ("draw", 6),
-    ("report", 7),
-    ("run", 8),
-    ("cli", 9),
+    ("finding", 6),
+    ("draw", 7),
+    ("report", 8),
+    ("run", 9),
+    ("cli", 10),
 ];
 
 /// Arrows that the floors alone would forbid or allow wrongly: (room, imported room, allowed).

@@ -10,16 +10,25 @@
 //! | extra path = int (abs(Re K) - abs(Re K0)) dA | how much longer voids make the return | m |
 //! | extra loop R, L = R(Z) - R(Z0), L(Z) - L(Z0) | Z = R + j w L, loop of track and plane | ohm, H |
 //!
+//! Effects of voids, edges and zone boundaries, on which findings rest, are in [`effect`].
+//!
 //! The error of a figure is its change from cells of 2d to cells of d, times the halvings of the cell that the
 //! resistance still needs, and at least the bound in [`compute::LEAST_ERROR`].
 
 pub mod chart;
 pub mod compute;
+pub mod edge;
+pub mod effect;
 pub mod level;
 pub mod section;
 pub mod station;
+pub mod stray;
+pub mod void;
 
 pub use chart::{Charted, ChartedPath, chart};
+pub use effect::{Effects, Placed};
+pub use stray::Stray;
+pub use void::{VoidEffect, VoidEnd};
 
 use crate::geom::Point;
 

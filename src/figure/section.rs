@@ -26,6 +26,20 @@ pub fn shares(map: &ReturnMap, at: Point, along: Point, within_m: &[f64]) -> Vec
     sums
 }
 
+/// The same on one side of the track alone: within X to its left (`side` 1) or right (`side` -1). The far rest of a
+/// section is the share of the return that goes round on that side.
+pub fn one_side(map: &ReturnMap, at: Point, along: Point, side: f64, within_m: &[f64]) -> Vec<f64> {
+    let mut sums = vec![0.0; within_m.len()];
+    add_ray(map, at, along, side, within_m, &mut sums);
+    sums.iter_mut().for_each(|sum| *sum = -*sum);
+    sums
+}
+
+/// In-phase density in A/m per A along the unit vector `along` at a point of the board, zero beside the grid.
+pub fn density(map: &ReturnMap, at: Point, along: Point) -> f64 {
+    in_phase(map, (at - map.grid.origin) * (1.0 / map.grid.cell_m), along)
+}
+
 /// Adds the in-phase flux along `along` through the ray from `at` to the left (side 1) or right (side -1), up to each
 /// distance.
 fn add_ray(map: &ReturnMap, at: Point, along: Point, side: f64, within_m: &[f64], sums: &mut [f64]) {

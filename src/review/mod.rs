@@ -3,6 +3,7 @@
 //! Nothing here reads a file; `read::review` does.
 
 pub mod drive;
+pub mod limit;
 pub mod path;
 
 use crate::geom::{Point, Ring};
@@ -37,6 +38,10 @@ pub struct Review {
     pub bands: Vec<Band>,
     /// Model and cell.
     pub solver: SolverRequest,
+    /// Limits for findings.
+    pub limits: limit::LimitRequest,
+    /// Findings that are borne, in the order of the file.
+    pub waivers: Vec<limit::Waiver>,
 }
 
 /// Stackup values that replace those of the files; `None` keeps the file's.

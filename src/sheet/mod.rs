@@ -10,6 +10,7 @@ mod loops;
 mod operator;
 mod problem;
 mod projector;
+mod reaction;
 pub mod source;
 
 pub use problem::{Injection, Patch, Problem, Sheet, SourceStrip, StripProfile, Vertical};
@@ -17,5 +18,6 @@ pub use problem::{Injection, Patch, Problem, Sheet, SourceStrip, StripProfile, V
 mod solution;
 mod system;
 pub use family::Family;
+pub use reaction::NO_LABEL;
 pub use solution::{Solution, SolveFailure};
 pub use system::{Drive, OperatingPoint, Prepared, System};

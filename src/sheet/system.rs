@@ -264,7 +264,7 @@ impl System {
     }
 
     /// A solution as a vector of branch currents.
-    fn currents_of(&self, solution: &Solution) -> Vec<Complex64> {
+    pub(super) fn currents_of(&self, solution: &Solution) -> Vec<Complex64> {
         let nx = self.branches.nx;
         let mut currents = Vec::with_capacity(self.branches.len());
         for (jx, jy) in solution.jx.iter().zip(&solution.jy) {

@@ -1,6 +1,7 @@
 //! The one name space of message and finding codes, one file for each room that raises them.
 
 pub mod field;
+pub mod finding;
 pub mod plan;
 pub mod read;
 pub mod review;
@@ -19,7 +20,7 @@ pub struct Code {
 
 /// All codes, sorted by room.
 pub fn all() -> impl Iterator<Item = Code> {
-    [read::ALL, review::ALL, plan::ALL, solve::ALL, field::ALL, style::ALL, run::ALL]
+    [read::ALL, review::ALL, plan::ALL, solve::ALL, field::ALL, style::ALL, finding::ALL, run::ALL]
         .into_iter()
         .flatten()
         .copied()

@@ -7,6 +7,7 @@
 mod bands;
 mod desk;
 mod drives;
+mod limits;
 mod nets;
 mod paths;
 mod zones;
@@ -71,8 +72,20 @@ pub fn parse_review(text: &str, name: &str, folder: &Path) -> ReviewFile {
     ReviewFile { name: name.into(), text: text.into(), review: usable.then_some(review), messages }
 }
 
-const TABLES: &[&str] =
-    &["schema", "board", "stackup", "reference", "net", "path", "pair", "zone", "band", "solver"];
+const TABLES: &[&str] = &[
+    "schema",
+    "board",
+    "stackup",
+    "reference",
+    "net",
+    "path",
+    "pair",
+    "zone",
+    "band",
+    "solver",
+    "limits",
+    "waiver",
+];
 
 /// `whole` is false after a syntax error: what is missing then may only have been lost.
 fn fill(desk: &mut Desk<'_>, root: &DeTable<'_>, folder: &Path, review: &mut Review, whole: bool) {
@@ -105,6 +118,8 @@ fn fill(desk: &mut Desk<'_>, root: &DeTable<'_>, folder: &Path, review: &mut Rev
     }
     review.zones = zones::read(desk, root, review.origin);
     review.bands = bands::read(desk, root);
+    review.limits = limits::read(desk, root);
+    review.waivers = limits::read_waivers(desk, root);
     if let Some(table) = desk.table(root, "solver") {
         review.solver = solver(desk, table);
     }
