@@ -1,10 +1,9 @@
-//! Where the return leaves and enters a plane: pins of the parts, vias, or what the review names.
+//! Where the return of a chart enters and leaves its plane, for pictures and figures: pins of the parts, vias, or what
+//! the review names. What is solved is in the path's entries.
 
 use super::Landing;
 use super::terrain::{Terrain, Via};
 use crate::board::{Pin, PinId};
-use crate::diag::Diagnostic;
-use crate::diag::code::plan as code;
 use crate::field::PlaneId;
 use crate::geom::Point;
 use crate::review::LandingRequest;
@@ -14,17 +13,8 @@ use crate::unit::length_text;
 const REACH_M: f64 = 3e-3;
 /// A point of the review nearer to a via's barrel than this means the via, in metres.
 const AT_VIA_M: f64 = 0.5e-3;
-
-/// A landing and the piece of the plane's copper that it lies on.
-#[derive(Clone, Debug)]
-pub struct Landed {
-    /// The landing.
-    pub landing: Landing,
-    /// Index of the area on the plane's layer.
-    pub area: usize,
-    /// What was assumed, in words.
-    pub assumed: Option<String>,
-}
+/// Radius of a spot that the review names, in metres.
+const SPOT_M: f64 = 0.15e-3;
 
 /// Landings of one plane.
 pub struct Landings<'t, 'b> {
@@ -39,115 +29,47 @@ impl<'t, 'b> Landings<'t, 'b> {
         Self { terrain, plane, vias: terrain.vias_to(plane) }
     }
 
-    /// The plane.
-    pub fn plane(&self) -> &PlaneId {
-        self.plane
-    }
-
-    /// The landing at a signal's pin; `key` is the key of the review that would name it.
-    pub fn at_pin(
-        &self,
-        signal: PinId,
-        request: Option<&LandingRequest>,
-        key: &str,
-    ) -> Result<Landed, Diagnostic> {
-        let signal = &self.terrain.board.pins[signal.0 as usize];
+    /// The landing at a signal's pin.
+    pub fn at_pin(&self, signal: PinId, request: Option<&LandingRequest>) -> Option<Landing> {
+        let board = self.terrain.board;
+        let signal = &board.pins[signal.0 as usize];
         match request {
-            Some(LandingRequest::Pin(label)) => self.named_pin(label, key),
-            Some(LandingRequest::At(point)) => self.named_point(*point, key),
-            None => self.own_pin(signal, key),
+            Some(LandingRequest::Pin(label)) => {
+                self.through_pin(board.pins.iter().find(|pin| pin.label() == *label)?)
+            }
+            Some(LandingRequest::At(point)) => self.named_point(*point),
+            None => self.own_pin(signal),
         }
     }
 
-    fn own_pin(&self, signal: &Pin, key: &str) -> Result<Landed, Diagnostic> {
-        let board = self.terrain.board;
+    fn own_pin(&self, signal: &Pin) -> Option<Landing> {
         let of_plane =
             |pin: &&Pin| pin.part == signal.part && self.terrain.net_name(pin.net) == self.plane.net;
-        let mut own: Vec<&Pin> = board.pins.iter().filter(of_plane).collect();
+        let mut own: Vec<&Pin> = self.terrain.board.pins.iter().filter(of_plane).collect();
         own.sort_by(|a, b| a.at.distance(signal.at).total_cmp(&b.at.distance(signal.at)));
-        if let Some(landed) = own.iter().find_map(|pin| self.through_pin(pin)) {
-            return Ok(landed);
-        }
-        let nearest = self.nearest_via(signal.at);
-        if let Some((via, distance)) = nearest.filter(|found| found.1 <= REACH_M) {
-            let assumed = format!(
-                "part `{}` has no `{}` pin that leads to `{}`; the via {} from `{}` is taken",
-                signal.part,
-                self.plane.net,
-                self.plane,
-                length_text(distance),
-                signal.label()
-            );
-            let what = format!("via {} from {}", length_text(distance), signal.label());
-            return Ok(Landed { assumed: Some(assumed), ..self.at_via(via, what) });
-        }
-        let farther = match nearest {
-            Some((_, distance)) => format!("the nearest via is {} away", length_text(distance)),
-            None => "the plane has no via at all".into(),
-        };
-        let text = format!(
-            "return of pin `{}` must reach plane `{}`: part `{}` has no `{}` pin that leads to it, and {farther}",
-            signal.label(),
-            self.plane,
-            signal.part,
-            self.plane.net
-        );
-        let hint = format!("name the pin or point where the return reaches the plane with `{key}`");
-        Err(Diagnostic::warning(code::LANDING_NONE, text)
-            .on_board(Some(signal.layer + 1), signal.at)
-            .hint(hint))
+        own.iter().find_map(|pin| self.through_pin(pin)).or_else(|| {
+            let (via, distance) = self.nearest_via(signal.at).filter(|found| found.1 <= REACH_M)?;
+            Some(self.at_via(via, format!("via {} from {}", length_text(distance), signal.label())))
+        })
     }
 
-    fn named_pin(&self, label: &str, key: &str) -> Result<Landed, Diagnostic> {
-        let bad = |why: String| {
-            let text = format!("{key} `{label}` must be a pin that leads to plane `{}`; {why}", self.plane);
-            Err(Diagnostic::error(code::LANDING_BAD, text))
-        };
-        let Some(pin) = self.terrain.board.pins.iter().find(|pin| pin.label() == label) else {
-            return bad("the board has no such pin".into());
-        };
-        if self.terrain.net_name(pin.net) != self.plane.net {
-            return bad(format!("it is on net `{}`", self.terrain.net_name(pin.net)));
-        }
-        match self.through_pin(pin) {
-            Some(landed) => Ok(landed),
-            None => bad("no via of its copper reaches the plane".into()),
-        }
-    }
-
-    fn named_point(&self, point: Point, key: &str) -> Result<Landed, Diagnostic> {
+    fn named_point(&self, point: Point) -> Option<Landing> {
         let nearest = self.nearest_via(point);
         if let Some((via, distance)) = nearest
             && distance <= AT_VIA_M + 0.5 * self.terrain.board.holes[via.hole].diameter_m
         {
-            return Ok(self.at_via(via, "via named in the review".into()));
+            return Some(self.at_via(via, "via named in the review".into()));
         }
-        if let Some(area) = self.area_at(point) {
-            const RADIUS_M: f64 = 0.15e-3;
-            let landing = Landing { at: point, radius_m: RADIUS_M, what: "point named in the review".into() };
-            return Ok(Landed { landing, area, assumed: None });
+        if self.on_plane(point) {
+            let what = "point named in the review".into();
+            return Some(Landing { at: point, radius_m: SPOT_M, what });
         }
-        match nearest.filter(|found| found.1 <= REACH_M) {
-            Some((via, distance)) => {
-                let assumed = format!(
-                    "the point of `{key}` is not on plane `{}`; the via {} away is taken",
-                    self.plane,
-                    length_text(distance)
-                );
-                Ok(Landed {
-                    assumed: Some(assumed),
-                    ..self.at_via(via, "via near the point of the review".into())
-                })
-            }
-            None => {
-                let text = format!("{key} must be a point on plane `{}` or near a via of it", self.plane);
-                Err(Diagnostic::error(code::LANDING_BAD, text).on_board(Some(self.plane.layer + 1), point))
-            }
-        }
+        let (via, _) = nearest.filter(|found| found.1 <= REACH_M)?;
+        Some(self.at_via(via, "via near the point of the review".into()))
     }
 
     /// From a pin of the plane's net down to the plane: its own barrel, its pad, or the nearest via of its copper.
-    fn through_pin(&self, pin: &Pin) -> Option<Landed> {
+    fn through_pin(&self, pin: &Pin) -> Option<Landing> {
         let board = self.terrain.board;
         if let Some(hole) = pin.hole
             && let Some(&via) = self.vias.iter().find(|via| via.hole == hole)
@@ -155,10 +77,9 @@ impl<'t, 'b> Landings<'t, 'b> {
             return Some(self.at_via(via, format!("pin {}", pin.label())));
         }
         if pin.layer == self.plane.layer {
-            let area = self.area_at(pin.at)?;
             let radius_m = (pin.pad.area() / std::f64::consts::PI).max(0.0).sqrt();
             let landing = Landing { at: pin.at, radius_m, what: format!("pad of {}", pin.label()) };
-            return Some(Landed { landing, area, assumed: None });
+            return self.on_plane(pin.at).then_some(landing);
         }
         let own = self.terrain.copper_of_net(pin.layer, pin.at, pin.net?)?;
         let distance = |via: &&Via| board.holes[via.hole].centre().distance(pin.at);
@@ -168,18 +89,15 @@ impl<'t, 'b> Landings<'t, 'b> {
         Some(self.at_via(*via, format!("via of {}", pin.label())))
     }
 
-    fn area_at(&self, point: Point) -> Option<usize> {
+    fn on_plane(&self, point: Point) -> bool {
         let layer = self.plane.layer;
-        let found = self.terrain.copper_at(layer, point);
-        found
-            .into_iter()
-            .find(|&area| self.terrain.net_name(self.terrain.net_of(layer, area)) == self.plane.net)
+        let mut found = self.terrain.copper_at(layer, point).into_iter();
+        found.any(|area| self.terrain.net_name(self.terrain.net_of(layer, area)) == self.plane.net)
     }
 
-    fn at_via(&self, via: Via, what: String) -> Landed {
+    fn at_via(&self, via: Via, what: String) -> Landing {
         let hole = &self.terrain.board.holes[via.hole];
-        let landing = Landing { at: hole.centre(), radius_m: 0.5 * hole.diameter_m, what };
-        Landed { landing, area: via.area, assumed: None }
+        Landing { at: hole.centre(), radius_m: 0.5 * hole.diameter_m, what }
     }
 
     fn nearest_via(&self, point: Point) -> Option<(Via, f64)> {
@@ -188,16 +106,12 @@ impl<'t, 'b> Landings<'t, 'b> {
         found.min_by(|a, b| a.1.total_cmp(&b.1))
     }
 
-    /// The via nearest to `point` that also reaches the plane of `other`: landings on both.
-    pub fn joint(&self, other: &Landings<'_, '_>, point: Point) -> Option<(Landed, Landed)> {
+    /// The via nearest to `point` that also reaches the plane of `other`.
+    pub fn joint(&self, other: &Landings<'_, '_>, point: Point) -> Option<Landing> {
         let board = self.terrain.board;
         let distance = |via: &Via| board.holes[via.hole].centre().distance(point);
-        let both = self.vias.iter().filter_map(|&via| {
-            let there = other.vias.iter().find(|there| there.hole == via.hole)?;
-            Some((via, *there))
-        });
-        let (here, there) = both.min_by(|a, b| distance(&a.0).total_cmp(&distance(&b.0)))?;
-        let what = format!("via {} from the layer change", length_text(distance(&here)));
-        Some((self.at_via(here, what.clone()), other.at_via(there, what)))
+        let both = self.vias.iter().filter(|via| other.vias.iter().any(|there| there.hole == via.hole));
+        let via = both.min_by(|a, b| distance(a).total_cmp(&distance(b)))?;
+        Some(self.at_via(*via, format!("via {} from the change of plane", length_text(distance(via)))))
     }
 }

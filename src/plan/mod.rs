@@ -1,14 +1,20 @@
 //! From a board and a review to what will be solved: tracks, planes, landings, voids and cells, before any solve.
 
+mod barrel;
 mod build;
 mod cell;
+mod chart;
+mod conductors;
 mod copper;
 mod course;
 mod entry;
 mod graph;
 mod landing;
+mod place;
+mod reach;
 mod request;
 mod route;
+mod sheets;
 mod stretch;
 mod terrain;
 mod touch;
@@ -38,7 +44,7 @@ pub struct Plan {
 
 /// One charted path: the way of a signal's current from its driver to where it ends. A charted net is a path of one
 /// net.
-#[derive(Clone, Debug)]
+#[derive(Clone, Debug, Default)]
 pub struct PathPlan {
     /// Name: of the net, or that of the review's path or pair.
     pub name: String,
@@ -53,6 +59,11 @@ pub struct PathPlan {
     pub entries: Vec<Entry>,
     /// What joins conductors for this path alone, for example the reference pins of its parts, tied together inside.
     pub joints: Vec<Joint>,
+    /// Pieces of [`Conductors::layers`] that are copper of the path's own nets, by layer and index: no sheets for this
+    /// path, and joints that end on them are none of its.
+    pub own_areas: Vec<(usize, usize)>,
+    /// Frequency in Hz up to which the loop and the board are below a tenth of a wavelength; 0 where not known.
+    pub valid_to_hz: f64,
     /// One entry for each plane that the track passes, in the order of the track.
     pub charts: Vec<ChartPlan>,
 }

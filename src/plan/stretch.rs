@@ -1,9 +1,11 @@
 //! Which plane serves which part of a track.
 //!
-//! At samples along the track the nearest copper area of any net above and below is looked up, by the dielectric
-//! between the facing copper. Where there is none (a void), and where an area on the same layer or farther away shows
-//! for a while between two stretches over the same plane, the plane of the run stays: an island, or a slot through which
-//! another layer is seen, is a void of the plane. An area nearer than the plane hides it and is a stretch of its own.
+//! At samples along the track the nearest copper area of a reference net above and below is looked up, by the
+//! dielectric between the facing copper; only where no reference copper lies above or below any of the track, areas of
+//! any net count. Where there is none (a void), and where an area on the same layer or farther away shows for a while
+//! between two stretches over the same plane, the plane of the run stays: an island, or a slot through which another
+//! layer is seen, is a void of the plane. A reference area nearer than the plane hides it and is a stretch of its own.
+//! Copper of other nets between track and plane is noted; it is solved as a sheet.
 
 use super::TrackLeg;
 use super::terrain::Terrain;
@@ -29,6 +31,8 @@ pub struct Stretch {
     pub legs: Range<usize>,
     /// The area on the other side that shares the return over most of the length.
     pub between: Option<PlaneId>,
+    /// The area of another net that lies nearer than the plane over the longest part, and that length in metres.
+    pub nearer: Option<(PlaneId, f64)>,
 }
 
 struct Sample {
@@ -37,6 +41,7 @@ struct Sample {
     length_m: f64,
     plane: Option<PlaneId>,
     other: Option<PlaneId>,
+    nearer: Option<PlaneId>,
 }
 
 /// Samples of one track layer with the same plane.
@@ -49,7 +54,10 @@ struct Block {
 /// Divides a track of the nets `own` by the planes that serve it: the legs, divided where the plane changes, and the
 /// stretches. Copper of the nets themselves, such as a plated pin's pads on other layers, carries no return.
 pub fn divide(terrain: &Terrain<'_>, own: &[&str], legs: &[TrackLeg]) -> (Vec<TrackLeg>, Vec<Stretch>) {
-    let samples = samples(terrain, own, legs);
+    let mut samples = samples(terrain, own, legs, true);
+    if samples.iter().all(|sample| sample.plane.is_none()) {
+        samples = self::samples(terrain, own, legs, false);
+    }
     let mut blocks: Vec<Block> = Vec::new();
     let mut start = 0;
     while start < samples.len() {
@@ -85,13 +93,18 @@ pub fn divide(terrain: &Terrain<'_>, own: &[&str], legs: &[TrackLeg]) -> (Vec<Tr
             });
             at = end;
         }
-        let between = shared_with(&samples[block.samples.clone()], block.plane.as_ref());
-        stretches.push(Stretch { plane: block.plane, legs: first..divided.len(), between });
+        let own = &samples[block.samples.clone()];
+        let total: f64 = own.iter().map(|sample| sample.length_m).sum();
+        let between = longest(own, block.plane.as_ref(), |sample| sample.other.as_ref());
+        let between = between.filter(|(_, length_m)| *length_m > 0.5 * total).map(|(plane, _)| plane);
+        let nearer = longest(own, block.plane.as_ref(), |sample| sample.nearer.as_ref());
+        stretches.push(Stretch { plane: block.plane, legs: first..divided.len(), between, nearer });
     }
     (divided, stretches)
 }
 
-fn samples(terrain: &Terrain<'_>, own: &[&str], legs: &[TrackLeg]) -> Vec<Sample> {
+/// Samples along the track; planes are of reference nets only where `reference` asks it.
+fn samples(terrain: &Terrain<'_>, own: &[&str], legs: &[TrackLeg], reference: bool) -> Vec<Sample> {
     let mut samples = Vec::new();
     for (index, leg) in legs.iter().enumerate() {
         let length = leg.from.distance(leg.to);
@@ -99,8 +112,15 @@ fn samples(terrain: &Terrain<'_>, own: &[&str], legs: &[TrackLeg]) -> Vec<Sample
         for k in 0..n {
             let parts = (k as f64 / n as f64, (k + 1) as f64 / n as f64);
             let at = point_at((leg.from, leg.to), 0.5 * (parts.0 + parts.1));
-            let (plane, other) = nearest(terrain, own, leg.layer, at);
-            samples.push(Sample { leg: index, parts, length_m: length / n as f64, plane, other });
+            let (plane, other) = nearest(terrain, own, leg.layer, at, reference);
+            let any = if reference { nearest(terrain, own, leg.layer, at, false).0 } else { None };
+            let gap_m = |plane: &Option<PlaneId>| {
+                plane.as_ref().map(|p| terrain.board.stackup.gap_m(leg.layer, p.layer))
+            };
+            let nearer = any.filter(|any| {
+                gap_m(&plane).is_none_or(|gap_m| terrain.board.stackup.gap_m(leg.layer, any.layer) < gap_m)
+            });
+            samples.push(Sample { leg: index, parts, length_m: length / n as f64, plane, other, nearer });
         }
     }
     samples
@@ -113,10 +133,15 @@ fn nearest(
     own: &[&str],
     layer: usize,
     at: crate::geom::Point,
+    reference: bool,
 ) -> (Option<PlaneId>, Option<PlaneId>) {
     let look = |other: usize| {
         let area = terrain.area_at(other, at)?;
-        let net = terrain.net_name(terrain.net_of(other, area)).to_owned();
+        let net = terrain.net_of(other, area);
+        if reference && !terrain.is_reference(net) {
+            return None;
+        }
+        let net = terrain.net_name(net).to_owned();
         if own.contains(&net.as_str()) {
             return None;
         }
@@ -135,17 +160,20 @@ fn nearest(
     }
 }
 
-/// The area that lies on the other side over most of the length.
-fn shared_with(samples: &[Sample], plane: Option<&PlaneId>) -> Option<PlaneId> {
-    let total: f64 = samples.iter().map(|sample| sample.length_m).sum();
+/// The area among those that `pick` gives, other than the plane itself, that shows over the longest part.
+fn longest<'s>(
+    samples: &'s [Sample],
+    plane: Option<&PlaneId>,
+    pick: impl Fn(&'s Sample) -> Option<&'s PlaneId>,
+) -> Option<(PlaneId, f64)> {
     let mut lengths: std::collections::BTreeMap<&PlaneId, f64> = std::collections::BTreeMap::new();
     for sample in samples {
-        if let Some(other) = sample.other.as_ref().filter(|other| Some(*other) != plane) {
+        if let Some(other) = pick(sample).filter(|other| Some(*other) != plane) {
             *lengths.entry(other).or_default() += sample.length_m;
         }
     }
-    let (longest, length) = lengths.into_iter().max_by(|a, b| a.1.total_cmp(&b.1))?;
-    (length > 0.5 * total).then(|| longest.clone())
+    let (longest, length_m) = lengths.into_iter().max_by(|a, b| a.1.total_cmp(&b.1))?;
+    Some((longest.clone(), length_m))
 }
 
 /// Blocks of one run of track on a layer, voids and short intrusions taken in.

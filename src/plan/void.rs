@@ -4,7 +4,6 @@
 //! from the plane's copper. Voids with webs narrower than 2h between them count as one, webs included.
 
 use super::Void;
-use super::terrain::rim_length_m;
 use crate::board::{Board, Plating};
 use crate::field::PlaneId;
 use crate::geom::locate::{Locator, point_segment_distance};
@@ -170,6 +169,5 @@ fn centroid(polygon: &Polygon) -> Point {
 
 /// Width of a void: twice its area over the length of its rims, in metres.
 pub fn mean_width_m(void: &Void) -> f64 {
-    let rims: f64 = void.shape.rings().map(|ring| rim_length_m(ring)).sum();
-    2.0 * void.shape.area() / rims
+    super::terrain::mean_width_m(&void.shape)
 }

@@ -124,9 +124,8 @@ impl Scene {
             driver: "U1.1".into(),
             receiver: "U2.1".into(),
             track: legs,
-            entries: Vec::new(),
-            joints: Vec::new(),
             charts: vec![chart],
+            ..PathPlan::default()
         }
     }
 }

@@ -199,9 +199,8 @@ pub fn gauge(shape: &Shape) -> Gauge {
         driver: "U5.19".to_owned(),
         receiver: "U2.6".to_owned(),
         track: legs,
-        entries: Vec::new(),
-        joints: Vec::new(),
         charts: vec![chart],
+        ..PathPlan::default()
     };
     let band = Band {
         name: "HF".to_owned(),

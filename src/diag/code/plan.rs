@@ -104,13 +104,13 @@ pub const PLANE_NONE: Code = Code {
               on. No map is drawn.",
 };
 
-/// The nearest area is not of a reference net.
+/// Copper of another net lies nearer than the plane.
 pub const PLANE_NOT_REFERENCE: Code = Code {
     name: "plane-not-reference",
-    meaning: "The copper area nearest to the track is not of a net under `[reference]`, for example a supply. The \
-              return flows on that area first, so a map on the reference behind it would be wrong by a large \
-              factor and is not drawn. If that net does carry the return, name it under `[reference]`; if it does \
-              not, `plane` in the net's entry chooses another plane on your word.",
+    meaning: "Between the track and the plane that its map shows lies copper that is not of a net under \
+              `[reference]`, for example a supply. The return flows on that copper first. It is solved together \
+              with the planes as a sheet of its own, joined to them by what joins it on the board; if it carries \
+              the return on its own account, name its net under `[reference]`.",
 };
 
 /// The plane of the review is not there.
@@ -123,23 +123,23 @@ pub const PLANE_UNKNOWN: Code = Code {
 /// The review chose another plane.
 pub const PLANE_CHOSEN: Code = Code {
     name: "plane-chosen",
-    meaning: "The review names a plane that is not the nearest copper area of the track. It is charted as asked, \
-              but part of the return flows on the nearer area, which is not in the map.",
+    meaning: "The review names a plane that is not the nearest reference copper of the track. Figures and pictures \
+              are of the plane asked for; part of the return flows on the nearer one.",
 };
 
 /// The track lies between two planes.
 pub const PLANE_BETWEEN: Code = Code {
     name: "plane-between",
-    meaning: "Copper areas lie above and below the track at comparable distance, so they share the return. The map \
-              is of the nearer one alone and shows more than its part.",
+    meaning: "Copper areas lie above and below the track at comparable distance, so they share the return. All are \
+              solved together; each plane that carries at least 1 % has a map of its own.",
 };
 
 /// Reference copper beside the track.
 pub const POUR_BESIDE: Code = Code {
     name: "pour-beside",
     meaning: "Reference copper on the track's own layer lies within three times the height over the plane and \
-              takes a part of the return (about 45 % at a gap of one height, 24 % at 2.5). That part is not in a \
-              map of one plane, which shows too much on the plane there.",
+              takes a part of the return (about 45 % at a gap of one height, 24 % at 2.5). It is solved together \
+              with the planes as a sheet of its own.",
 };
 
 /// No landing.
@@ -165,19 +165,28 @@ pub const LANDING_NEAREST_VIA: Code = Code {
               `receiver_landing` if it is another.",
 };
 
-/// Two planes without a joint.
-pub const PLANES_APART: Code = Code {
-    name: "planes-apart",
-    meaning: "The track changes from one plane to another and no via near the change joins the two, or one of them \
-              is not charted. The return then finds its way through parts, ties or the capacitance between planes, \
-              which needs all of them to be solved together. No map is drawn.",
+/// The return has no way.
+pub const RETURN_OPEN: Code = Code {
+    name: "return-open",
+    meaning: "The return enters one piece of copper and must leave another, and no via, pin, tie or part joins the \
+              two, not even a capacitor. No current can flow that way, so nothing is drawn. Either the fabrication \
+              data lack something that `[[part]]` or `[[tie]]` can add, or a landing is not where it is, or the \
+              board has no return for this path, which is a fault to mend.",
 };
 
-/// The landings lie on two islands.
-pub const LANDINGS_ON_ISLANDS: Code = Code {
-    name: "landings-on-islands",
-    meaning: "The return would enter the plane on one piece of copper and leave it on another, which are not \
-              connected on this layer. A map of one of them alone has no solution, so none is drawn.",
+/// The return passes capacitors.
+pub const RETURN_THROUGH_CAPACITORS: Code = Code {
+    name: "return-through-capacitors",
+    meaning: "The pieces of copper at the two ends of the path are joined by capacitors only. The return flows \
+              through them at high frequency; at 0 Hz there is none, so no map can be drawn there.",
+};
+
+/// Plating of barrels.
+pub const PLATING_ASSUMED: Code = Code {
+    name: "plating-assumed",
+    meaning: "Fabrication data do not say how thick the copper in barrels is; 20 um is taken, the mean that common \
+              practice asks for. It sets the resistance of vias, which matters at low frequency only. \
+              `plating = \"25um\"` under `[stackup]` says otherwise.",
 };
 
 /// The cell was enlarged for memory.
@@ -212,7 +221,8 @@ pub const ALL: &[Code] = &[
     LANDING_NONE,
     LANDING_BAD,
     LANDING_NEAREST_VIA,
-    PLANES_APART,
-    LANDINGS_ON_ISLANDS,
+    RETURN_OPEN,
+    RETURN_THROUGH_CAPACITORS,
+    PLATING_ASSUMED,
     CELL_ENLARGED,
 ];
