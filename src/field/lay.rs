@@ -56,7 +56,7 @@ impl<'p> Lay<'p> {
             legs: &path.track,
             first_leg: 0,
             plane_layer: plane_layers(path, 0..path.track.len()),
-            layers: conductors.layers.clone(),
+            layers: sheets_for(conductors, path),
             joints: joints.to_vec(),
             entries: path.entries.clone(),
             charts,
@@ -100,6 +100,15 @@ impl<'p> Lay<'p> {
             single: true,
         }
     }
+}
+
+/// The conductors of a path: those of the plan without copper of the path's own nets.
+fn sheets_for(conductors: &Conductors, path: &PathPlan) -> Vec<ConductorLayer> {
+    let kept = conductors.layers.iter().map(|layer| {
+        let others = layer.areas.iter().filter(|&&area| !path.own_areas.contains(&(layer.layer, area)));
+        ConductorLayer { layer: layer.layer, areas: others.copied().collect() }
+    });
+    kept.filter(|layer| !layer.areas.is_empty()).collect()
 }
 
 /// Distance of a point from an area, zero inside.

@@ -33,8 +33,8 @@ pub fn radius_m(hole: &Hole) -> f64 {
 }
 
 /// Resistance in ohm of `length_m` of a hole's barrel.
-pub fn resistance_ohm(board: &Board, hole: &Hole, length_m: f64) -> f64 {
-    resistivity_ohm_m(board) * length_m / (perimeter_m(hole) * PLATING_M)
+pub fn resistance_ohm(terrain: &Terrain<'_>, hole: &Hole, length_m: f64) -> f64 {
+    resistivity_ohm_m(terrain.board) * length_m / (perimeter_m(hole) * terrain.plating_m)
 }
 
 /// All barrels between neighbouring sheets that they touch, in the order of the holes.
@@ -71,7 +71,7 @@ pub fn joints(terrain: &Terrain<'_>, sheets: &Sheets) -> Vec<Joint> {
                     at: hole.centre(),
                     from: end(pair[0]),
                     to: end(pair[1]),
-                    resistance_ohm: resistance_ohm(board, hole, length_m).max(LEAST_OHM),
+                    resistance_ohm: resistance_ohm(terrain, hole, length_m).max(LEAST_OHM),
                     inductance_h: 0.0,
                     capacitance_f: None,
                     barrel_radius_m: Some(radius_m(hole)),

@@ -59,7 +59,8 @@ impl<'b> Planner<'b> {
                 });
             }
         }
-        let terrain = Terrain::new(board, &review.reference_nets);
+        let mut terrain = Terrain::new(board, &review.reference_nets);
+        terrain.plating_m = review.stackup.plating_m.unwrap_or(terrain.plating_m);
         Self { terrain, review, grounds: BTreeMap::new(), messages }
     }
 

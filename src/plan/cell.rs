@@ -1,8 +1,9 @@
 //! The size of the cells, and what a solve with them takes.
 //!
-//! With the band-limited kernel cells of h give the density within 2 %, of h/2 within 1 %. So cells of h/2 are taken
-//! while the plane stays small, larger ones up to h on large planes, and more than h only where memory would run out.
-//! Voids near the track that are small ask for smaller cells, down to h/4.
+//! With the band-limited kernel cells of h give the density within 2 %, of h/2 within 1 %. All sheets of a path share
+//! one grid, so cells of h are taken (the smallest h of the path), h/2 only while that stays small, and more than h only
+//! where memory would run out. Voids near the track that are narrower than a cell, and copper beside the track that is
+//! nearer than a cell, ask for smaller cells, down to h/2.
 
 use super::Void;
 use super::void::mean_width_m;
@@ -10,12 +11,12 @@ use crate::geom::locate::point_segment_distance;
 use crate::geom::{Bounds, Point};
 use crate::plan::TrackLeg;
 
-/// Cells of a plane up to which h/2 is taken.
-const EASY_CELLS: f64 = 250e3;
-/// Cells of a plane that memory allows.
-const MOST_CELLS: f64 = 1.4e6;
-/// Cells that the width of a void near the track should have.
-const ACROSS_VOID: f64 = 3.0;
+/// Cells of all sheets up to which h/2 is taken.
+const EASY_CELLS: f64 = 60e3;
+/// Cells of all sheets that memory allows.
+const MOST_CELLS: f64 = 2.4e6;
+/// Cells that the mean width of a void near the track should have.
+const ACROSS_VOID: f64 = 1.0;
 /// Heights from the track within which voids count.
 const NEAR_HEIGHTS: f64 = 5.0;
 
@@ -28,16 +29,14 @@ pub struct CellChoice {
     pub enlarged: bool,
 }
 
-/// Chooses the cell for a plane of the given box.
-pub fn choose(plane: Bounds, height_m: f64, legs: &[TrackLeg], voids: &[Void]) -> CellChoice {
-    let area = (plane.width() * plane.height()).max(1e-12);
+/// Chooses the cell for `sheets` sheets in a box over which a track runs at `height_m`; `finest_m` is what voids and
+/// copper beside the track ask for.
+pub fn choose(bounds: Bounds, sheets: usize, height_m: f64, finest_m: f64) -> CellChoice {
+    let area = (bounds.width() * bounds.height()).max(1e-12) * sheets.max(1) as f64;
     let cells_of = |cell_m: f64| area / (cell_m * cell_m);
-    let smallest_void =
-        voids.iter().filter(|void| near(void, legs, NEAR_HEIGHTS * height_m)).map(mean_width_m);
-    let by_void = smallest_void.fold(f64::INFINITY, f64::min) / ACROSS_VOID;
-    let wanted = (0.5 * height_m).min(by_void).max(0.25 * height_m);
-    let easy = (area / EASY_CELLS).sqrt();
-    let cell_m = rounded(wanted.max(easy.min(height_m)));
+    let easy = cells_of(0.5 * height_m) <= EASY_CELLS;
+    let wanted = if easy { 0.5 * height_m } else { finest_m.clamp(0.5 * height_m, height_m) };
+    let cell_m = rounded(wanted);
     if cells_of(cell_m) <= MOST_CELLS {
         return CellChoice { cell_m, enlarged: false };
     }
@@ -46,6 +45,12 @@ pub fn choose(plane: Bounds, height_m: f64, legs: &[TrackLeg], voids: &[Void]) -
         cell_m = rounded(cell_m * 1.3);
     }
     CellChoice { cell_m, enlarged: cell_m > height_m }
+}
+
+/// The cell that the narrowest void near a track asks for, in metres; infinite where there is none.
+pub fn by_voids(height_m: f64, legs: &[TrackLeg], voids: &[Void]) -> f64 {
+    let near = voids.iter().filter(|void| near(void, legs, NEAR_HEIGHTS * height_m));
+    near.map(mean_width_m).fold(f64::INFINITY, f64::min) / ACROSS_VOID
 }
 
 fn near(void: &Void, legs: &[TrackLeg], reach_m: f64) -> bool {
@@ -75,15 +80,15 @@ fn rounded(cell_m: f64) -> f64 {
     step * decade / 1e6
 }
 
-/// Number of unknown branch currents and memory in bytes that a plane with `copper_m2` of copper in a box takes.
+/// Number of unknown branch currents and memory in bytes that `sheets` sheets with `copper_m2` of copper in a box take.
 ///
 /// Two branches for each copper cell. Memory: the sparse factor holds about 4.3 log2(n) - 14 numbers for each of n
 /// cells with nested dissection (measured at 2^18 and 2^20 cells), half as much again while it is made, and some
 /// fifty numbers for each cell of the box for the transforms and the vectors of the iteration.
-pub fn cost(plane: Bounds, copper_m2: f64, cell_m: f64) -> (usize, usize) {
+pub fn cost(bounds: Bounds, sheets: usize, copper_m2: f64, cell_m: f64) -> (usize, usize) {
     let cell_m2 = cell_m * cell_m;
     let copper_cells = (copper_m2 / cell_m2).max(1.0);
-    let box_cells = (plane.width() * plane.height() / cell_m2).max(1.0);
+    let box_cells = (bounds.width() * bounds.height() * sheets as f64 / cell_m2).max(1.0);
     let factor = (4.3 * libm::log2(copper_cells) - 14.0).max(10.0) * copper_cells;
     let bytes = 8.0 * (1.5 * factor + 50.0 * box_cells);
     ((2.0 * copper_cells) as usize, bytes as usize)
@@ -114,12 +119,14 @@ mod tests {
     }
 
     #[test]
-    fn cells_follow_the_height_and_the_size_of_the_plane() {
-        let choice = |bounds, height_m: f64| choose(bounds, height_m, &[], &[]);
-        assert!((choice(plane(40.0, 30.0), 0.2e-3).cell_m - 0.1e-3).abs() < 1e-12);
-        let large = choice(plane(100.0, 100.0), 0.2e-3);
-        assert!(!large.enlarged && large.cell_m > 0.14e-3 && large.cell_m <= 0.2e-3, "{large:?}");
-        let huge = choice(plane(300.0, 300.0), 0.1e-3);
+    fn cells_follow_the_height_the_board_and_what_is_near() {
+        let choice = |bounds, sheets, finest_m| choose(bounds, sheets, 0.2e-3, finest_m);
+        let near = |got: f64, want: f64| assert!((got - want).abs() < 1e-12, "{got} for {want}");
+        near(choice(plane(20.0, 15.0), 1, f64::INFINITY).cell_m, 0.1e-3);
+        near(choice(plane(100.0, 80.0), 4, f64::INFINITY).cell_m, 0.2e-3);
+        near(choice(plane(100.0, 80.0), 4, 0.15e-3).cell_m, 0.15e-3);
+        near(choice(plane(100.0, 80.0), 4, 0.01e-3).cell_m, 0.1e-3);
+        let huge = choice(plane(300.0, 300.0), 2, f64::INFINITY);
         assert!(huge.enlarged && huge.cell_m > 0.2e-3, "{huge:?}");
     }
 }

@@ -1,25 +1,23 @@
-//! A chart of a path: its plane, height, voids and cells.
+//! A chart of a path: its plane, height and voids.
 
 use super::build::Planner;
-use super::cell::{self, CellChoice};
+use super::cell;
 use super::course::Course;
 use super::stretch::{self, Stretch};
 use super::{ChartPlan, Landing, TrackLeg, Void, void};
 use crate::diag::Diagnostic;
 use crate::diag::code::plan as code;
 use crate::field::PlaneId;
-use crate::geom::{Bounds, Point, Region};
+use crate::geom::{Point, Region};
 use crate::unit::length_text;
 use std::collections::BTreeMap;
 
 /// How far from the track reference copper on its own layer counts, in heights.
 const BESIDE_HEIGHTS: f64 = 3.0;
 
-/// Copper, voids and box of a plane, kept for all nets over it.
+/// Voids of a plane, kept for all paths over it.
 pub(super) struct Ground {
-    copper: Region,
     missing: Region,
-    bounds: Bounds,
     /// Voids by the height for which webs are closed, in nanometres.
     voids: BTreeMap<i64, Vec<Void>>,
 }
@@ -109,18 +107,16 @@ impl Planner<'_> {
         chart.height_m = cell::mean(own, |leg| stackup.gap_m(leg.layer, plane.layer));
         self.around(who, own, stretch, &chart);
         self.pour_beside(who, own, chart.height_m);
-        self.set_cells(who, own, plane, &mut chart);
+        self.set_voids(plane, &mut chart);
         chart
     }
 
-    fn set_cells(&mut self, who: &str, own: &[TrackLeg], plane: &PlaneId, chart: &mut ChartPlan) {
+    fn set_voids(&mut self, plane: &PlaneId, chart: &mut ChartPlan) {
         let board = self.terrain.board;
-        let ground = self.grounds.entry(plane.clone()).or_insert_with(|| {
-            let copper = void::plane_copper(board, plane);
-            let missing = void::missing(board, plane);
-            let bounds = copper.bounds().union(missing.bounds());
-            Ground { copper, missing, bounds, voids: BTreeMap::new() }
-        });
+        let ground = self
+            .grounds
+            .entry(plane.clone())
+            .or_insert_with(|| Ground { missing: void::missing(board, plane), voids: BTreeMap::new() });
         let key = (chart.height_m * 1e9).round() as i64;
         let origin = self.review.origin;
         let voids = ground
@@ -128,20 +124,6 @@ impl Planner<'_> {
             .entry(key)
             .or_insert_with(|| void::voids(&ground.missing, plane, chart.height_m, origin));
         chart.voids.clone_from(voids);
-        let choice = match self.review.solver.cell_m {
-            Some(cell_m) => CellChoice { cell_m, enlarged: false },
-            None => cell::choose(ground.bounds, chart.height_m, own, voids),
-        };
-        chart.cell_m = choice.cell_m;
-        (chart.unknowns, chart.memory_bytes) = cell::cost(ground.bounds, ground.copper.area(), choice.cell_m);
-        if choice.enlarged {
-            let text = format!(
-                "{who} on `{plane}` is planned on cells of {}, more than its height of {}, to fit into memory",
-                length_text(choice.cell_m),
-                length_text(chart.height_m)
-            );
-            self.messages.push(Diagnostic::warning(code::CELL_ENLARGED, text));
-        }
     }
 
     /// Notes copper that carries a part of the return beside the plane of the chart.

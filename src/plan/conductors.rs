@@ -2,10 +2,11 @@
 
 use super::build::{Draft, Planner};
 use super::entry::{Finder, Nodes};
+use super::extent::{self, Whole};
 use super::reach::Reach;
 use super::route::PortPlace;
 use super::sheets::{Groups, Piece, Sheets, Tracked};
-use super::{Conductors, End, Entry, Joint, PathPlan, barrel};
+use super::{Conductors, End, Entry, Joint, PathPlan, barrel, part, tie};
 use crate::diag::Diagnostic;
 use crate::diag::code::plan as code;
 use crate::unit::length_text;
@@ -17,18 +18,46 @@ const NOTHING: f64 = 1e-9;
 pub fn finish(planner: &mut Planner<'_>, drafts: Vec<Draft<'_>>) -> (Vec<PathPlan>, Conductors) {
     let tracks: Vec<Tracked> = drafts.iter().map(|draft| tracked(planner, draft)).collect();
     let sheets = Sheets::choose(&planner.terrain, &tracks);
-    let joints = barrel::joints(&planner.terrain, &sheets);
-    if !joints.is_empty() {
-        let text = format!("plating of barrels is taken as {}", length_text(barrel::PLATING_M));
-        planner.messages.push(Diagnostic::note(code::PLATING_ASSUMED, text));
-    }
     let mut nodes = Nodes::default();
+    let (joints, tied) = joints(planner, &sheets, &mut nodes);
+    let whole = Whole::of(planner.terrain.board, &sheets);
     let mut paths = Vec::new();
     for (draft, track) in drafts.into_iter().zip(&tracks) {
-        paths.push(land(planner, &sheets, &joints, &mut nodes, draft, track));
+        let mut path = land(planner, &sheets, (&joints, &tied), &mut nodes, draft, track);
+        let enlarged = extent::set_cells(&planner.terrain, planner.review, &sheets, &whole, track, &mut path);
+        planner.messages.extend(enlarged);
+        paths.push(path);
     }
     let conductors = Conductors { layers: sheets.layers(), joints, nodes: nodes.0 };
+    for path in &mut paths {
+        path.valid_to_hz = extent::valid_to_hz(planner.terrain.board, path, &conductors);
+    }
+    planner.messages.extend(extent::beyond(&paths, &planner.review.bands));
     (paths, conductors)
+}
+
+/// All joints common to the paths: barrels, ties, parts; and the parts that tie nets inside, with the node of each.
+fn joints(
+    planner: &mut Planner<'_>,
+    sheets: &Sheets,
+    nodes: &mut Nodes,
+) -> (Vec<Joint>, Vec<(String, usize)>) {
+    let terrain = &planner.terrain;
+    let reach = Reach { terrain, sheets };
+    let mut joints = barrel::joints(terrain, sheets);
+    if !joints.is_empty() && planner.review.stackup.plating_m.is_none() {
+        let text = format!("plating of barrels is taken as {}", length_text(terrain.plating_m));
+        planner.messages.push(Diagnostic::note(code::PLATING_ASSUMED, text));
+    }
+    joints.extend(tie::of_board(reach));
+    let tie_parts = terrain.board.ties.iter().map(|tie| tie.part.as_str()).collect();
+    let parts = part::joints(reach, planner.review, &tie_parts, nodes);
+    joints.extend(parts.joints);
+    planner.messages.extend(parts.messages);
+    let (ties, messages) = tie::of_review(reach, planner.review, nodes);
+    joints.extend(ties);
+    planner.messages.extend(messages);
+    (joints, parts.tied)
 }
 
 fn tracked(planner: &Planner<'_>, draft: &Draft<'_>) -> Tracked {
@@ -49,7 +78,7 @@ fn tracked(planner: &Planner<'_>, draft: &Draft<'_>) -> Tracked {
 fn land(
     planner: &mut Planner<'_>,
     sheets: &Sheets,
-    common: &[Joint],
+    (common, tied): (&[Joint], &[(String, usize)]),
     nodes: &mut Nodes,
     draft: Draft<'_>,
     track: &Tracked,
@@ -61,7 +90,7 @@ fn land(
         .filter(|&piece| terrain.net_of(piece.0, piece.1).is_some_and(|net| track.nets.contains(&net)))
         .filter(|piece| !track.areas.contains(piece))
         .collect();
-    let finder = Finder { reach: Reach { terrain, sheets }, tied: &[] };
+    let finder = Finder { reach: Reach { terrain, sheets }, tied };
     let mut notes = Vec::new();
     let mut reason = None;
     for port in &ports {

@@ -164,7 +164,7 @@ impl Finder<'_, '_> {
                 assumed: None,
             }),
             None => bad(format!(
-                "its net is `{}`, and no via of its copper reaches a plane",
+                "it is on net `{}`, and no via of its copper reaches a plane",
                 terrain.net_name(pin.net)
             )),
         }

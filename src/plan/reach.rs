@@ -85,7 +85,7 @@ impl Reach<'_, '_> {
                     radius_m: barrel::radius_m(drilled),
                     through_via: false,
                     length_m,
-                    resistance_ohm: barrel::resistance_ohm(board, drilled, length_m),
+                    resistance_ohm: barrel::resistance_ohm(self.terrain, drilled, length_m),
                     inductance_h: barrel_inductance_h(length_m, barrel::radius_m(drilled)),
                 });
             }
@@ -134,7 +134,7 @@ impl Reach<'_, '_> {
                         length_m: walk.length_m + along_m + depth_m,
                         resistance_ohm: walk.resistance_ohm
                             + track_ohm
-                            + barrel::resistance_ohm(board, drilled, depth_m),
+                            + barrel::resistance_ohm(self.terrain, drilled, depth_m),
                         inductance_h: walk.inductance_h
                             + inductance_per_m(width_m / height_m) * along_m
                             + barrel_inductance_h(depth_m, barrel::radius_m(drilled)),

@@ -18,6 +18,8 @@ const SHEET_M2: f64 = 100e-6;
 pub struct Terrain<'b> {
     /// The board.
     pub board: &'b Board,
+    /// Thickness of the copper in barrels in metres.
+    pub plating_m: f64,
     layers: Vec<Layer>,
     reference: Vec<bool>,
     /// Plated holes that touch each piece of copper of their net, by layer and index.
@@ -55,7 +57,7 @@ impl<'b> Terrain<'b> {
                 }
             }
         }
-        Self { board, layers, reference, barrels }
+        Self { board, plating_m: super::barrel::PLATING_M, layers, reference, barrels }
     }
 
     /// Plated holes that touch a piece of copper of their net, rising.

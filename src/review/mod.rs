@@ -3,6 +3,7 @@
 //! Nothing here reads a file; `read::review` does.
 
 pub mod drive;
+pub mod joint;
 pub mod limit;
 pub mod path;
 
@@ -32,6 +33,10 @@ pub struct Review {
     pub paths: Vec<path::PathRequest>,
     /// Pairs to chart, in the order of the file.
     pub pairs: Vec<path::PairRequest>,
+    /// What parts are that join copper, in the order of the file.
+    pub parts: Vec<joint::PartRequest>,
+    /// Ties, in the order of the file.
+    pub ties: Vec<joint::TieRequest>,
     /// Zones of the board.
     pub zones: Vec<Zone>,
     /// Bands, in the order of the file; the default bands where the file has none.
@@ -55,6 +60,8 @@ pub struct StackupOverride {
     pub permittivity: Vec<Option<f64>>,
     /// Temperature of the copper in degC.
     pub temperature_c: Option<f64>,
+    /// Thickness of the copper in barrels in metres.
+    pub plating_m: Option<f64>,
 }
 
 /// One `[[net]]`.

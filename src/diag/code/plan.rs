@@ -181,12 +181,60 @@ pub const RETURN_THROUGH_CAPACITORS: Code = Code {
               through them at high frequency; at 0 Hz there is none, so no map can be drawn there.",
 };
 
+/// A part of the review that the board lacks.
+pub const PART_UNKNOWN: Code = Code {
+    name: "part-unknown",
+    meaning: "An entry `[[part]]` fits no part of the board: no reference is equal or fits the pattern, no part has \
+              the value, or none has pins on all the nets. Parts are known from the pins that the fabrication data \
+              name; values only from component data.",
+};
+
+/// A part that cannot be a joint.
+pub const PART_NO_JOINT: Code = Code {
+    name: "part-no-joint",
+    meaning: "A part with values under `[[part]]` must have pins on two nets, between which it is a branch of \
+              resistance, inductance and capacitance in series; a part with `joins` must have pins on the nets that \
+              it joins. Two pins of a larger part can be tied with `[[tie]]`.",
+};
+
+/// Default values of parts.
+pub const PART_VALUE_ASSUMED: Code = Code {
+    name: "part-value-assumed",
+    meaning: "Parts that join copper carry return, and neither the review nor the fabrication data say their value, \
+              so common values were taken: capacitors 100 nF with 20 mohm and 0.5 nH in series, beads 0.1 ohm and \
+              1 uH, inductors 10 uH, resistors between two reference nets as links of 1 mohm. Check them and give \
+              the true ones with `[[part]]`.",
+};
+
+/// Resistors left open.
+pub const PART_OPEN: Code = Code {
+    name: "part-open",
+    meaning: "A resistor whose value nobody says lies between copper of two nets that are not both reference nets. \
+              It is left out: as a link it could join a supply to ground. `[[part]]` with `resistance` puts it in.",
+};
+
+/// A tie of the review that cannot be made.
+pub const TIE_BAD: Code = Code {
+    name: "tie-bad",
+    meaning: "An end of a `[[tie]]` must be a place on copper that carries return: a pin that leads to it, a point on \
+              it or within 3 mm, or a net with such copper there; or a node outside the board. The message says which \
+              end it is not.",
+};
+
 /// Plating of barrels.
 pub const PLATING_ASSUMED: Code = Code {
     name: "plating-assumed",
     meaning: "Fabrication data do not say how thick the copper in barrels is; 20 um is taken, the mean that common \
               practice asks for. It sets the resistance of vias, which matters at low frequency only. \
               `plating = \"25um\"` under `[stackup]` says otherwise.",
+};
+
+/// A band above what a path holds for.
+pub const BAND_BEYOND: Code = Code {
+    name: "band-beyond",
+    meaning: "The maps are quasi-static: they hold while the board and the loop are shorter than a tenth of a \
+              wavelength in the board's dielectric. Above that displacement current and standing waves move the \
+              return; the spread across the track stays right, where it closes does not.",
 };
 
 /// The cell was enlarged for memory.
@@ -222,7 +270,13 @@ pub const ALL: &[Code] = &[
     LANDING_BAD,
     LANDING_NEAREST_VIA,
     RETURN_OPEN,
+    PART_UNKNOWN,
+    PART_NO_JOINT,
+    PART_VALUE_ASSUMED,
+    PART_OPEN,
+    TIE_BAD,
     RETURN_THROUGH_CAPACITORS,
     PLATING_ASSUMED,
+    BAND_BEYOND,
     CELL_ENLARGED,
 ];

@@ -7,6 +7,7 @@
 mod bands;
 mod desk;
 mod drives;
+mod joints;
 mod limits;
 mod nets;
 mod paths;
@@ -80,6 +81,8 @@ const TABLES: &[&str] = &[
     "net",
     "path",
     "pair",
+    "part",
+    "tie",
     "zone",
     "band",
     "solver",
@@ -109,6 +112,8 @@ fn fill(desk: &mut Desk<'_>, root: &DeTable<'_>, folder: &Path, review: &mut Rev
     review.nets = nets::read(desk, root, review.origin);
     review.paths = paths::read_paths(desk, root, review.origin);
     review.pairs = paths::read_pairs(desk, root);
+    review.parts = joints::read_parts(desk, root);
+    review.ties = joints::read_ties(desk, root, review.origin);
     paths::ensure_distinct(desk, root);
     not_yet_charted(desk, root);
     if whole && ["net", "path", "pair"].iter().all(|kind| root.get(*kind).is_none()) {
@@ -177,7 +182,7 @@ fn board(desk: &mut Desk<'_>, table: &DeTable<'_>, folder: &Path, review: &mut R
 }
 
 fn stackup(desk: &mut Desk<'_>, table: &DeTable<'_>) -> StackupOverride {
-    desk.only(table, "stackup", &["copper", "dielectric", "permittivity", "temperature"]);
+    desk.only(table, "stackup", &["copper", "dielectric", "permittivity", "temperature", "plating"]);
     let mut found = StackupOverride::default();
     for (key, target) in [("copper", &mut found.copper_m), ("dielectric", &mut found.dielectric_m)] {
         for value in desk.list(table, key, "thicknesses").unwrap_or_default() {
@@ -190,6 +195,9 @@ fn stackup(desk: &mut Desk<'_>, table: &DeTable<'_>) -> StackupOverride {
             desk.error(code::REVIEW_BAD_VALUE, value.span(), "value `permittivity` must be 1 at least");
         }
         found.permittivity.push(number);
+    }
+    if let Some(value) = table.get("plating") {
+        found.plating_m = desk.positive(value, "plating", Dimension::Length);
     }
     if let Some(value) = table.get("temperature") {
         found.temperature_c = desk.quantity(value, "temperature", Dimension::Temperature);
