@@ -59,7 +59,12 @@ pub struct DrawArguments {
     /// Threads; the outputs do not depend on it
     #[arg(long, value_name = "N", default_value_t = 0, hide_default_value = true)]
     pub jobs: usize,
-    /// Style by name (`paper` is light, `screen` is dark), or a style file
+    /// Ends of the color scale, the same on all sheets: `0..-60dB` (0 dB is the density under a straight track),
+    /// `1..1000A/m`, or `0..500A/m` for a linear scale
+    #[arg(long, value_name = "RANGE", allow_hyphen_values = true)]
+    pub scale: Option<String>,
+    /// Style by name (`paper` is light, `screen` dark, `mono` for black-and-white printers, `large` has larger type),
+    /// or a style file
     #[arg(long, value_name = "NAME|FILE", default_value = "paper")]
     pub style: String,
 }

@@ -3,6 +3,7 @@
 use super::args::DrawArguments;
 use super::progress::Progress;
 use super::{Console, Exit};
+use crate::draw::ScaleChoice;
 use crate::run::{self, Ending, Order, Unusable};
 use crate::unit::{Dimension, parse_quantity};
 
@@ -19,6 +20,13 @@ pub fn draw(typed: &DrawArguments, console: &mut Console) -> Exit {
             return Exit::Unusable;
         }
     };
+    let scale = match typed.scale.as_deref().map_or(Ok(ScaleChoice::OfStyle), ScaleChoice::parse) {
+        Ok(scale) => scale,
+        Err(error) => {
+            console.remark(&format!("error: `--scale`: {error}\n"));
+            return Exit::Unusable;
+        }
+    };
     let order = Order {
         review: &typed.review,
         out: &typed.out,
@@ -27,6 +35,7 @@ pub fn draw(typed: &DrawArguments, console: &mut Console) -> Exit {
         numbers: typed.numbers,
         jobs: typed.jobs,
         style: &typed.style,
+        scale,
     };
     let progress = Progress::new(console.is_terminal(), console.ink());
     let ended = run::draw(&order, &progress);

@@ -198,7 +198,7 @@ mod tests {
     #[test]
     fn a_ring_of_equal_density_is_found_at_its_radius() {
         let grid = Grid { origin: Point::mm(-10.0, -10.0), cell_m: 0.1e-3, nx: 200, ny: 200 };
-        let scale = DensityScale { height_m: 0.4e-3, range_db: 60.0 };
+        let scale = DensityScale::new(0.4e-3, 60.0);
         let values = (0..grid.len())
             .map(|index| 1e-1 / grid.centre(index % 200, index / 200).length())
             .collect::<Vec<f64>>();

@@ -195,7 +195,7 @@ mod tests {
     use super::*;
     use crate::geom::Bounds;
 
-    const SCALE: DensityScale = DensityScale { height_m: 0.4e-3, range_db: 60.0 };
+    const SCALE: DensityScale = DensityScale::new(0.4e-3, 60.0);
 
     fn density(nx: usize, ny: usize, value: impl Fn(usize, usize) -> f64) -> Density {
         let grid = Grid { origin: Point::mm(0.0, 0.0), cell_m: 1e-3, nx, ny };

@@ -2,6 +2,7 @@
 
 use super::contour::{Contour, SHARES};
 use super::density::indexed_png;
+use super::joint::{self, JointForm};
 use super::map::{LANDING, PIN, contour_ink, landing_shape, pin_shape};
 use super::number::coordinate;
 use super::path::PathData;
@@ -37,7 +38,7 @@ pub fn rulers(view: &View, origin: Point, style: &Style) -> Group {
         let x = view.x + (n as f64 * minor - low.x) * view.scale;
         ticks.line(&[(x, bottom), (x, bottom + if major(n) { 1.5 } else { 0.8 })]);
         if major(n) {
-            let text = Text::new(x, bottom + 4.8, size, Face::Narrow, style.color.ink_soft, &number(n));
+            let text = Text::new(x, bottom + 1.5 + size, size, Face::Narrow, style.color.ink_soft, &number(n));
             group.text(text.anchored(Anchor::Middle));
         }
     }
@@ -99,7 +100,9 @@ pub fn color_scale(
     style: &Style,
 ) -> Group {
     const HEIGHT: f64 = 5.2;
-    let label = format!("color scale from {} dB to 0 dB", coordinate(-scale.range_db));
+    let ends = [scale.low_db(), scale.high_db()].map(|level| coordinate((level * 10.0).round() / 10.0));
+    let kind = if scale.linear { "linear color scale from 0".to_owned() } else { format!("color scale from {} dB", ends[0]) };
+    let label = format!("{kind} to {} dB", ends[1]);
     let mut group = Group::new("color-scale").labeled("graphics-object", label.clone());
     let indices: Vec<u8> = (0..Gradient::LEVELS as u8).collect();
     let palette =
@@ -116,7 +119,7 @@ pub fn color_scale(
     let mut ticks = PathData::new();
     let mut number = |group: &mut Group, at: f64, below: bool, text: &str| {
         let (from, to, base) =
-            if below { (y + HEIGHT, y + HEIGHT + 1.2, y + HEIGHT + 4.4) } else { (y, y - 1.2, y - 1.9) };
+            if below { (y + HEIGHT, y + HEIGHT + 1.2, y + HEIGHT + 1.1 + size) } else { (y, y - 1.2, y - 1.9) };
         ticks.line(&[(at, from), (at, to)]);
         let text = Text::new(at, base, size, Face::Narrow, style.color.ink, text);
         group.text(text.anchored(Anchor::Middle));
@@ -131,20 +134,41 @@ pub fn color_scale(
             last = at + half;
         }
     }
-    let step = if width < 70.0 { 20.0 } else { 10.0 };
-    let steps = (scale.range_db / step).floor() as i32;
-    for n in 0..=steps {
-        let level = -step * f64::from(steps - n);
-        let text = coordinate(level).replace('-', "\u{2212}");
-        number(&mut group, x + scale.place(level) * width, true, &text);
+    for (at, text) in level_ticks(scale, (x, width), size) {
+        number(&mut group, at, true, &text);
     }
     group.shape(Shape::stroked(ticks, style.color.ink, 0.25));
-    for (row, unit) in [(y - 1.9, "A/m per A"), (y + HEIGHT + 4.4, "dB")] {
+    for (row, unit) in [(y - 1.9, "A/m per A"), (y + HEIGHT + 1.1 + size, "dB")] {
         let at = if row < y { x + width + 1.8 } else { x + width + 5.2 };
         group.text(Text::new(at, row, size, Face::Narrow, style.color.ink, unit));
     }
     contour_marks(&mut group, (x, y, width, HEIGHT), scale, contours, style);
     group
+}
+
+/// Levels below the color scale every 10 dB (20 dB where it is short) as far as they have room, from the left. The
+/// lowest of a logarithmic scale also stands for all that lies below it.
+fn level_ticks(scale: &DensityScale, (x, width): (f64, f64), size: f64) -> Vec<(f64, String)> {
+    let least = if width < 70.0 { 20.0 } else { 10.0 };
+    let step = if scale.range_db > 90.0 { 20.0_f64.max(least) } else { least };
+    let first = libm::ceil(scale.low_db() / step - 1e-6) as i64;
+    let last = libm::floor(scale.high_db() / step + 1e-6) as i64;
+    let mut all: Vec<(f64, String)> = Vec::new();
+    let mut limit = f64::INFINITY;
+    for n in (first..=last).rev() {
+        let level = n as f64 * step;
+        let lowest = !scale.linear && n == first && level - scale.low_db() < 0.5;
+        let sign = if lowest { "\u{2264}\u{a0}" } else { "" };
+        let text = format!("{sign}{}", coordinate(level).replace('-', "\u{2212}"));
+        let at = x + scale.place(level) * width;
+        let half = 0.5 * marked_width(Face::Narrow, size, &text);
+        if at + half < limit {
+            limit = at - half - 1.2;
+            all.push((at, text));
+        }
+    }
+    all.reverse();
+    all
 }
 
 fn contour_marks(
@@ -158,7 +182,7 @@ fn contour_marks(
     let mut limit = x + width;
     for (rank, contour) in contours.iter().enumerate().filter(|(_, contour)| shown(contour)) {
         let level = scale.level_db(contour.density);
-        if !(-scale.range_db..=0.0).contains(&level) {
+        if !(scale.low_db()..=scale.high_db()).contains(&level) {
             continue;
         }
         let at = x + scale.place(level) * width;
@@ -203,10 +227,17 @@ pub enum LegendEntry {
     Landing,
     /// The 80 % contour.
     Contour80,
+    /// Direction of the return.
+    Flow,
+    /// A via that carries a tenth of the return.
+    Via,
+    /// A part or tie that does.
+    Part,
 }
 
 impl LegendEntry {
-    fn words(self) -> &'static str {
+    /// Its words in English, the key of a style's own.
+    pub fn words(self) -> &'static str {
         match self {
             Self::Track => "track",
             Self::OtherTrack => "track, other plane",
@@ -217,6 +248,9 @@ impl LegendEntry {
             Self::Receiver => "receiver",
             Self::Landing => "landing of the return",
             Self::Contour80 => "encloses 80 % of density",
+            Self::Flow => "direction of the return",
+            Self::Via => "via, 10 % of the return",
+            Self::Part => "part, 10 % of the return",
         }
     }
 }
@@ -227,16 +261,21 @@ pub fn legend(x: f64, y: f64, width: f64, entries: &[LegendEntry], style: &Style
     let size = style.font.tick;
     let (mut at, mut row) = (x, y);
     for &entry in entries {
-        let words = entry.words();
+        let words = style.word(entry.words());
         let sample = match entry {
-            LegendEntry::Driver | LegendEntry::Receiver | LegendEntry::Landing => 2.4,
+            LegendEntry::Driver
+            | LegendEntry::Receiver
+            | LegendEntry::Landing
+            | LegendEntry::Via
+            | LegendEntry::Part => 2.4,
+            LegendEntry::Flow => 3.0,
             LegendEntry::Boundary => 10.0,
             _ => 6.5,
         };
         let wide = sample + 1.2 + marked_width(Face::Narrow, size, words);
         if at > x && at + wide > x + width {
             at = x;
-            row += 4.8;
+            row += 4.8 * style.font.pitch();
         }
         legend_sample(&mut group, entry, (at, row - 0.35 * size), sample, style);
         group.text(Text::new(at + sample + 1.2, row, size, Face::Narrow, style.color.ink, words));
@@ -283,6 +322,20 @@ fn legend_sample(group: &mut Group, entry: LegendEntry, (x, y): (f64, f64), widt
                 group.shape(shape);
             }
         }
+        LegendEntry::Flow => {
+            let (tip, neck) = ((x + width, y), (x + width - 1.1, y));
+            let (mut shaft, mut head) = (PathData::new(), PathData::new());
+            shaft.line(&[(x, y), neck]);
+            head.ring(&[tip, (neck.0, y - 0.42), (neck.0, y + 0.42)]);
+            group.shape(Shape::stroked(shaft, style.color.ink, 0.2));
+            group.shape(Shape::filled(head, style.color.ink));
+        }
+        LegendEntry::Via | LegendEntry::Part => {
+            let form = if entry == LegendEntry::Via { JointForm::Via } else { JointForm::Part };
+            for shape in joint::mark(form, middle, joint::radius(0.1), style) {
+                group.shape(shape);
+            }
+        }
         LegendEntry::Contour80 => {
             group.shape(Shape::stroked(line, style.color.ink, style.line.contour[1]));
         }
@@ -293,9 +346,10 @@ fn legend_sample(group: &mut Group, entry: LegendEntry, (x, y): (f64, f64), widt
 pub fn title_strip(x: f64, y: f64, width: f64, fields: &[(&str, String)], style: &Style) -> Group {
     let mut group = Group::new("title-strip").labeled("group", "title strip");
     let mut rules = PathData::new();
-    rules.line(&[(x, y), (x + width, y)]).line(&[(x, y + 11.0), (x + width, y + 11.0)]);
+    let height = 11.0 * style.font.pitch();
+    rules.line(&[(x, y), (x + width, y)]).line(&[(x, y + height), (x + width, y + height)]);
     group.shape(Shape::stroked(rules, style.color.ink, 0.35));
-    fields_row(&mut group, (x, y, width, 11.0), 0.0, fields, style);
+    fields_row(&mut group, (x, y, width, height), 0.0, fields, style);
     group
 }
 
@@ -316,7 +370,7 @@ pub fn fields_row(
         .iter()
         .map(|(name, value)| {
             let value = marked_width(Face::Narrow, size, value);
-            2.0 * PAD + value.max(marked_width(Face::Narrow, style.font.field, name))
+            2.0 * PAD + value.max(marked_width(Face::Narrow, style.font.field, style.word(name)))
         })
         .collect();
     let widths = shared_widths(&needs, width, LEAST);
@@ -328,7 +382,8 @@ pub fn fields_row(
             bars.line(&[(left, y + 1.0), (left, y + height - 1.0)]);
         }
         let room = left + wide - start - 0.6;
-        group.text(Text::new(start, y + 0.36 * height, style.font.field, Face::Narrow, color.ink_soft, name));
+        let name = shortened(Face::Narrow, style.font.field, style.word(name), room);
+        group.text(Text::new(start, y + 0.36 * height, style.font.field, Face::Narrow, color.ink_soft, &name));
         let value = fitted(Face::Narrow, size, value, room);
         group.text(Text::new(start, y + 0.79 * height, size, Face::Narrow, color.ink, &value));
         left += wide;
@@ -375,7 +430,7 @@ pub fn caution(x: f64, y: f64, width: f64, text: &str, style: &Style) -> Group {
     mark.line(&[(x + 2.1, y - 1.6), (x + 2.1, y - 0.55)]).line(&[(x + 2.1, y - 0.02), (x + 2.1, y + 0.02)]);
     group.shape(Shape::stroked(mark, color.ink, 0.45).rounded());
     for (row, line) in wrapped(Face::Narrow, style.font.tick, text, width - 6.0).into_iter().enumerate() {
-        group.text(Text::new(x + 5.6, y + 4.0 * row as f64, style.font.tick, Face::Narrow, color.ink, &line));
+        group.text(Text::new(x + 5.6, y + 4.0 * style.font.pitch() * row as f64, style.font.tick, Face::Narrow, color.ink, &line));
     }
     group
 }

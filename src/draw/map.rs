@@ -1,22 +1,27 @@
 //! The map itself: heat, contours, what is not copper, zones, track, pins and landings, and labels on it.
 
-use super::contour::{Contour, SHARES, contours, from_segment, simplified};
+use super::callout::Callout;
+use super::contour::{Contour, contours, from_segment, simplified};
 use super::density::{Density, heat_png};
+use super::flow::{Flow, arrows};
+use super::joint::{self, JointMark};
 use super::path::PathData;
-use super::place::{Placer, Rect};
+use super::place::{Line, Placer, Rect};
 use super::scale::DensityScale;
 use super::scene::{Group, Image, Item, Shape};
-use super::text::{Anchor, Text, shortened};
+use super::text::{Anchor, Text};
 use super::view::View;
 use crate::geom::{Point, Polygon, Region, Ring};
-use crate::style::{Face, Rgb, Style};
+use crate::style::{Rgb, Style};
 
 /// Size of a pin's square in mm.
 pub const PIN: f64 = 2.0;
 /// Radius of a landing's ring in mm.
 pub const LANDING: f64 = 1.2;
 /// Halo round lines in mm, both sides together.
-const HALO: f64 = 0.5;
+pub(super) const HALO: f64 = 0.5;
+/// Level in dB from which on no leader may cross the map: a quarter of the density under a straight track.
+const HOT_DB: f64 = -12.0;
 /// Largest deviation of drawn outlines in mm.
 const OUTLINE: f64 = 0.02;
 
@@ -63,6 +68,12 @@ pub struct MapData {
     pub landings: Vec<Point>,
     /// Densities that enclose 50, 80 and 95 %.
     pub levels: [f64; 3],
+    /// Findings that have a place on this plane, most serious first.
+    pub callouts: Vec<Callout>,
+    /// Vias, parts and ties that carry return to or from this plane.
+    pub joints: Vec<JointMark>,
+    /// Direction of the in-phase return; none for small maps.
+    pub flow: Option<Flow>,
 }
 
 /// A drawn map.
@@ -95,6 +106,10 @@ impl MapLook<'_> {
     fn weight(&self) -> f64 {
         if self.small { 0.5 } else { 1.0 }
     }
+
+    fn symbols(&self) -> f64 {
+        if self.small { 0.55 } else { 1.0 }
+    }
 }
 
 /// Draws `data` in `view`.
@@ -120,11 +135,21 @@ pub fn draw_map(data: &MapData, view: &View, look: &MapLook, label: &str) -> Dra
     vectors.group(edges(data, view, look));
     vectors.group(track(data, view, look));
     group.group(vectors);
+    group.group(joint::marks(&data.joints, view, look.symbols(), look.style).clipped(
+        view.x - 2.0,
+        view.y - 2.0,
+        width + 4.0,
+        height + 4.0,
+    ));
     group.group(pins(data, view, look));
     let placer = placer(data, view, look);
     let mut drawn = DrawnMap { group, contours, placer };
     if !look.small {
-        labels(&mut drawn, data, view, look);
+        let words = super::label::labels(&mut drawn, data, view, look);
+        if let Some(flow) = &data.flow {
+            drawn.group.group(arrows((flow, &data.density), view, look, &lines, &drawn.placer));
+        }
+        drawn.group.group(words);
     }
     drawn
 }
@@ -352,7 +377,7 @@ pub fn landing_shape(at: (f64, f64), style: &Style, radius: f64) -> Vec<Shape> {
 fn pins(data: &MapData, view: &View, look: &MapLook) -> Group {
     let mut group =
         Group::new("pins").clipped(view.x - 2.0, view.y - 2.0, view.width() + 4.0, view.height() + 4.0);
-    let factor = if look.small { 0.55 } else { 1.0 };
+    let factor = look.symbols();
     for &at in data.landings.iter().filter(|&&at| view.window.contains(at)) {
         for shape in landing_shape(view.place(at), look.style, LANDING * factor) {
             group.shape(shape);
@@ -372,7 +397,10 @@ fn placer(data: &MapData, view: &View, look: &MapLook) -> Placer {
     let area = [view.x, view.y, view.x + view.width() + look.room_right, view.y + view.height()];
     let mut placer = Placer::new(area);
     let (nx, ny) = ((view.width() as usize).max(1), (view.height() as usize).max(1));
-    placer.add_density(&data.density.raster(view, nx, ny, &look.scale), view.width());
+    let raster = data.density.raster(view, nx, ny, &look.scale);
+    placer.add_density(&raster, view.width());
+    placer.block_density(&raster, view.width(), HOT_DB);
+    joint::take(&data.joints, view, &mut placer);
     for polygon in data.plane.iter().filter(|polygon| polygon.bounds().meets(view.window)) {
         let mut rim: Vec<(f64, f64)> = polygon.outer.iter().map(|&point| view.place(point)).collect();
         rim.extend(rim.first().copied());
@@ -381,6 +409,7 @@ fn placer(data: &MapData, view: &View, look: &MapLook) -> Placer {
     for charted in [true, false] {
         for run in runs(data, view, charted) {
             placer.add_line(&run, 1.0, 6.0);
+            placer.block_line(&run, 1.0);
         }
     }
     for hole in data.plane.iter().flat_map(|polygon| &polygon.holes).filter(|hole| in_view(hole, view)) {
@@ -405,67 +434,6 @@ fn placer(data: &MapData, view: &View, look: &MapLook) -> Placer {
     placer
 }
 
-/// Names of pins, zones and contours.
-fn labels(drawn: &mut DrawnMap, data: &MapData, view: &View, look: &MapLook) {
-    let style = look.style;
-    let size = style.font.label;
-    let mut group = Group::new("labels");
-    for (pin, role) in [(&data.driver, "driver"), (&data.receiver, "receiver")] {
-        let Some(pin) = pin.as_ref().filter(|pin| view.window.contains(pin.at)) else { continue };
-        let name = shortened(Face::NarrowBold, size, &pin.name, 30.0);
-        let text = Text::new(0.0, 0.0, size, Face::NarrowBold, style.color.ink, &format!("{role} {name}"));
-        let spot = view.place(pin.at);
-        let Some(rect) = drawn.placer.label(spot, text.width(), 0.95 * size) else { continue };
-        group.group(leader(spot, rect, style));
-        group.text(placed(text, rect, style));
-    }
-    for (name, outline) in &data.zones {
-        let name = shortened(Face::NarrowBold, size, &name.to_uppercase(), 50.0);
-        let text = Text::new(0.0, 0.0, size, Face::NarrowBold, style.color.boundary, &name);
-        let candidates = zone_boxes(outline, view, text.width(), 0.95 * size);
-        if let Some(rect) = drawn.placer.cheapest(candidates) {
-            group.text(placed(text, rect, style));
-        }
-    }
-    for (rank, contour) in drawn.contours.iter().enumerate() {
-        let text = format!("{} %", SHARES[rank]);
-        let text = Text::new(0.0, 0.0, size, Face::NarrowBold, style.color.ink, &text);
-        let (width, height) = (text.width(), 0.95 * size);
-        // On the line, or beside it where the line runs too close to the track.
-        let shifts = [(0.0, 0.0), (1.0, 0.15), (-1.0, 0.15)];
-        let boxes = contour.lines.iter().flat_map(|line| along(line, 3.0)).flat_map(|((x, y), (nx, ny))| {
-            shifts.map(|(side, extra)| {
-                let (cx, cy) = (x + side * nx * (0.5 * width + 0.8), y + side * ny * (0.5 * height + 0.8));
-                ([cx - 0.5 * width, cy - 0.5 * height, cx + 0.5 * width, cy + 0.5 * height], extra)
-            })
-        });
-        let boxes: Vec<(Rect, f64)> = boxes.collect();
-        if let Some(rect) = drawn.placer.cheapest(boxes) {
-            group.text(placed(text, rect, style));
-        }
-    }
-    drawn.group.group(group);
-}
-
-/// Points on a line every `step` mm, each with the normal of the line.
-fn along(line: &[(f64, f64)], step: f64) -> Vec<((f64, f64), (f64, f64))> {
-    let mut points = Vec::new();
-    let mut left = step;
-    for pair in line.windows(2) {
-        let (a, b) = (pair[0], pair[1]);
-        let length = libm::hypot(b.0 - a.0, b.1 - a.1);
-        let mut at = left;
-        while at < length {
-            let t = at / length;
-            let normal = ((a.1 - b.1) / length, (b.0 - a.0) / length);
-            points.push(((a.0 + t * (b.0 - a.0), a.1 + t * (b.1 - a.1)), normal));
-            at += step;
-        }
-        left = at - length;
-    }
-    points
-}
-
 /// A label in its box, baseline a quarter above the bottom.
 pub fn placed(mut text: Text, rect: Rect, style: &Style) -> Text {
     text.x = rect[0];
@@ -474,40 +442,14 @@ pub fn placed(mut text: Text, rect: Rect, style: &Style) -> Text {
     text.with_halo(style.color.page)
 }
 
-/// A line from a spot to a box that lies apart from it.
-fn leader(spot: (f64, f64), rect: Rect, style: &Style) -> Group {
+/// The leader of a label that lies apart from its spot.
+pub(super) fn leader(line: Option<Line>, style: &Style) -> Group {
     let mut group = Group::new("leader");
-    let end = (spot.0.clamp(rect[0], rect[2]), spot.1.clamp(rect[1], rect[3]));
-    let length = libm::hypot(end.0 - spot.0, end.1 - spot.1);
-    if length < 4.5 {
-        return group;
+    if let Some((from, to)) = line {
+        let mut path = PathData::new();
+        path.line(&[from, to]);
+        group.shape(Shape::stroked(path.clone(), style.color.page, style.line.leader + HALO));
+        group.shape(Shape::stroked(path, style.color.ink, style.line.leader));
     }
-    let t = 1.6 / length;
-    let start = (spot.0 + t * (end.0 - spot.0), spot.1 + t * (end.1 - spot.1));
-    let mut path = PathData::new();
-    path.line(&[start, end]);
-    group.shape(Shape::stroked(path.clone(), style.color.page, style.line.leader + HALO));
-    group.shape(Shape::stroked(path, style.color.ink, style.line.leader));
     group
-}
-
-/// Boxes inside a zone, lower ones cheaper.
-fn zone_boxes(outline: &Ring, view: &View, width: f64, height: f64) -> Vec<(Rect, f64)> {
-    let zone = Polygon { outer: outline.clone(), holes: Vec::new() };
-    let (right, bottom) = (view.x + view.width(), view.y + view.height());
-    let mut boxes = Vec::new();
-    let mut y = bottom - height - 1.5;
-    while y > view.y + 1.0 {
-        let mut x = view.x + 1.5;
-        while x + width < right - 1.0 {
-            let rect = [x, y, x + width, y + height];
-            let corners = [(x, y), (x + width, y), (x, y + height), (x + width, y + height)];
-            if corners.iter().all(|&corner| zone.contains(view.back(corner))) {
-                boxes.push((rect, 0.008 * (bottom - y)));
-            }
-            x += 2.0;
-        }
-        y -= 3.0;
-    }
-    boxes
 }

@@ -3,10 +3,15 @@
 //! A picture is a [`Scene`]: items in millimeters on a sheet, in reading order. [`svg`] turns a scene into text and
 //! [`png`] renders that very text, so the two cannot differ. Nothing here knows how a board is read or solved.
 
+pub mod callout;
 pub mod contour;
 pub mod density;
+pub mod flow;
 mod font;
 pub mod frame;
+pub mod joint;
+mod label;
+pub mod list;
 pub mod map;
 mod number;
 pub mod panel;
@@ -25,7 +30,7 @@ mod view;
 pub use font::width_mm;
 pub use number::{grouped, significant, with_prefix};
 pub use path::PathData;
-pub use scale::DensityScale;
+pub use scale::{DensityScale, ScaleChoice};
 pub use scene::{Group, Image, Item, Scene, Shape, TextBox};
 pub use text::{Anchor, Span, Text, italic, plain, raised, shortened, wrapped};
 pub use view::View;

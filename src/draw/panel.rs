@@ -1,6 +1,8 @@
-//! Panels beside a map: key figures, section at the track, locator, words explained.
+//! Panels beside a map: key figures, findings, section at the track, locator. Distances between lines follow the
+//! style's type size.
 
 use super::number::coordinate;
+use super::list::ListedFinding;
 use super::path::PathData;
 use super::scale::DensityScale;
 use super::scene::{Group, Shape};
@@ -10,7 +12,9 @@ use crate::geom::{Bounds, Polygon, Region};
 use crate::style::{Face, Style};
 
 /// Width of a panel in mm.
-pub const WIDTH: f64 = 64.5;
+pub fn width(style: &Style) -> f64 {
+    64.5 * style.font.pitch()
+}
 
 /// A panel drawn from (0, 0) is placed by its caller.
 #[derive(Clone, Debug)]
@@ -26,6 +30,8 @@ pub struct Panel {
 pub enum PanelKind {
     /// Key figures.
     Figures(Vec<KeyFigure>),
+    /// Findings, and how many more there are.
+    Findings(Vec<ListedFinding>, usize),
     /// Section through the stackup at the track.
     Section(Section),
     /// The whole board with the window of the map.
@@ -50,6 +56,8 @@ pub struct KeyFigure {
     pub tick: Option<f64>,
     /// Lines below: reference in figures, which way is good.
     pub notes: Vec<String>,
+    /// What stands at the right of its name in small type where there is no value: the head of the last column.
+    pub aside: String,
     /// Rows of a small table: name, bar, tick, value, reference.
     pub rows: Vec<KeyRow>,
 }
@@ -98,46 +106,60 @@ const NOTE: f64 = 4.0;
 
 impl Panel {
     /// Key figures.
-    pub fn figures(figures: Vec<KeyFigure>) -> Self {
-        let height = HEAD + figures.iter().map(figure_height).sum::<f64>();
-        Self { height, kind: PanelKind::Figures(figures) }
+    pub fn figures(figures: Vec<KeyFigure>, style: &Style) -> Self {
+        let heights = figures.iter().map(figure_height).sum::<f64>();
+        Self { height: (HEAD + heights) * style.font.pitch(), kind: PanelKind::Figures(figures) }
+    }
+
+    /// Findings; `rest` more are counted.
+    pub fn findings(findings: Vec<ListedFinding>, rest: usize, style: &Style) -> Self {
+        let height = super::list::height(&findings, rest, width(style), style);
+        Self { height, kind: PanelKind::Findings(findings, rest) }
     }
 
     /// A section.
-    pub fn section(section: Section) -> Self {
-        Self {
-            height: HEAD + 5.0 + section_pitch(&section) * section.layers.len() as f64,
-            kind: PanelKind::Section(section),
-        }
+    pub fn section(section: Section, style: &Style) -> Self {
+        let last = rows(&section).last().copied().unwrap_or(0.0);
+        Self { height: (HEAD + 4.4 + last) * style.font.pitch(), kind: PanelKind::Section(section) }
     }
 
     /// A locator.
-    pub fn locator(outline: Region, window: Bounds) -> Self {
+    pub fn locator(outline: Region, window: Bounds, style: &Style) -> Self {
         let board = outline.bounds();
         let view = View::filling(board, 0.0, 0.0, 40.0, 30.0);
         let height = if view.turned { 30.0 } else { view.height() };
-        Self { height: HEAD + height + 3.0, kind: PanelKind::Locator { outline, window } }
+        let height = HEAD * style.font.pitch() + height + 3.0;
+        Self { height, kind: PanelKind::Locator { outline, window } }
     }
 
     /// Draws the panel.
     pub fn draw(&self, x: f64, y: f64, style: &Style) -> Group {
         match &self.kind {
             PanelKind::Figures(figures) => draw_figures(x, y, figures, style),
+            PanelKind::Findings(findings, rest) => {
+                super::list::draw(x, y, width(style), findings, *rest, style)
+            }
             PanelKind::Section(section) => draw_section(x, y, section, style),
             PanelKind::Locator { outline, window } => draw_locator(x, y, outline, *window, style),
         }
     }
 }
 
-fn heading(group: &mut Group, x: f64, y: f64, text: &str, style: &Style) {
-    group.text(Text::new(x, y + 3.0, style.font.body, Face::Bold, style.color.ink, text));
+/// Heading of a panel with a rule below.
+pub(super) fn heading(group: &mut Group, (x, y, width): (f64, f64, f64), text: &str, style: &Style) {
+    let pitch = style.font.pitch();
+    let text = shortened(Face::Bold, style.font.body, text, width);
+    group.text(Text::new(x, y + 3.0 * pitch, style.font.body, Face::Bold, style.color.ink, &text));
     let mut rule = PathData::new();
-    rule.line(&[(x, y + 4.6), (x + WIDTH, y + 4.6)]);
+    rule.line(&[(x, y + 4.6 * pitch), (x + width, y + 4.6 * pitch)]);
     group.shape(Shape::stroked(rule, style.color.rule, style.line.rule));
 }
 
 fn figure_height(figure: &KeyFigure) -> f64 {
-    let bar = if figure.bar.is_some() || figure.tick.is_some() { 3.0 } else { 0.6 };
+    let bar = match (figure.bar.is_some() || figure.tick.is_some(), figure.notes.is_empty()) {
+        (true, _) => 3.0,
+        (false, noted) => if noted { 0.0 } else { 0.6 },
+    };
     let rows = if figure.rows.is_empty() { 0.0 } else { 4.9 * figure.rows.len() as f64 };
     5.2 + bar + NOTE * figure.notes.len() as f64 + rows + 2.0
 }
@@ -167,53 +189,57 @@ fn bar(
 }
 
 fn draw_figures(x: f64, y: f64, figures: &[KeyFigure], style: &Style) -> Group {
+    let (pitch, full) = (style.font.pitch(), width(style));
     let mut group = Group::new("key-figures").labeled("group", "key figures");
-    heading(&mut group, x, y, "Key figures", style);
+    heading(&mut group, (x, y, full), style.word("Key figures"), style);
     let color = style.color;
-    let mut top = y + HEAD;
+    let mut top = y + HEAD * pitch;
     for figure in figures {
-        let base = top + 4.0;
+        let base = top + 4.0 * pitch;
         group.text(Text::new(x, base, style.font.body, Face::Narrow, color.ink, &figure.name));
         let taken = marked_width(Face::Narrow, style.font.body, &figure.name) + 2.0;
-        let wanted = marked_width(Face::Bold, style.font.value, &figure.value);
-        let size = style.font.value * ((WIDTH - taken) / wanted).clamp(0.6, 1.0);
-        let value = Text::new(x + WIDTH, base, size, Face::Bold, color.ink, &figure.value);
+        let wanted = marked_width(Face::Bold, style.font.value, &figure.value).max(0.1);
+        let size = style.font.value * ((full - taken) / wanted).clamp(0.6, 1.0);
+        let value = Text::new(x + full, base, size, Face::Bold, color.ink, &figure.value);
         group.text(value.anchored(Anchor::End));
-        let mut row = top + 5.2;
+        let aside = Text::new(x + full, base, style.font.tick, Face::Narrow, color.ink_soft, &figure.aside);
+        group.text(aside.anchored(Anchor::End));
+        let mut row = top + 5.2 * pitch;
         if figure.bar.is_some() || figure.tick.is_some() {
-            bar(&mut group, (x, row + 0.5, WIDTH), figure.bar, figure.tick, style);
-            row += 3.0;
-        } else {
-            row += 0.6;
+            bar(&mut group, (x, row + 0.5, full), figure.bar, figure.tick, style);
+            row += 3.0 * pitch;
+        } else if !figure.notes.is_empty() {
+            row += 0.6 * pitch;
         }
         for note in &figure.notes {
-            row += NOTE;
+            row += NOTE * pitch;
             group.text(Text::new(x, row - 0.2, style.font.tick, Face::Narrow, color.ink_soft, note));
         }
         for entry in &figure.rows {
-            row += 4.9;
-            let base = row - 1.0;
+            row += 4.9 * pitch;
+            let base = row - 1.0 * pitch;
             group.text(Text::new(x, base, style.font.label, Face::Narrow, color.ink, &entry.name));
             if entry.bar.is_some() {
-                bar(&mut group, (x + 9.0, base - 2.0, 20.0), entry.bar, entry.tick, style);
+                bar(&mut group, (x + 9.0 * pitch, base - 2.0, 20.0 * pitch), entry.bar, entry.tick, style);
             }
-            let value =
-                Text::new(x + 46.0, base, style.font.label, Face::NarrowBold, color.ink, &entry.value);
+            let size = style.font.label;
+            let value = Text::new(x + 46.0 * pitch, base, size, Face::NarrowBold, color.ink, &entry.value);
             group.text(value.anchored(Anchor::End));
             let reference =
-                Text::new(x + WIDTH, base, style.font.tick, Face::Narrow, color.ink_soft, &entry.reference);
+                Text::new(x + full, base, style.font.tick, Face::Narrow, color.ink_soft, &entry.reference);
             group.text(reference.anchored(Anchor::End));
         }
-        top += figure_height(figure);
+        top += figure_height(figure) * pitch;
     }
     group
 }
 
 fn draw_locator(x: f64, y: f64, outline: &Region, window: Bounds, style: &Style) -> Group {
     let mut group = Group::new("locator").labeled("graphics-object", "place of the map on the board");
-    heading(&mut group, x, y, "Place on the board", style);
-    let mut view = View::filling(outline.bounds(), x, y + HEAD + 1.0, 40.0, 30.0);
-    view = View { x, y: y + HEAD + 1.0, turned: false, ..view };
+    heading(&mut group, (x, y, width(style)), style.word("Place on the board"), style);
+    let top = y + HEAD * style.font.pitch() + 1.0;
+    let mut view = View::filling(outline.bounds(), x, top, 40.0, 30.0);
+    view = View { x, y: top, turned: false, ..view };
     let fit = (40.0 / view.width()).min(30.0 / view.height());
     view.scale *= fit;
     let mut board = PathData::coarse();
@@ -231,8 +257,21 @@ fn draw_locator(x: f64, y: f64, outline: &Region, window: Bounds, style: &Style)
     group
 }
 
-fn section_pitch(section: &Section) -> f64 {
-    if section.layers.len() > 4 { 4.6 } else { 5.4 }
+/// Places of the layers below the first, in mm at the normal type size: wide between track and plane, where the spread
+/// is drawn.
+fn rows(section: &Section) -> Vec<f64> {
+    let pitch = if section.layers.len() > 4 { 4.6 } else { 5.2 };
+    let mut at = 0.0;
+    let mut all = Vec::with_capacity(section.layers.len());
+    for (index, layer) in section.layers.iter().enumerate() {
+        if index > 0 {
+            let above = &section.layers[index - 1];
+            let pair = (layer.track && above.plane) || (layer.plane && above.track);
+            at += if pair { 1.8 * pitch } else { pitch };
+        }
+        all.push(at);
+    }
+    all
 }
 
 /// Profile of a uniform strip over an endless plane relative to the peak of a thin track: (h/w)[atan((u + w/2)/h) -
@@ -245,53 +284,49 @@ fn spread(u: f64, width: f64, height: f64) -> f64 {
 }
 
 fn draw_section(x: f64, y: f64, section: &Section, style: &Style) -> Group {
+    let (k, full) = (style.font.pitch(), width(style));
     let height_mm = coordinate(section.height_m * 1e3);
     let label = format!("section at the track, height {height_mm} mm");
     let mut group = Group::new("section").labeled("graphics-object", label);
-    heading(&mut group, x, y, "Section at the track, not to scale", style);
+    heading(&mut group, (x, y, full), style.word("Section at the track, not to scale"), style);
     let color = style.color;
-    let (left, right) = (x + 17.0, x + 43.5);
+    let (left, right) = (x + 17.0 * k, x + 43.5 * k);
     let middle = 0.5 * (left + right);
-    let pitch = section_pitch(section);
-    let row = |index: usize| y + HEAD + 4.6 + pitch * index as f64;
-    let last = section.layers.len().saturating_sub(1);
+    let places: Vec<f64> = rows(section).into_iter().map(|at| y + (HEAD + 2.4 + at) * k).collect();
+    let (Some(&first), Some(&last)) = (places.first(), places.last()) else { return group };
     let mut ground = PathData::new();
-    ground.rect(left, row(0) - 0.9, right - left, row(last) - row(0) + 1.8);
+    ground.rect(left, first - 0.9, right - left, last - first + 1.8);
     group.shape(Shape::filled(ground, color.panel));
     let track = section.layers.iter().position(|layer| layer.track);
     let plane = section.layers.iter().position(|layer| layer.plane);
     if let (Some(track), Some(plane)) = (track, plane) {
         let up = if track < plane { -1.0 } else { 1.0 };
-        spread_shape(&mut group, section, (left, right, row(plane) + 0.6 * up), 0.8 * up * pitch, style);
+        let gap = (places[plane] - places[track]).abs();
+        spread_shape(&mut group, section, (left, right, places[plane] + 0.6 * up), up * (gap - 2.2), style);
     }
-    for (index, layer) in section.layers.iter().enumerate() {
-        let at = row(index);
+    for (layer, &at) in section.layers.iter().zip(&places) {
         let mut path = PathData::new();
         if layer.track {
             path.rect(middle - 2.2, at - 0.6, 4.4, 1.2);
         } else {
-            path.rect(
-                left,
-                at - if layer.plane { 0.6 } else { 0.35 },
-                right - left,
-                if layer.plane { 1.2 } else { 0.7 },
-            );
+            let half = if layer.plane { 0.6 } else { 0.35 };
+            path.rect(left, at - half, right - left, 2.0 * half);
         }
         let main = layer.track || layer.plane;
         group.shape(Shape::filled(path, if main { color.ink } else { color.rule }));
         let (face, ink) = if main { (Face::NarrowBold, color.ink) } else { (Face::Narrow, color.ink_soft) };
         let name = shortened(face, style.font.tick, &layer.name, left - x - 1.4);
-        group.text(Text::new(x, at + 1.15, style.font.tick, face, ink, &name));
+        group.text(Text::new(x, at + 1.15 * k, style.font.tick, face, ink, &name));
     }
     if let (Some(track), Some(plane)) = (track, plane) {
-        let (a, b) = (row(track.min(plane)) + 0.6, row(track.max(plane)) - 0.6);
+        let (a, b) = (places[track.min(plane)] + 0.6, places[track.max(plane)] - 0.6);
         let at = right + 2.4;
         let mut path = PathData::new();
         path.line(&[(right + 0.6, a), (at + 1.2, a)])
             .line(&[(right + 0.6, b), (at + 1.2, b)])
             .line(&[(at, a), (at, b)]);
         group.shape(Shape::stroked(path, color.ink, 0.25));
-        let text = format!("{} = {height_mm} mm", italic("h"));
+        let text = format!("{} = {height_mm}\u{a0}mm", italic("h"));
         group.text(Text::new(at + 2.0, 0.5 * (a + b) + 1.2, style.font.tick, Face::Narrow, color.ink, &text));
     }
     group
@@ -306,18 +341,25 @@ fn spread_shape(
     rise: f64,
     style: &Style,
 ) {
-    const SLICES: usize = 56;
+    const SLICES: usize = 96;
     let reach = 6.0 * section.height_m;
     let peak = spread(0.0, section.width_m, section.height_m);
     let step = (right - left) / SLICES as f64;
     let anchor = 1.0 / (std::f64::consts::PI * section.height_m);
+    let mut rim = Vec::with_capacity(SLICES);
     for slice in 0..SLICES {
         let u = ((slice as f64 + 0.5) / SLICES as f64 * 2.0 - 1.0) * reach;
         let value = spread(u, section.width_m, section.height_m);
         let color = style.density.gradient.at(section.scale.place(section.scale.level_db(value * anchor)));
         let high = rise * value / peak;
         let mut path = PathData::coarse();
-        path.rect(left + slice as f64 * step, base.min(base + high), step, high.abs());
-        group.shape(Shape::filled(path, color).outlined(color, 0.05));
+        // Slices overlap, so that no seam shows; the last one keeps to the right edge.
+        let wide = if slice + 1 == SLICES { step } else { step + 0.1 };
+        path.rect(left + slice as f64 * step, base.min(base + high), wide, high.abs());
+        group.shape(Shape::filled(path, color));
+        rim.push((left + (slice as f64 + 0.5) * step, base + high));
     }
+    let mut outline = PathData::coarse();
+    outline.line(&super::contour::simplified(&rim, 0.02));
+    group.shape(Shape::stroked(outline, style.color.ink, 0.25));
 }

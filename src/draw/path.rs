@@ -86,6 +86,26 @@ impl PathData {
         self
     }
 
+    /// A box with its upper left corner at `(x, y)` whose left and right ends are half circles; a circle when square.
+    pub fn pill(&mut self, (x, y): (f64, f64), width: f64, height: f64) -> &mut Self {
+        let radius = 0.5 * height;
+        let straight = (width - height).max(0.0);
+        let mut arc = String::from("a");
+        push_coordinate(&mut arc, radius, self.decimals);
+        arc.push(' ');
+        push_coordinate(&mut arc, radius, self.decimals);
+        arc.push_str(" 0 0 1 0 ");
+        self.pair('M', (x + radius, y));
+        for (line, turn) in [(straight, height), (-straight, -height)] {
+            self.text.push('h');
+            push_coordinate(&mut self.text, line, self.decimals);
+            self.text.push_str(&arc);
+            push_coordinate(&mut self.text, turn, self.decimals);
+        }
+        self.text.push('Z');
+        self
+    }
+
     /// Whether nothing was drawn.
     pub fn is_empty(&self) -> bool {
         self.text.is_empty()

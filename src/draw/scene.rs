@@ -115,6 +115,8 @@ pub struct Image {
 pub struct Group {
     /// Name of the layer or part; letters, digits and hyphens.
     pub name: String,
+    /// Id in the file for links and tests; empty for none. Letters, digits, hyphens and periods.
+    pub id: String,
     /// Role for assistive technology, for example `graphics-object`.
     pub role: &'static str,
     /// What it shows, in words.

@@ -225,6 +225,9 @@ impl Writer {
             id
         });
         self.text.push_str("<g");
+        if !group.id.is_empty() {
+            self.attribute("id", &group.id);
+        }
         if !group.name.is_empty() {
             self.attribute("data-name", &group.name);
         }

@@ -1,8 +1,9 @@
 //! The ticket map: one net, one plane, one frequency, on one A4 page that says the result in words.
 
 use super::frame::{LegendEntry, caution, color_scale, legend, rulers, scale_bar, title_strip};
+use super::joint::{self, JointForm, JointMark};
 use super::map::{MapData, MapLook, draw_map};
-use super::panel::{Panel, WIDTH};
+use super::panel::{Panel, width as panel_width};
 use super::scale::DensityScale;
 use super::scene::{Group, Scene};
 use super::text::{Text, italic, marked_width, wrapped};
@@ -47,20 +48,45 @@ pub struct TicketSheet {
 
 const MAP_X: f64 = 17.0;
 const MAP_Y: f64 = 28.5;
-/// Room for the map in mm.
-pub const MAP_WIDTH: f64 = 198.0;
-/// Room for the map in mm.
-pub const MAP_HEIGHT: f64 = 117.0;
-const STRIP_Y: f64 = 188.4;
-const WORDS_Y: f64 = 181.0;
-const CAPTION_PITCH: f64 = 4.4;
-/// Room for the scale bar at the right of the legend.
-const BAR_ROOM: f64 = 40.0;
 const GAP: f64 = 9.0;
+
+/// Places that follow from the sheet's size and the style's type.
+#[derive(Clone, Copy, Debug)]
+struct Grid {
+    /// Line pitch relative to the normal type size.
+    pitch: f64,
+    /// Height of the map.
+    map: f64,
+    /// First baseline of the plain words, upper edge of the title strip, first baseline of a caution in one line.
+    words: f64,
+    strip: f64,
+    caution: f64,
+    /// Distance of lines of the caption.
+    caption: f64,
+    /// Room for the scale bar at the right of the legend.
+    bar: f64,
+}
+
+fn grid(style: &Style) -> Grid {
+    let pitch = style.font.pitch();
+    let height = style.ticket.height;
+    let caution = height - 5.4;
+    let strip = caution - 5.2 * pitch - 11.0 * pitch;
+    let words = strip - 7.4 * pitch;
+    // Below the map: ruler, caption, color scale, legend.
+    let map = words - MAP_Y - 35.5 * pitch;
+    Grid { pitch, map, words, strip, caution, caption: 4.4 * pitch, bar: 40.0 * pitch }
+}
+
+/// Room for the map of a sheet in mm: width and height.
+pub fn map_room(style: &Style) -> (f64, f64) {
+    (style.ticket.width - style.ticket.margin[0] - MAP_X - GAP - panel_width(style), grid(style).map)
+}
 
 /// The scene of a ticket map.
 pub fn scene(sheet: &TicketSheet, style: &Style) -> Scene {
     let (width, margin) = (style.ticket.width, style.ticket.margin[0]);
+    let grid = grid(style);
     let right = width - margin;
     let mut scene = Scene {
         width,
@@ -88,21 +114,21 @@ pub fn scene(sheet: &TicketSheet, style: &Style) -> Scene {
     scene.group(drawn.group);
     scene.group(rulers(&view, sheet.origin, style));
 
-    let mut y = MAP_Y + view.height() + 10.4;
+    let mut y = MAP_Y + view.height() + 3.2 + 7.2 * grid.pitch;
     let mut caption = Group::new("scale-caption");
     for line in caption_lines(sheet, room, style) {
         caption.text(Text::new(MAP_X, y, style.font.label, Face::Narrow, style.color.ink, &line));
-        y += CAPTION_PITCH;
+        y += grid.caption;
     }
     scene.group(caption);
-    y += 2.2;
-    scene.group(color_scale(MAP_X, y, block - 24.0, &sheet.scale, &drawn.contours, style));
-    y += 13.4;
-    let (group, last) = legend(MAP_X, y, room - BAR_ROOM, &entries(&sheet.map), style);
+    y += 2.2 * grid.pitch;
+    scene.group(color_scale(MAP_X, y, block - 24.0 * grid.pitch, &sheet.scale, &drawn.contours, style));
+    y += 5.2 + 8.2 * grid.pitch;
+    let (group, last) = legend(MAP_X, y, room - grid.bar, &entries(&sheet.map), style);
     scene.group(group);
     scene.group(scale_bar(&view, MAP_X + room, y - 1.1, style));
 
-    for (panel, (x, y)) in sheet.panels.iter().zip(slots(&sheet.panels, block, last + 3.0, right)) {
+    for (panel, (x, y)) in sheet.panels.iter().zip(slots(&sheet.panels, block, last + 3.0, right, style)) {
         scene.group(panel.draw(x, y, style));
     }
     let mut words = Group::new("words").labeled("group", "in plain words");
@@ -113,13 +139,13 @@ pub fn scene(sheet: &TicketSheet, style: &Style) -> Scene {
     for (row, line) in
         wrapped(Face::Narrow, style.font.tick, &text, right - margin).iter().take(2).enumerate()
     {
-        let y = WORDS_Y + 4.0 * row as f64;
+        let y = grid.words + 4.0 * grid.pitch * row as f64;
         words.text(Text::new(margin, y, style.font.tick, Face::Narrow, style.color.ink_soft, line));
     }
     scene.group(words);
-    scene.group(title_strip(margin, STRIP_Y, right - margin, &sheet.fields, style));
+    scene.group(title_strip(margin, grid.strip, right - margin, &sheet.fields, style));
     let lines = wrapped(Face::Narrow, style.font.tick, &sheet.caution, right - margin - 6.0).len();
-    let first = if lines > 1 { 203.2 } else { 204.6 };
+    let first = grid.caution - if lines > 1 { 1.4 * grid.pitch } else { 0.0 };
     scene.group(caution(margin, first, right - margin, &sheet.caution, style));
     scene
 }
@@ -127,15 +153,16 @@ pub fn scene(sheet: &TicketSheet, style: &Style) -> Scene {
 /// The view of the map, the width of what belongs to it, and the width up to the first column of panels. The map
 /// gives way where the caption or the legend needs a second line.
 fn placed_view(sheet: &TicketSheet, right: f64, style: &Style) -> (View, f64, f64) {
-    let mut height = MAP_HEIGHT;
+    let (grid, (room_wide, room_high)) = (grid(style), map_room(style));
+    let mut height = room_high;
     loop {
-        let view = View::fitted(sheet.window, MAP_X, MAP_Y, MAP_WIDTH, height);
-        let block = view.width().max(110.0);
-        let first = columns(block, right).first().map_or(right, |column| column.0);
+        let view = View::fitted(sheet.window, MAP_X, MAP_Y, room_wide, height);
+        let block = view.width().max(110.0 * grid.pitch);
+        let first = columns(block, right, style).first().map_or(right, |column| column.0);
         let room = first - 5.0 - MAP_X;
         let captions = caption_lines(sheet, room, style).len().saturating_sub(1) as f64;
-        let (_, last) = legend(MAP_X, 0.0, room - BAR_ROOM, &entries(&sheet.map), style);
-        let most = MAP_HEIGHT - captions * CAPTION_PITCH - last;
+        let (_, last) = legend(MAP_X, 0.0, room - grid.bar, &entries(&sheet.map), style);
+        let most = room_high - captions * grid.caption - last;
         if view.height() <= most + 1e-9 || height < 40.0 {
             return (view, block, room);
         }
@@ -145,8 +172,9 @@ fn placed_view(sheet: &TicketSheet, right: f64, style: &Style) -> (View, f64, f6
 
 fn caption_lines(sheet: &TicketSheet, room: f64, style: &Style) -> Vec<String> {
     let anchor = super::number::significant(sheet.scale.anchor(), 3);
+    let kind = if sheet.scale.linear { ", linear scale" } else { "" };
     let text = format!(
-        "Return current density per ampere in the net. 0\u{a0}dB is 1/(\u{3c0}{}) = {anchor}\u{a0}A/m per A, the density under a straight thin track over unbroken copper.",
+        "Return current density per ampere in the net{kind}. 0\u{a0}dB is 1/(\u{3c0}{}) = {anchor}\u{a0}A/m per A, the density under a straight thin track over unbroken copper.",
         italic("h")
     );
     wrapped(Face::Narrow, style.font.label, &text, room)
@@ -183,23 +211,36 @@ fn entries(map: &MapData) -> Vec<LegendEntry> {
         all.push(LegendEntry::Receiver);
     }
     all.push(LegendEntry::Landing);
+    let is_via = |joint: &&JointMark| joint.form == JointForm::Via;
+    let carries = |joint: &&JointMark| joint.current >= joint::LEAST;
+    if map.joints.iter().filter(is_via).any(|joint| carries(&joint)) {
+        all.push(LegendEntry::Via);
+    }
+    if map.joints.iter().filter(|joint| !is_via(joint)).any(|joint| carries(&joint)) {
+        all.push(LegendEntry::Part);
+    }
+    if map.flow.is_some() {
+        all.push(LegendEntry::Flow);
+    }
     all
 }
 
 /// Upper left corners of the columns right of the map.
-fn columns(block: f64, right: f64) -> Vec<(f64, f64)> {
+fn columns(block: f64, right: f64, style: &Style) -> Vec<(f64, f64)> {
+    let wide = panel_width(style);
     let start = MAP_X + block + GAP;
-    let count = (((right - start + GAP) / (WIDTH + GAP)).floor() as usize).max(1);
-    (0..count).map(|index| (right - WIDTH - (count - 1 - index) as f64 * (WIDTH + GAP), MAP_Y)).collect()
+    let count = (((right - start + GAP + 1e-6) / (wide + GAP)).floor() as usize).max(1);
+    (0..count).map(|index| (right - wide - (count - 1 - index) as f64 * (wide + GAP), MAP_Y)).collect()
 }
 
 /// Upper left corners of panels: each goes to the column right of the map that is filled least, or, where it does not
 /// fit there, under the map. A panel that fits nowhere ends the list.
-fn slots(panels: &[Panel], block: f64, bottom: f64, right: f64) -> Vec<(f64, f64)> {
-    let limit = WORDS_Y - 4.0;
-    let mut beside = columns(block, right);
-    let count = ((block + GAP) / (WIDTH + GAP)).floor() as usize;
-    let mut below: Vec<(f64, f64)> = (0..count).map(|n| (MAP_X + n as f64 * (WIDTH + GAP), bottom)).collect();
+fn slots(panels: &[Panel], block: f64, bottom: f64, right: f64, style: &Style) -> Vec<(f64, f64)> {
+    let limit = grid(style).words - 4.0;
+    let wide = panel_width(style);
+    let mut beside = columns(block, right, style);
+    let count = ((block + GAP) / (wide + GAP)).floor() as usize;
+    let mut below: Vec<(f64, f64)> = (0..count).map(|n| (MAP_X + n as f64 * (wide + GAP), bottom)).collect();
     let mut places = Vec::new();
     for panel in panels {
         let fits = |column: &&mut (f64, f64)| column.1 + panel.height <= limit;

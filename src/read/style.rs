@@ -2,16 +2,19 @@
 
 use crate::diag::{Diagnostic, code::style as code};
 use crate::style::{
-    ChangeLook, Colors, DensityLook, Gradient, Lettering, Lines, PairLook, Rgb, Rules, Sheet, Style, check,
+    ChangeLook, Colors, DensityLook, Gradient, LABELS, Lettering, Lines, PairLook, Rgb, Rules, Sheet, Style, check,
     gradient_names,
 };
 use serde::Deserialize;
+use std::collections::BTreeMap;
 use std::ops::Range;
 
 /// The styles that come with the program: name and text.
-pub const BUILT_IN: [(&str, &str); 2] = [
+pub const BUILT_IN: [(&str, &str); 4] = [
     ("paper", include_str!("../../styles/paper.toml")),
     ("screen", include_str!("../../styles/screen.toml")),
+    ("mono", include_str!("../../styles/mono.toml")),
+    ("large", include_str!("../../styles/large.toml")),
 ];
 
 /// A style that comes with the program. The faults of an unknown name list the known ones.
@@ -84,6 +87,8 @@ struct StyleFile {
     series: GradientTable,
     sheet: SheetTable,
     rules: RuleTable,
+    #[serde(default)]
+    labels: BTreeMap<String, String>,
 }
 
 #[derive(Deserialize)]
@@ -145,10 +150,20 @@ struct LineTable {
 #[derive(Deserialize)]
 #[serde(deny_unknown_fields)]
 struct DensityTable {
-    map: String,
+    map: Option<String>,
+    stops: Option<Vec<String>>,
+    #[serde(default)]
     turn_over: bool,
+    #[serde(default = "whole")]
     clip: [f64; 2],
+    /// Number of even steps; 0 for a smooth map.
+    #[serde(default)]
+    steps: usize,
     range_db: f64,
+}
+
+fn whole() -> [f64; 2] {
+    [0.0, 1.0]
 }
 
 #[derive(Deserialize)]
@@ -175,6 +190,12 @@ struct PairTable {
     hue_b: f64,
     light: [f64; 2],
     range_db: [f64; 2],
+    #[serde(default = "usual_chroma")]
+    chroma: f64,
+}
+
+fn usual_chroma() -> f64 {
+    0.17
 }
 
 #[derive(Deserialize)]
@@ -216,8 +237,8 @@ impl StyleFile {
         let font = self.font.build(report);
         let color = self.colour.build(report);
         let line = self.line.build(report);
-        let density =
-            gradient("density", &self.density.map, self.density.turn_over, self.density.clip, report);
+        let density = self.density.gradient(report);
+        let labels = labels(self.labels, report);
         let series = gradient("series", &self.series.map, self.series.turn_over, self.series.clip, report);
         let change = self.change.build(report);
         let ticket = self.sheet.ticket.build("sheet.ticket", report);
@@ -234,6 +255,7 @@ impl StyleFile {
                 hue_b: self.pair.hue_b,
                 light: self.pair.light,
                 range_db: self.pair.range_db,
+                chroma: self.pair.chroma,
             },
             series: series?,
             ticket,
@@ -243,6 +265,7 @@ impl StyleFile {
                 mark_min: self.rules.mark_min,
                 text_size_min: self.rules.text_size_min,
             },
+            labels,
         })
     }
 }
@@ -266,6 +289,49 @@ fn gradient(table: &str, map: &str, turn: bool, clip: [f64; 2], report: Report<'
         report(&format!("{table}.map"), format!("map must be one of {}; got `{map}`", names.join(", ")));
     }
     found
+}
+
+impl DensityTable {
+    fn gradient(&self, report: Report<'_>) -> Option<Gradient> {
+        if self.steps == 1 || self.steps > 60 {
+            report("density.steps", format!("steps must be 0 for a smooth map, or 2 to 60; got {}", self.steps));
+            return None;
+        }
+        let smooth = match (&self.map, &self.stops) {
+            (Some(map), None) => gradient("density", map, self.turn_over, self.clip, report)?,
+            (None, Some(stops)) => {
+                if self.turn_over || self.clip != whole() {
+                    report("density.stops", "`turn_over` and `clip` belong to `map`, not to `stops`".to_owned());
+                }
+                let colors: Vec<Rgb> = stops.iter().map(|stop| rgb("density.stops", stop, report)).collect();
+                let found = Gradient::through(&colors);
+                if found.is_none() {
+                    report("density.stops", format!("stops must be two colors or more; got {}", colors.len()));
+                }
+                found?
+            }
+            (map, _) => {
+                let got = if map.is_some() { "both" } else { "none" };
+                report("density", format!("density needs either `map` or `stops`; got {got}"));
+                return None;
+            }
+        };
+        Some(if self.steps > 0 { smooth.stepped(self.steps) } else { smooth })
+    }
+}
+
+/// Words in place of the program's own, each key one of [`LABELS`].
+fn labels(table: BTreeMap<String, String>, report: Report<'_>) -> Vec<(String, String)> {
+    for (word, own) in &table {
+        if !LABELS.contains(&word.as_str()) {
+            let near = crate::diag::nearest(word, LABELS.iter().copied());
+            let hint = near.map_or(String::new(), |near| format!("; `{near}` is one"));
+            report("labels", format!("label `{word}` must be a word of the pictures{hint}"));
+        } else if own.trim().is_empty() || own.chars().count() > 60 {
+            report("labels", format!("label for `{word}` must have 1 to 60 characters"));
+        }
+    }
+    table.into_iter().collect()
 }
 
 /// A positive length of at most half a meter.
@@ -406,6 +472,26 @@ mod tests {
         load(&text.replacen(from, to, 1), "my.toml").err().unwrap_or_default()
     }
 
+    /// A user's copy with stops of its own and other words; stops that turn in lightness are refused.
+    #[test]
+    fn stops_and_words_of_a_user_are_taken_or_refused() {
+        let own = |stops: &str| {
+            let text = BUILT_IN[0].1.replacen("map        = \"MAGMA\"", stops, 1);
+            let text = text.replacen("turn_over  = true", "", 1).replacen("clip       = [0.02, 0.95]", "", 1);
+            load(&format!("{text}\n[labels]\n\"Key figures\" = \"Kennzahlen\"\n"), "my.toml")
+        };
+        match own("stops      = [\"#DCE9F5\", \"#4A7FB5\", \"#08203A\"]") {
+            Ok(style) => {
+                assert_eq!(style.word("Key figures"), "Kennzahlen");
+                assert_eq!(style.word("track"), "track");
+                assert_eq!(style.density.gradient.colors()[0], Rgb(0xDC, 0xE9, 0xF5));
+            }
+            Err(faults) => panic!("{faults:#?}"),
+        }
+        let faults = own("stops      = [\"#DCE9F5\", \"#08203A\", \"#4A7FB5\"]").err().unwrap_or_default();
+        assert!(faults.iter().any(|fault| fault.text.contains("lightness")), "{faults:#?}");
+    }
+
     #[test]
     fn faults_name_line_and_rule() {
         let cases = [
@@ -419,6 +505,9 @@ mod tests {
             ("page       =", "paper      =", "unknown field `paper`"),
             ("boundary_dash = \"6 1", "boundary_dash = \"6 -1", "dash must be"),
             ("family     = \"IBM Plex Sans\"", "family     = \"Comic\"", "bundled"),
+            ("range_db   = 60", "range_db   = 60\nsteps      = 1", "steps must be"),
+            ("map        = \"MAGMA\"", "stops      = [\"#FFFFFF\", \"#000000\", \"#FFFFFF\"]", "belong to `map`"),
+            ("[rules]", "[labels]\n\"Key figurs\" = \"Zahlen\"\n[rules]", "`Key figures` is one"),
         ];
         for (from, to, word) in cases {
             let faults = changed(from, to);

@@ -32,11 +32,10 @@ pub fn thumbnail(
     chart: &ChartPlan,
     map: &ReturnMap,
     figures: &Figures,
-    scale_height_m: f64,
+    scale: DensityScale,
     style: &Style,
 ) -> Thumbnail {
     let data = map_data(board, review, net, chart, map, figures.contour_levels);
-    let scale = DensityScale { height_m: scale_height_m, range_db: style.density.range_db };
     let label =
         format!("{} on {} at {}", plain(&net.name), plain(&chart.plane.to_string()), hertz(map.frequency_hz));
     Thumbnail {
@@ -79,8 +78,8 @@ pub struct ContactInput<'a> {
     pub columns: Vec<(&'a Band, f64)>,
     /// Rows in any order.
     pub rows: Vec<ContactRow<'a>>,
-    /// Smallest height of all charts of the set in meters.
-    pub scale_height_m: f64,
+    /// The one scale of the set.
+    pub scale: DensityScale,
     /// Style.
     pub style: &'a Style,
     /// Hash of inputs and settings, hexadecimal.
@@ -136,10 +135,7 @@ pub fn contact_scenes(input: &ContactInput) -> Vec<Scene> {
                 frequencies: columns.iter().map(|column| column.frequency.clone()).collect(),
                 rows: page_rows,
                 first_column: index * COLUMNS,
-                scale: DensityScale {
-                    height_m: input.scale_height_m,
-                    range_db: input.style.density.range_db,
-                },
+                scale: input.scale,
                 zones: !input.review.zones.is_empty(),
                 fields: fields(&order, input, (sheet, count), &number),
                 caution: page_caution(&order, input),
@@ -312,7 +308,7 @@ fn fields(
             ("Model", model.to_owned()),
             ("Cell", cell),
             ("Largest residual", residual.map_or("none".to_owned(), super::words::power_of_ten)),
-            ("Smallest height h", given_millimeters(input.scale_height_m)),
+            ("Smallest height h", given_millimeters(input.scale.height_m)),
             ("Picture no.", number.to_owned()),
         ],
     ]

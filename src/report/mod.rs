@@ -8,6 +8,7 @@ mod manifest;
 pub mod numbers;
 mod picture;
 mod plan;
+mod remark;
 mod ticket;
 mod words;
 

@@ -1,18 +1,21 @@
 //! The ticket map of one net, plane and frequency: from plan, map and figures to a picture.
 
 use super::Picture;
+use super::remark::{Remarks, joint_marks, result, worst_here};
 use super::words::{
     band_range, given_millimeters, hertz, hints_at_hazard, millimeters, percent, power_of_ten,
 };
 use crate::board::Board;
 use crate::draw::density::Density;
+use crate::draw::flow::Flow;
 use crate::draw::map::{MapData, MapLeg, MapPin};
 use crate::draw::panel::{KeyFigure, KeyRow, Panel, Section, SectionLayer};
 use crate::draw::png::RenderFault;
-use crate::draw::ticket::{MAP_HEIGHT, MAP_WIDTH, TicketSheet, scene};
+use crate::draw::ticket::{TicketSheet, map_room, scene};
 use crate::draw::{DensityScale, Scene, View, italic, plain, shortened, with_prefix};
-use crate::field::ReturnMap;
+use crate::field::{JointCurrent, ReturnMap};
 use crate::figure::{Figure, Figures};
+use crate::finding::Finding;
 use crate::geom::{Bounds, Point, Polygon};
 use crate::plan::{ChartPlan, PathPlan};
 use crate::review::{Band, Model, Review};
@@ -35,8 +38,12 @@ pub struct TicketInput<'a> {
     pub map: &'a ReturnMap,
     /// Its figures.
     pub figures: &'a Figures,
-    /// Smallest height of all charts of the set, in meters: the anchor of the common scale.
-    pub scale_height_m: f64,
+    /// The one scale of the set.
+    pub scale: DensityScale,
+    /// Findings of the net, most serious first; none when none were sought.
+    pub findings: Option<&'a [Finding]>,
+    /// What vias, parts and ties carry of the return.
+    pub joints: &'a [JointCurrent],
     /// Style.
     pub style: &'a Style,
     /// Hash of inputs and settings, hexadecimal; the picture number comes from it.
@@ -157,12 +164,15 @@ pub(super) fn map_data(
         track,
         landings: vec![chart.driver_landing.at, chart.receiver_landing.at],
         levels,
+        callouts: Vec::new(),
+        joints: Vec::new(),
+        flow: None,
     }
 }
 
 /// The part of the board to draw: all of it, or a window round the track and 80 % of the density when the track would be
 /// too small to be seen.
-pub(super) fn window(board: Bounds, data: &MapData, height_m: f64) -> Bounds {
+pub(super) fn window(board: Bounds, data: &MapData, height_m: f64, room: (f64, f64)) -> Bounds {
     let whole = board.grown(0.5e-3);
     let level = data.levels[1];
     let grid = &data.density.grid;
@@ -189,14 +199,14 @@ pub(super) fn window(board: Bounds, data: &MapData, height_m: f64) -> Bounds {
         min: Point::new(wanted.min.x.max(whole.min.x), wanted.min.y.max(whole.min.y)),
         max: Point::new(wanted.max.x.min(whole.max.x), wanted.max.y.min(whole.max.y)),
     };
-    let scale = |window: Bounds| View::fitted(window, 0.0, 0.0, MAP_WIDTH, MAP_HEIGHT).scale;
+    let scale = |window: Bounds| View::fitted(window, 0.0, 0.0, room.0, room.1).scale;
     let too_small = 3.0 * height_m * 1e3 * scale(whole) < 0.6;
     let larger = scale(wanted) / scale(whole);
-    if larger >= 3.0 || (too_small && larger > 1.2) { widened(wanted, whole, scale(wanted)) } else { whole }
+    if larger >= 3.0 || (too_small && larger > 1.2) { widened(wanted, whole, scale(wanted), room) } else { whole }
 }
 
 /// The window grown to fill the room for the map at its scale, as far as there is board.
-fn widened(window: Bounds, whole: Bounds, scale: f64) -> Bounds {
+fn widened(window: Bounds, whole: Bounds, scale: f64, room: (f64, f64)) -> Bounds {
     let stretch = |low: f64, high: f64, room_mm: f64, least: f64, most: f64| {
         let size = (room_mm * 1e-3 / scale).min(most - least);
         if size <= high - low {
@@ -205,17 +215,21 @@ fn widened(window: Bounds, whole: Bounds, scale: f64) -> Bounds {
         let start = (0.5 * (low + high - size)).clamp(least, most - size);
         (start, start + size)
     };
-    let (x0, x1) = stretch(window.min.x, window.max.x, MAP_WIDTH, whole.min.x, whole.max.x);
-    let (y0, y1) = stretch(window.min.y, window.max.y, MAP_HEIGHT, whole.min.y, whole.max.y);
+    let (x0, x1) = stretch(window.min.x, window.max.x, room.0, whole.min.x, whole.max.x);
+    let (y0, y1) = stretch(window.min.y, window.max.y, room.1, whole.min.y, whole.max.y);
     Bounds { min: Point::new(x0, y0), max: Point::new(x1, y1) }
 }
 
 fn sheet(input: &TicketInput) -> TicketSheet {
     let TicketInput { board, review, net, chart, band, map, figures, style, .. } = *input;
-    let data = map_data(board, review, net, chart, map, figures.contour_levels);
-    let scale = DensityScale { height_m: input.scale_height_m, range_db: style.density.range_db };
+    let mut data = map_data(board, review, net, chart, map, figures.contour_levels);
+    let remarks = Remarks::of(input);
+    data.callouts = remarks.callouts.clone();
+    data.joints = joint_marks(input.joints, chart.plane.layer);
+    data.flow = (map.model == Model::Sheet).then(|| Flow::of(map));
+    let scale = input.scale;
     let bounds = board.outline.bounds();
-    let window = window(bounds, &data, chart.height_m);
+    let window = window(bounds, &data, chart.height_m, map_room(style));
     let cut = window.width() < bounds.width() || window.height() < bounds.height();
     let number = picture_number(
         input.input_hash,
@@ -231,16 +245,20 @@ fn sheet(input: &TicketInput) -> TicketSheet {
         hertz(map.frequency_hz),
     );
     let caution = caution_text(board, map.model, map.frequency_hz, &[&net.name, &chart.plane.net]);
-    let mut panels =
-        vec![Panel::figures(key_figures(input)), Panel::section(section(board, chart, net, scale))];
+    let mut panels = vec![Panel::figures(key_figures(input), style)];
+    if !remarks.listed.is_empty() {
+        panels.push(Panel::findings(remarks.listed.clone(), remarks.rest, style));
+    }
+    panels.push(Panel::section(section(board, chart, net, scale), style));
     if cut {
-        panels.push(Panel::locator(board.outline.clone(), window));
+        panels.push(Panel::locator(board.outline.clone(), window, style));
     }
     let description = format!(
-        "{}. {} {} {caution}",
+        "{}. {} {} {}{caution}",
         headline_text(input, &plain(&net.name)),
         plain_lead(input),
-        figures_text(figures)
+        figures_text(figures),
+        remarks.sentences()
     );
     let residual =
         map.residual.map_or_else(|| "closed form".to_owned(), |residual| format!("{residual:.1e}"));
@@ -282,11 +300,19 @@ fn has_voids(chart: &ChartPlan) -> bool {
 /// The result in words, with `net` as the net's name.
 fn headline_text(input: &TicketInput, net: &str) -> String {
     let band = plain(&input.band.name);
+    if let Some(finding) = worst_here(input) {
+        return result(finding, net, &band);
+    }
     let share = input.figures.share_3h;
-    let Some(value) = share.value else {
-        return format!("{net}: no stretch is straight for long enough to state a share in {band}");
+    let net = &match input.findings {
+        Some([]) => format!("{net}: no findings"),
+        _ => net.to_owned(),
     };
-    let mut text = format!("{net}: {} of the return stays within 3{} in {band}", percent(value), italic("h"));
+    let joint = if input.findings.is_some_and(<[Finding]>::is_empty) { ";" } else { ":" };
+    let Some(value) = share.value else {
+        return format!("{net}{joint} no stretch is straight for long enough to state a share in {band}");
+    };
+    let mut text = format!("{net}{joint} {} of the return stays within 3{} in {band}", percent(value), italic("h"));
     if input.map.model == Model::Spread {
         if has_voids(input.chart) {
             text.push_str("; voids not considered");
@@ -339,12 +365,12 @@ fn key_figures(input: &TicketInput) -> Vec<KeyFigure> {
     let figures = input.figures;
     let share = &figures.share_3h;
     let mut all = vec![KeyFigure {
-        name: format!("Return within 3{} of the track", italic("h")),
+        name: input.style.word("Return within 3h of the track").replace("3h", &format!("3{}", italic("h"))),
         value: share.value.map_or("not stated".to_owned(), percent),
         bar: share.value,
         tick: share.without_voids,
         notes: vec![format!("{}; more is better", reference_text(share, percent))],
-        rows: Vec::new(),
+        ..KeyFigure::default()
     }];
     if let Some((worst, at)) = figures.worst_share_3h {
         let at = at - input.review.origin;
@@ -362,16 +388,15 @@ fn key_figures(input: &TicketInput) -> Vec<KeyFigure> {
         tick: figure.without_voids.map(|value| value / full),
     };
     all.push(KeyFigure {
-        name: "Half-width that holds".to_owned(),
+        name: input.style.word("Half-width that holds").to_owned(),
         rows: widths.iter().zip(HALVES).map(row).collect(),
-        notes: vec!["to each side of the track; right: without voids".to_owned()],
+        aside: input.style.word("without voids").to_owned(),
         ..KeyFigure::default()
     });
     if let Some(extra) = figures.extra_path_m.and_then(|figure| figure.value) {
         all.push(KeyFigure {
-            name: "Extra path by voids".to_owned(),
+            name: format!("{}, 0 is best", input.style.word("Extra path by voids")),
             value: signed(extra, millimeters),
-            notes: vec!["longer way of the return; 0 is best".to_owned()],
             ..KeyFigure::default()
         });
     }
@@ -385,7 +410,7 @@ fn key_figures(input: &TicketInput) -> Vec<KeyFigure> {
             None => "less is better".to_owned(),
         };
         all.push(KeyFigure {
-            name: "Loop inductance".to_owned(),
+            name: input.style.word("Loop inductance").to_owned(),
             value: henry(value),
             notes: vec![note],
             ..KeyFigure::default()

@@ -5,6 +5,7 @@ use super::watch::Watch;
 use crate::board::Board;
 use crate::diag::Diagnostic;
 use crate::diag::code::run as code;
+use crate::draw::DensityScale;
 use crate::field::{Bench, JointCurrent, ReturnMap};
 use crate::figure::{Charted, Figures, chart};
 use crate::plan::{ChartPlan, PathPlan, Plan};
@@ -23,8 +24,8 @@ pub struct Charting<'a, 's> {
     pub style: &'a Style,
     /// Hash over all inputs.
     pub input_hash: &'a str,
-    /// Anchor of the common scale in metres.
-    pub scale_height_m: f64,
+    /// The common scale.
+    pub scale: DensityScale,
     /// Every path of the plan, made ready.
     pub benches: &'a [Bench<'a, 'a>],
     /// File stems by path, chart of its bench and frequency.
@@ -98,12 +99,12 @@ impl<'a> Charting<'a, '_> {
         plan: &ChartPlan,
         band: usize,
         charted: Charted,
-        _joints: &[JointCurrent],
+        joints: &[JointCurrent],
         stem: &str,
         at: (usize, usize),
     ) -> Result<Result<Drawn, Diagnostic>, Diagnostic> {
         let Charted { mut map, figures, .. } = charted;
-        let picture = match self.picture(net, plan, &self.plan.bands[band], &map, &figures, at) {
+        let picture = match self.picture(net, plan, &self.plan.bands[band], (&map, &figures, joints), at) {
             Ok(picture) => picture,
             Err(reason) => return Ok(Err(reason)),
         };
@@ -115,8 +116,8 @@ impl<'a> Charting<'a, '_> {
             })?;
             self.write(&format!("numbers/{}", numbers::file_name(stem)), &bytes)?;
         }
-        let (board, review, height) = (self.board, self.review, self.scale_height_m);
-        let thumbnail = thumbnail(board, review, net, plan, &map, &figures, height, self.style);
+        let (board, review, scale) = (self.board, self.review, self.scale);
+        let thumbnail = thumbnail(board, review, net, plan, &map, &figures, scale, self.style);
         (map.jx, map.jy, map.copper) = (Vec::new(), Vec::new(), Vec::new());
         Ok(Ok(Drawn { map, figures, thumbnail }))
     }
@@ -126,8 +127,7 @@ impl<'a> Charting<'a, '_> {
         net: &PathPlan,
         chart: &ChartPlan,
         band: &Band,
-        map: &ReturnMap,
-        figures: &Figures,
+        (map, figures, joints): (&ReturnMap, &Figures, &[JointCurrent]),
         at: (usize, usize),
     ) -> Result<Picture, Diagnostic> {
         let input = TicketInput {
@@ -138,7 +138,9 @@ impl<'a> Charting<'a, '_> {
             band,
             map,
             figures,
-            scale_height_m: self.scale_height_m,
+            scale: self.scale,
+            findings: None,
+            joints,
             style: self.style,
             input_hash: self.input_hash,
             sheet: self.sheet_number(at, band, map.frequency_hz),

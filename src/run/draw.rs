@@ -9,6 +9,7 @@ use super::watch::Watch;
 use crate::board::{Board, Origin, Stackup};
 use crate::diag::code::{plan as plan_code, read as read_code, run as code};
 use crate::diag::{Diagnostic, Severity};
+use crate::draw::{DensityScale, ScaleChoice};
 use crate::field::{Bench, Workshop};
 use crate::plan::{Plan, apply_review, build};
 use crate::read::review::{ReviewFile, read_review};
@@ -38,6 +39,8 @@ pub struct Order<'a> {
     pub jobs: usize,
     /// Name of a style, or the path of a style file.
     pub style: &'a str,
+    /// Ends of the common scale.
+    pub scale: ScaleChoice,
 }
 
 /// How a run ended that wrote its outputs.
@@ -135,7 +138,7 @@ fn draw_plan(
         plan,
         style: &style.0,
         input_hash: &input_hash(board, review, &file.text, &style.1),
-        scale_height_m: scale_height_m(plan),
+        scale: DensityScale::chosen(scale_height_m(plan), style.0.density.range_db, order.scale),
         benches: &benches,
         stems: &stems(plan, &benches),
         numbers: order.numbers,
@@ -164,7 +167,7 @@ fn draw_plan(
         review,
         columns: frequencies(plan).into_iter().map(|(band, hz)| (&plan.bands[band], hz)).collect(),
         rows: done.iter().flat_map(PathDone::contact).collect(),
-        scale_height_m: charting.scale_height_m,
+        scale: charting.scale,
         style: charting.style,
         input_hash: charting.input_hash,
     });

@@ -4,6 +4,9 @@
 
 use super::{Gradient, Rgb, Style};
 
+/// Least CIE 1976 difference between levels a sixth of the range apart, in the worst of all visions.
+const LEAST_STEP: f64 = 7.0;
+
 /// A broken rule.
 #[derive(Clone, Debug, PartialEq)]
 pub struct Fault {
@@ -81,6 +84,8 @@ fn contrasts(style: &Style, faults: &mut Vec<Fault>) {
         need(name, ink, "page", color.page, mark);
     }
     need("track", color.track, "track_case", color.track_case, mark);
+    // Symbols outside the map stand on the page: bars, discs, the two hues of a pair.
+    need("over", color.over, "page", color.page, mark);
     // The weaker of the two inks is never used, so the better of both counts at every level of the map.
     let worst = style.density.gradient.colors().iter().map(|&ground| {
         let ink = ground.ink_of(color.on_dark, color.on_light);
@@ -104,7 +109,17 @@ fn density(style: &Style, faults: &mut Vec<Fault>) {
             "lightness of density map `{}` must rise or fall all the way; it turns within the part used",
             gradient.name()
         );
-        fault(faults, "density.map", text);
+        fault(faults, map_key(gradient), text);
+    }
+    // Ten decibels of sixty, or one step, must stay apart for everybody.
+    let step = super::vision::least_step(gradient, 6);
+    if step < LEAST_STEP {
+        let text = format!(
+            "levels of density map `{}` a sixth of the range apart must differ by at least {LEAST_STEP} (CIE 1976) for \
+             people with any color-vision deficiency; got {step:.1}",
+            gradient.name()
+        );
+        fault(faults, map_key(gradient), text);
     }
     let page = style.color.page;
     let (low, high) = (page.difference(gradient.at(0.0)), page.difference(gradient.at(1.0)));
@@ -123,6 +138,11 @@ fn density(style: &Style, faults: &mut Vec<Fault>) {
         let text = format!("range must be above 0 dB and at most 120 dB; got {} dB", style.density.range_db);
         fault(faults, "density.range_db", text);
     }
+}
+
+/// The key that gave the gradient.
+fn map_key(gradient: &Gradient) -> &'static str {
+    if gradient.name() == "stops" { "density.stops" } else { "density.map" }
 }
 
 /// Whether lightness L* rises or falls all the way. 8-bit colors jitter by up to 0.4 L* from level to level in the

@@ -42,6 +42,17 @@ impl Rgb {
         })
     }
 
+    /// The nearest color of linear red, green and blue, each cut to 0 to 1.
+    pub fn from_linear(linear: [f64; 3]) -> Self {
+        let [r, g, b] = linear.map(|value| {
+            let value = value.clamp(0.0, 1.0);
+            let coded =
+                if value <= 0.003_130_8 { 12.92 * value } else { 1.055 * libm::pow(value, 1.0 / 2.4) - 0.055 };
+            (coded * 255.0).round() as u8
+        });
+        Self(r, g, b)
+    }
+
     /// Relative luminance, 0 to 1.
     pub fn luminance(self) -> f64 {
         let [r, g, b] = self.linear();

@@ -50,6 +50,30 @@ impl Gradient {
         Some(Self { name, turn_over, clip, colors: (0..Self::LEVELS).map(color).collect() })
     }
 
+    /// A gradient through `stops` at equal distances, lowest value first, interpolated in OKLab; at least two stops.
+    pub fn through(stops: &[Rgb]) -> Option<Self> {
+        let labs: Vec<super::oklab::Oklab> = stops.iter().map(|&stop| super::oklab::to_oklab(stop)).collect();
+        let last = labs.len().checked_sub(1).filter(|&last| last > 0)?;
+        let color = |level: usize| {
+            let u = level as f64 / (Self::LEVELS - 1) as f64 * last as f64;
+            let (from, t) = ((u as usize).min(last - 1), u - (u as usize).min(last - 1) as f64);
+            let mix = |part: usize| labs[from][part] * (1.0 - t) + labs[from + 1][part] * t;
+            super::oklab::from_oklab([mix(0), mix(1), mix(2)])
+        };
+        let colors = (0..Self::LEVELS).map(color).collect();
+        Some(Self { name: "stops", turn_over: false, clip: [0.0, 1.0], colors })
+    }
+
+    /// The same in `count` steps of one color each, that of their middle.
+    pub fn stepped(mut self, count: usize) -> Self {
+        let smooth = self.colors.clone();
+        for (level, color) in self.colors.iter_mut().enumerate() {
+            let step = (level * count / Self::LEVELS).min(count - 1);
+            *color = smooth[(2 * step + 1) * Self::LEVELS / (2 * count)];
+        }
+        self
+    }
+
     /// Name of the gradient.
     pub fn name(&self) -> &'static str {
         self.name

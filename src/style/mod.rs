@@ -6,11 +6,15 @@ mod check;
 mod color;
 mod face;
 mod gradient;
+mod label;
+pub mod oklab;
+pub mod vision;
 
 pub use check::{Fault, check};
 pub use color::{Lab, Rgb};
 pub use face::{Face, font_license};
 pub use gradient::{Gradient, gradient_names};
+pub use label::LABELS;
 
 /// One complete look.
 #[derive(Clone, Debug, PartialEq)]
@@ -37,6 +41,16 @@ pub struct Style {
     pub set: Sheet,
     /// Rules kept by [`check`].
     pub rules: Rules,
+    /// Words in place of the program's own: from one of [`LABELS`] to what is drawn, sorted.
+    pub labels: Vec<(String, String)>,
+}
+
+impl Style {
+    /// What is drawn for a word of the program.
+    pub fn word<'a>(&'a self, english: &'a str) -> &'a str {
+        let found = self.labels.iter().find(|(known, _)| known == english);
+        found.map_or(english, |(_, own)| own)
+    }
 }
 
 /// Type sizes in mm (size of the em square, cap height 0.698 of it) and the family name for other viewers.
@@ -58,6 +72,27 @@ pub struct Lettering {
     pub label: f64,
     /// Names of fields in the title strip.
     pub field: f64,
+}
+
+impl Lettering {
+    /// Distance of lines relative to the normal type size, for places that follow the type.
+    pub fn pitch(&self) -> f64 {
+        self.tick.max(self.label * 3.3 / 3.4).max(self.body * 3.3 / 3.6) / 3.3
+    }
+
+    /// The same with no size above `factor` times the normal one, for sheets whose cells leave no more room.
+    pub fn at_most(&self, factor: f64) -> Self {
+        Self {
+            fallback: self.fallback.clone(),
+            headline: self.headline.min(6.6 * factor),
+            lead: self.lead.min(3.8 * factor),
+            body: self.body.min(3.6 * factor),
+            value: self.value.min(5.0 * factor),
+            tick: self.tick.min(3.3 * factor),
+            label: self.label.min(3.4 * factor),
+            field: self.field.min(3.0 * factor),
+        }
+    }
 }
 
 /// Colors by what they are for.
@@ -165,6 +200,8 @@ pub struct PairLook {
     pub light: [f64; 2],
     /// Levels in dB at the bottom and the top.
     pub range_db: [f64; 2],
+    /// Chroma in OKLCh where one net alone flows; 0 for printers without color.
+    pub chroma: f64,
 }
 
 /// A sheet of paper and its size in pixels.

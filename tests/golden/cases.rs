@@ -2,8 +2,12 @@
 
 use crate::compare::{Case, blessing, check, read_case, root};
 use crate::gauge::{Shape as Board, gauge};
+use ebbmap::draw::callout::Callout;
 use ebbmap::draw::density::Density;
+use ebbmap::draw::flow::Flow;
 use ebbmap::draw::frame::{LegendEntry, caution, color_scale, legend, rulers, scale_bar, title_strip};
+use ebbmap::draw::joint::{JointForm, JointMark};
+use ebbmap::draw::list::ListedFinding;
 use ebbmap::draw::map::{MapData, MapLeg, MapLook, MapPin, draw_map};
 use ebbmap::draw::panel::{KeyFigure, KeyRow, Panel, Section, SectionLayer};
 use ebbmap::draw::plot::share_plot;
@@ -17,6 +21,8 @@ type Golden = (&'static str, fn() -> Scene);
 
 const CASES: &[Golden] = &[
     ("map/paper", || map_scene("paper", false)),
+    ("map/findings", marked_scene),
+    ("map/mono", || map_scene("mono", false)),
     ("map/screen", || map_scene("screen", false)),
     ("map/turned", turned),
     ("frame/color-scale", scale_scene),
@@ -24,6 +30,7 @@ const CASES: &[Golden] = &[
     ("frame/rulers", rulers_scene),
     ("frame/title-strip", strip_scene),
     ("panel/figures", figures_scene),
+    ("panel/findings", findings_scene),
     ("panel/section", section_scene),
     ("plot/share", plot_scene),
     ("text/names", names_scene),
@@ -74,7 +81,7 @@ fn small(style: &Style, width: f64, height: f64, group: Group) -> Scene {
     scene
 }
 
-const SCALE: DensityScale = DensityScale { height_m: 0.2e-3, range_db: 60.0 };
+const SCALE: DensityScale = DensityScale::new(0.2e-3, 60.0);
 
 fn board(shape: &Board) -> (MapData, Bounds) {
     let gauge = gauge(shape);
@@ -92,6 +99,9 @@ fn board(shape: &Board) -> (MapData, Bounds) {
         receiver: pin("U2.6", net.track[net.track.len() - 1].to),
         landings: vec![net.charts[0].driver_landing.at, net.charts[0].receiver_landing.at],
         levels: gauge.figures.contour_levels,
+        callouts: Vec::new(),
+        joints: Vec::new(),
+        flow: None,
     };
     (data, gauge.board.outline.bounds())
 }
@@ -113,6 +123,55 @@ fn map_scene(name: &str, small_cell: bool) -> Scene {
     let view = View { window: bounds.grown(0.5e-3), x: 1.0, y: 1.0, scale: 1.5, turned: false };
     let look = MapLook { style: &style, scale: SCALE, px_per_mm: 4.0, small: small_cell, room_right: 0.0 };
     small(&style, 48.0, 33.0, draw_map(&data, &view, &look, "a map").group)
+}
+
+/// A map with findings, joints and the direction of the return.
+fn marked_scene() -> Scene {
+    let style = style("paper");
+    let shape = Board { zones: false, ..little() };
+    let (mut data, bounds) = board(&shape);
+    let callout = |number: &str, x: f64, y: f64, words: &str| Callout {
+        number: number.to_owned(),
+        at: Point::mm(x, y),
+        words: words.to_owned(),
+    };
+    data.callouts = vec![callout("3.1", 11.4, 9.0, "void S1: +3.4 nH"), callout("3.2", 11.4, 15.0, "slot end")];
+    let joint = |x: f64, y: f64, form, name: &str, current| JointMark {
+        at: Point::mm(x, y),
+        form,
+        name: name.to_owned(),
+        current,
+    };
+    data.joints = vec![
+        joint(21.0, 4.0, JointForm::Part, "C14", 0.31),
+        joint(25.0, 16.0, JointForm::Via, "via", 0.04),
+        joint(4.0, 16.0, JointForm::Tie, "NT1", 0.12),
+    ];
+    data.flow = Some(Flow::of(&gauge(&shape).map));
+    let view = View { window: bounds.grown(0.5e-3), x: 1.0, y: 1.0, scale: 3.0, turned: false };
+    let look = MapLook { style: &style, scale: SCALE, px_per_mm: 2.0, small: false, room_right: 0.0 };
+    small(&style, 95.0, 65.0, draw_map(&data, &view, &look, "a map").group)
+}
+
+fn findings_scene() -> Scene {
+    let style = style("paper");
+    let finding = |number: &str, title: &str, note: &str, remedy: Option<&str>| ListedFinding {
+        number: number.to_owned(),
+        title: title.to_owned(),
+        note: note.to_owned(),
+        remedy: remedy.map(str::to_owned),
+    };
+    let listed = vec![
+        finding(
+            "3.1",
+            "Void S1: +3.4 nH",
+            "at (26.0, 18.0) mm, limit 1.0 nH",
+            Some("bridge the void with copper 2.0 mm wide under the track: 3.4 nH becomes 0.2 nH"),
+        ),
+        finding("12.10", "12 % strays over the boundary", "at (28.8, 20.1) mm (warn)", None),
+    ];
+    let panel = Panel::findings(listed, 2, &style);
+    small(&style, 68.0, panel.height + 3.0, panel.draw(2.0, 1.0, &style))
 }
 
 fn turned() -> Scene {
@@ -146,8 +205,14 @@ fn legend_scene() -> Scene {
         LegendEntry::Receiver,
         LegendEntry::Landing,
         LegendEntry::Contour80,
+        LegendEntry::Flow,
+        LegendEntry::Via,
+        LegendEntry::Part,
     ];
-    small(&style, 80.0, 30.0, legend(2.0, 5.0, 76.0, &entries, &style).0)
+    for entry in entries {
+        assert!(ebbmap::style::LABELS.contains(&entry.words()), "{} can be translated", entry.words());
+    }
+    small(&style, 80.0, 42.0, legend(2.0, 5.0, 76.0, &entries, &style).0)
 }
 
 fn rulers_scene() -> Scene {
@@ -187,15 +252,16 @@ fn figures_scene() -> Scene {
             bar: Some(0.63),
             tick: Some(0.78),
             notes: vec!["without voids 78 %; more is better".to_owned()],
-            rows: Vec::new(),
+            ..KeyFigure::default()
         },
         KeyFigure {
             name: "Half-width that holds".to_owned(),
+            aside: "without voids".to_owned(),
             rows: vec![row("50 %", 0.1, 0.05), row("95 %", 1.0, 0.4)],
             ..KeyFigure::default()
         },
     ];
-    let panel = Panel::figures(figures);
+    let panel = Panel::figures(figures, &style);
     small(&style, 68.0, panel.height + 3.0, panel.draw(2.0, 1.0, &style))
 }
 
@@ -208,7 +274,7 @@ fn section_scene() -> Scene {
         width_m: 0.4e-3,
         scale: SCALE,
     };
-    let panel = Panel::section(section);
+    let panel = Panel::section(section, &style);
     small(&style, 68.0, panel.height + 2.0, panel.draw(2.0, 1.0, &style))
 }
 

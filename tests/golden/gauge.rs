@@ -2,11 +2,13 @@
 
 use ebbmap::board::{Board, CopperArea, CopperLayer, Dielectric, Foil, LayerRole, Net, Origin, Stackup};
 use ebbmap::field::spread::{SpreadLeg, face_currents};
-use ebbmap::field::{PlaneId, ReturnMap};
+use ebbmap::field::{JointCurrent, PlaneId, ReturnMap};
 use ebbmap::figure::{Figure, Figures};
 use ebbmap::geom::{Grid, Point, Polygon, Region, Ring};
-use ebbmap::plan::{ChartPlan, Landing, PathPlan, TrackLeg, Void};
+use ebbmap::finding::{Cause, Excess, Finding, Grade, Measured, Number, Remedy, Spot};
+use ebbmap::plan::{JointKind, ChartPlan, Landing, PathPlan, TrackLeg, Void};
 use ebbmap::review::{Band, Model, Review, Zone};
+use num_complex::Complex64;
 use std::f64::consts::PI;
 
 /// Board, review, and one net with its map and figures.
@@ -17,6 +19,8 @@ pub struct Gauge {
     pub band: Band,
     pub map: ReturnMap,
     pub figures: Figures,
+    pub findings: Vec<Finding>,
+    pub joints: Vec<JointCurrent>,
 }
 
 /// What differs from case to case; lengths in mm.
@@ -33,6 +37,8 @@ pub struct Shape {
     pub zones: bool,
     pub model: Model,
     pub frequency_hz: f64,
+    /// Whether there are findings and joints.
+    pub marked: bool,
 }
 
 impl Default for Shape {
@@ -49,6 +55,7 @@ impl Default for Shape {
             zones: true,
             model: Model::Sheet,
             frequency_hz: 1e7,
+            marked: true,
         }
     }
 }
@@ -209,7 +216,57 @@ pub fn gauge(shape: &Shape) -> Gauge {
         at_hz: vec![shape.frequency_hz],
         explicit: false,
     };
-    Gauge { board, review, net, band, map, figures }
+    let (findings, joints) = if shape.marked { remarks(shape) } else { (Vec::new(), Vec::new()) };
+    Gauge { board, review, net, band, map, figures, findings, joints }
+}
+
+/// Findings where the track crosses the slot and at its far landing, and two joints.
+fn remarks(shape: &Shape) -> (Vec<Finding>, Vec<JointCurrent>) {
+    let plane = PlaneId { layer: 1, net: "GND".to_owned() };
+    let middle = shape.track[shape.track.len() / 2];
+    let finding = |of_path: usize, (x, y): (f64, f64), what, value, limit, cause| Finding {
+        number: Number { path: 3, of_path },
+        code: ebbmap::diag::code::finding::DETOUR,
+        grade: Grade::Fail,
+        path: shape.net.clone(),
+        plane: Some(plane.clone()),
+        band: Some("HF".to_owned()),
+        frequency_hz: Some(shape.frequency_hz),
+        place: Spot { at: Point::mm(x, y), layer: 1 },
+        excess: Excess { what, value, error: 0.0, limit: Some(limit) },
+        sentence: format!("{} has a loop larger than its limit", shape.net),
+        cause,
+        cause_text: "the void lies under the track".to_owned(),
+        remedy: None,
+        waived: None,
+    };
+    let slot = shape.slot.map_or(middle, |[x0, y0, x1, _]| (0.5 * (x0 + x1), y0));
+    let void = || Cause::Void("S1".to_owned());
+    let mut first = finding(1, middle, Measured::ExtraInductance, 3.2e-9, 1e-9, void());
+    first.remedy = Some(Remedy {
+        action: "Bridge void S1 under the track with copper 2.0 mm wide".to_owned(),
+        place: first.place,
+        copper: Vec::new(),
+        before: 3.2e-9,
+        after: 0.21e-9,
+        error: 1e-11,
+        tried: Vec::new(),
+    });
+    let second = finding(2, slot, Measured::ShareDrop, 0.43, 0.1, void());
+    let third = finding(3, shape.track[0], Measured::Stray, 0.12, 0.05, Cause::Spread);
+    let joint = |what: &str, kind, x: f64, y: f64, current: f64| JointCurrent {
+        what: what.to_owned(),
+        kind,
+        at: Point::mm(x, y),
+        layers: [Some(1), Some(2)],
+        current: Complex64::new(current, -0.1 * current),
+    };
+    let (w, h) = (shape.width, shape.height);
+    let joints = vec![
+        joint("C14", JointKind::Part, 0.7 * w, 0.25 * h, 0.31),
+        joint("via", JointKind::Barrel, 0.25 * w, 0.8 * h, 0.04),
+    ];
+    (vec![first, second, third], joints)
 }
 
 /// Figures from the closed form of a thin strip, and contour levels from the cells.

@@ -1,7 +1,7 @@
 //! Whole pages: nothing overlaps, nothing leaves the page, contrast holds, sizes stay small, bytes stay the same.
 
 use crate::gauge::{Gauge, Shape, gauge};
-use ebbmap::draw::{Scene, TextBox};
+use ebbmap::draw::{DensityScale, Scene, TextBox};
 use ebbmap::report::{
     ContactCell, ContactInput, ContactRow, Picture, TicketInput, contact_scenes, thumbnail, ticket_scene,
 };
@@ -22,7 +22,9 @@ fn input<'a>(gauge: &'a Gauge, style: &'a Style) -> TicketInput<'a> {
         band: &gauge.band,
         map: &gauge.map,
         figures: &gauge.figures,
-        scale_height_m: gauge.net.charts[0].height_m,
+        scale: DensityScale::new(gauge.net.charts[0].height_m, style.density.range_db),
+        findings: Some(&gauge.findings),
+        joints: &gauge.joints,
         style,
         input_hash: "0",
         sheet: (1, 12),
@@ -107,6 +109,7 @@ fn shapes() -> Vec<(&'static str, Shape)> {
     let spread = Shape { model: Model::Spread, cell: 0.2, zones: false, ..Shape::default() };
     vec![
         ("plain", Shape::default()),
+        ("bare", Shape { marked: false, cell: 0.2, ..Shape::default() }),
         ("tall", tall),
         ("flat", flat),
         ("window", small_net),
@@ -120,7 +123,12 @@ fn shapes() -> Vec<(&'static str, Shape)> {
 fn ticket_pages_keep_their_text_apart() {
     for (name, shape) in shapes() {
         let gauge = gauge(&shape);
-        let style = style(if name == "tall" { "screen" } else { "paper" });
+        let style = style(match name {
+            "tall" => "screen",
+            "bare" => "mono",
+            "window" => "large",
+            _ => "paper",
+        });
         let start = std::time::Instant::now();
         let scene = ticket_scene(&input(&gauge, &style));
         println!("{name}: scene in {:?}", start.elapsed());
@@ -137,12 +145,16 @@ fn ticket_pages_keep_their_text_apart() {
 /// rest): WCAG 2.2, 4.5 : 1.
 #[test]
 fn text_has_contrast() {
-    for name in ["paper", "screen"] {
+    for (name, _) in ebbmap::read::style::BUILT_IN {
         let style = style(name);
         let gauge = gauge(&Shape { cell: 0.4, ..Shape::default() });
         let scene = ticket_scene(&input(&gauge, &style));
         let inside = ["50 %", "80 %", "95 %"];
         for text in scene.text_boxes() {
+            // A number in a disc stands on the disc; `style::check` compares the two.
+            if text.fill == style.color.mark_text {
+                continue;
+            }
             let contrast = text.fill.contrast(style.color.page);
             assert!(
                 contrast >= 4.5 || inside.contains(&&*text.content),
@@ -206,7 +218,7 @@ fn contact_pages(style: &Style, shapes: &[Shape], bands: &[Band]) -> Vec<Scene> 
                 &gauge.net.charts[0],
                 &gauge.map,
                 &figures,
-                0.2e-3,
+                DensityScale::new(0.2e-3, 60.0),
                 style,
             );
             ContactCell::Map(Box::new(map), Some(format!("maps/net-{index}-{column}.svg")))
@@ -218,7 +230,7 @@ fn contact_pages(style: &Style, shapes: &[Shape], bands: &[Band]) -> Vec<Scene> 
         review: &gauges[0].review,
         columns: bands.iter().map(|band| (band, band.at_hz[0])).collect(),
         rows: rows.collect(),
-        scale_height_m: 0.2e-3,
+        scale: DensityScale::new(0.2e-3, 60.0),
         style,
         input_hash: "0",
     };
