@@ -43,7 +43,7 @@ impl<'p> Lay<'p> {
         charts: &[ChartPlan],
     ) -> Vec<Self> {
         let ready = || charts.iter().enumerate().filter(|(_, chart)| chart.withheld.is_none());
-        if conductors.layers.is_empty() || path.entries.is_empty() {
+        if conductors.layers.is_empty() {
             return ready().map(|(index, chart)| Self::of_chart(board, path, index, chart)).collect();
         }
         let charts: Vec<(usize, ChartPlan)> = ready().map(|(index, chart)| (index, chart.clone())).collect();

@@ -16,6 +16,9 @@ const NOTHING: f64 = 1e-9;
 
 /// Chooses sheets for all paths, joins them, and lands each path's return on them.
 pub fn finish(planner: &mut Planner<'_>, drafts: Vec<Draft<'_>>) -> (Vec<PathPlan>, Conductors) {
+    if drafts.is_empty() {
+        return (Vec::new(), Conductors::default());
+    }
     let tracks: Vec<Tracked> = drafts.iter().map(|draft| tracked(planner, draft)).collect();
     let sheets = Sheets::choose(&planner.terrain, &tracks);
     let mut nodes = Nodes::default();

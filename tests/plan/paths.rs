@@ -5,7 +5,7 @@ use super::{messages, plan};
 use ebbmap::geom::Point;
 use ebbmap::plan::{End, PathPlan, Plan};
 use ebbmap::review::path::{PairRequest, PathRequest, Receiver, Step};
-use ebbmap::review::{NetRequest, Review};
+use ebbmap::review::{LandingRequest, NetRequest, Review};
 
 fn review() -> Review {
     Review { file: "review.toml".into(), reference_nets: vec!["GND".into()], ..Review::default() }
@@ -201,7 +201,16 @@ fn the_two_lines_of_a_pair_land_their_difference() {
     let tilted = plan(board.clone(), &pair(0.1));
     let currents: Vec<f64> = only(&tilted).track.iter().map(|leg| leg.current).collect();
     assert!((currents[0] - 1.05).abs() < 1e-12 && (currents[1] + 0.95).abs() < 1e-12, "{currents:?}");
-    let landed = entries(only(&tilted));
+    // U1 has two ground pins, tied inside; the landing of one of them is named to have a place.
+    assert!(only(&tilted).entries.iter().any(|entry| matches!(entry.end, End::Node(_))));
+    let mut named = pair(0.1);
+    named.nets = vec![NetRequest {
+        name: "LINK_P".into(),
+        driver_landing: Some(LandingRequest::Pin("U1.4".into())),
+        ..NetRequest::default()
+    }];
+    let named = plan(board.clone(), &named);
+    let landed = entries(named.paths.iter().find(|path| path.name == "LINK").unwrap());
     assert!((landed[0].2 + 0.1).abs() < 1e-12 && (landed[1].2 - 0.1).abs() < 1e-12, "{landed:?}");
     let mut unknown = pair(0.0);
     unknown.pairs[0].negative = "LINK_M".into();

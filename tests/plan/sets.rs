@@ -3,8 +3,10 @@
 
 use super::review;
 use ebbmap::board::{Board, NetId};
-use ebbmap::plan::{Plan, build};
+use ebbmap::geom::locate::Locator;
+use ebbmap::plan::{End, Plan, build};
 use ebbmap::review::NetRequest;
+use std::collections::BTreeSet;
 use std::path::{Path, PathBuf};
 
 /// Nets planned on each board.
@@ -89,7 +91,9 @@ fn check(board: &Board, plan: &Plan, wanted: usize) {
             assert!(chart.height_m > 0.0 && chart.cell_m > 0.0 && chart.unknowns > 0, "{}", net.name);
             let areas = board.layers[chart.plane.layer].areas.iter();
             let of_plane: Vec<_> = areas.filter(|area| area.net == board.net(&chart.plane.net)).collect();
-            for landing in [&chart.driver_landing, &chart.receiver_landing] {
+            let landings = [&chart.driver_landing, &chart.receiver_landing];
+            // Where no via is near, the picture shows the place on the track itself.
+            for landing in landings.into_iter().filter(|landing| landing.what != "track") {
                 let reach = landing.radius_m + 1e-6;
                 let near = ebbmap::geom::locate::Locator::new(of_plane.iter().map(|area| &area.shape));
                 assert!(!near.touching(&[landing.at], reach).is_empty(), "{}: {landing:?}", net.name);
@@ -99,6 +103,87 @@ fn check(board: &Board, plan: &Plan, wanted: usize) {
             }
         }
     }
+}
+
+/// Ends of joints and entries lie on copper of their area, areas are sheets, currents sum to zero, values are sound.
+fn check_conductors(board: &Board, plan: &Plan) {
+    let sheets: BTreeSet<(usize, usize)> = plan
+        .conductors
+        .layers
+        .iter()
+        .flat_map(|layer| layer.areas.iter().map(|&area| (layer.layer, area)))
+        .collect();
+    let on_copper = |end: &End, what: &str| match *end {
+        End::Copper { layer, area, at, radius_m } => {
+            assert!(sheets.contains(&(layer, area)), "{what}: L{} {area} is no sheet", layer + 1);
+            let shape = &board.layers[layer].areas[area].shape;
+            let near = Locator::new([shape]).touching(&[at], radius_m + 2e-6);
+            assert!(!near.is_empty() && radius_m > 0.0, "{what}: off copper at {at:?}, L{}", layer + 1);
+        }
+        End::Node(node) => assert!(node < plan.conductors.nodes.len(), "{what}"),
+    };
+    let own = plan.paths.iter().flat_map(|path| &path.joints);
+    for joint in plan.conductors.joints.iter().chain(own) {
+        on_copper(&joint.from, &joint.what);
+        on_copper(&joint.to, &joint.what);
+        assert!(joint.resistance_ohm > 0.0 && joint.inductance_h >= 0.0, "{joint:?}");
+        assert!(joint.capacitance_f.is_none_or(|farad| farad > 0.0), "{joint:?}");
+        assert!(joint.from != joint.to, "{joint:?}");
+    }
+    for path in &plan.paths {
+        path.entries.iter().for_each(|entry| on_copper(&entry.end, &entry.what));
+        let sum: f64 = path.entries.iter().map(|entry| entry.current).sum();
+        assert!(sum.abs() < 1e-9, "{}: {sum}", path.name);
+        assert!(path.valid_to_hz > 1e6, "{}", path.name);
+        assert!(path.own_areas.iter().all(|piece| sheets.contains(piece)), "{}", path.name);
+        for chart in &path.charts {
+            let reason = chart.withheld.as_ref().map(|message| message.code.name);
+            let known = [None, Some("plane-none"), Some("landing-none"), Some("return-open")];
+            assert!(known.contains(&reason), "{}: {reason:?}", path.name);
+        }
+    }
+}
+
+#[test]
+fn all_ground_of_the_sample_is_one_conductor() {
+    let folder = Path::new(env!("CARGO_MANIFEST_DIR")).join("samples/tide-gauge");
+    let file = ebbmap::read::read_review(&folder.join("review.toml"));
+    let wanted = file.review.unwrap();
+    let (mut board, _) = ebbmap::read::read_board(&wanted.files).unwrap();
+    ebbmap::plan::apply_review(&mut board, &wanted);
+    let plan = build(&board, &wanted);
+    check_conductors(&board, &plan);
+    assert_eq!(plan.paths.len(), wanted.nets.len(), "{:#?}", plan.messages);
+    for path in &plan.paths {
+        assert!(path.charts.iter().all(|chart| chart.withheld.is_none()), "{path:#?}");
+        assert!(path.entries.len() >= 2, "{path:#?}");
+    }
+    // Every piece of ground of 25 mm2 or more hangs together through joints that conduct.
+    let ground = board.net("GND");
+    let large = |layer: usize, area: usize| {
+        let area = &board.layers[layer].areas[area];
+        area.net == ground && area.shape.area() >= 25e-6
+    };
+    let all: BTreeSet<(usize, usize)> = (0..board.layers.len())
+        .flat_map(|layer| (0..board.layers[layer].areas.len()).map(move |area| (layer, area)))
+        .filter(|&(layer, area)| large(layer, area))
+        .collect();
+    let mut reached: BTreeSet<(usize, usize)> = all.iter().take(1).copied().collect();
+    loop {
+        let before = reached.len();
+        for joint in plan.conductors.joints.iter().filter(|joint| joint.capacitance_f.is_none()) {
+            if let (End::Copper { layer: a, area: x, .. }, End::Copper { layer: b, area: y, .. }) =
+                (&joint.from, &joint.to)
+                && (reached.contains(&(*a, *x)) || reached.contains(&(*b, *y)))
+            {
+                reached.extend([(*a, *x), (*b, *y)]);
+            }
+        }
+        if reached.len() == before {
+            break;
+        }
+    }
+    assert!(all.len() > 1 && all.is_subset(&reached), "{all:?} of {reached:?}");
 }
 
 #[test]
@@ -111,6 +196,7 @@ fn plans_of_real_sets_hold_together() {
         wanted.nets = requests(&board, reference);
         let plan = build(&board, &wanted);
         check(&board, &plan, wanted.nets.len());
+        check_conductors(&board, &plan);
         assert_eq!(format!("{plan:?}"), format!("{:?}", build(&board, &wanted)), "plans repeat");
     }
 }
