@@ -30,7 +30,7 @@ fn look_review(path: &Path, as_json: bool, console: &mut Console) -> Exit {
     let progress = Progress::new(false, console.ink());
     let Ok(prepared) = run::prepare(path, None, &progress) else { return Exit::Unusable };
     let board = Look::new(&prepared.board, &prepared.messages);
-    let plan = PlanAccount::new(&prepared.plan, &prepared.review);
+    let plan = PlanAccount::new(&prepared.plan, &prepared.review, &prepared.board);
     if as_json {
         console.result(&String::from_utf8_lossy(&json(&Both { board, plan })));
     } else {

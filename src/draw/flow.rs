@@ -132,7 +132,8 @@ fn arrow(
     let length = libm::hypot(ux, uy);
     let (ux, uy) = (0.5 * LENGTH * ux / length, 0.5 * LENGTH * uy / length);
     let line = ((x - ux, y - uy), (x + ux, y + uy));
-    let clear = [-1.4, -0.7, 0.0, 0.7, 1.4].iter().all(|t| density.is_copper(view.back((x + t * ux, y + t * uy))));
+    let clear =
+        [-1.4, -0.7, 0.0, 0.7, 1.4].iter().all(|t| density.is_copper(view.back((x + t * ux, y + t * uy))));
     clear.then(|| (line, super::map::contour_ink(look.style, &look.scale, size)))
 }
 

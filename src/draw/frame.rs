@@ -38,7 +38,8 @@ pub fn rulers(view: &View, origin: Point, style: &Style) -> Group {
         let x = view.x + (n as f64 * minor - low.x) * view.scale;
         ticks.line(&[(x, bottom), (x, bottom + if major(n) { 1.5 } else { 0.8 })]);
         if major(n) {
-            let text = Text::new(x, bottom + 1.5 + size, size, Face::Narrow, style.color.ink_soft, &number(n));
+            let text =
+                Text::new(x, bottom + 1.5 + size, size, Face::Narrow, style.color.ink_soft, &number(n));
             group.text(text.anchored(Anchor::Middle));
         }
     }
@@ -101,7 +102,11 @@ pub fn color_scale(
 ) -> Group {
     const HEIGHT: f64 = 5.2;
     let ends = [scale.low_db(), scale.high_db()].map(|level| coordinate((level * 10.0).round() / 10.0));
-    let kind = if scale.linear { "linear color scale from 0".to_owned() } else { format!("color scale from {} dB", ends[0]) };
+    let kind = if scale.linear {
+        "linear color scale from 0".to_owned()
+    } else {
+        format!("color scale from {} dB", ends[0])
+    };
     let label = format!("{kind} to {} dB", ends[1]);
     let mut group = Group::new("color-scale").labeled("graphics-object", label.clone());
     let indices: Vec<u8> = (0..Gradient::LEVELS as u8).collect();
@@ -118,8 +123,11 @@ pub fn color_scale(
     let size = style.font.tick;
     let mut ticks = PathData::new();
     let mut number = |group: &mut Group, at: f64, below: bool, text: &str| {
-        let (from, to, base) =
-            if below { (y + HEIGHT, y + HEIGHT + 1.2, y + HEIGHT + 1.1 + size) } else { (y, y - 1.2, y - 1.9) };
+        let (from, to, base) = if below {
+            (y + HEIGHT, y + HEIGHT + 1.2, y + HEIGHT + 1.1 + size)
+        } else {
+            (y, y - 1.2, y - 1.9)
+        };
         ticks.line(&[(at, from), (at, to)]);
         let text = Text::new(at, base, size, Face::Narrow, style.color.ink, text);
         group.text(text.anchored(Anchor::Middle));
@@ -383,7 +391,14 @@ pub fn fields_row(
         }
         let room = left + wide - start - 0.6;
         let name = shortened(Face::Narrow, style.font.field, style.word(name), room);
-        group.text(Text::new(start, y + 0.36 * height, style.font.field, Face::Narrow, color.ink_soft, &name));
+        group.text(Text::new(
+            start,
+            y + 0.36 * height,
+            style.font.field,
+            Face::Narrow,
+            color.ink_soft,
+            &name,
+        ));
         let value = fitted(Face::Narrow, size, value, room);
         group.text(Text::new(start, y + 0.79 * height, size, Face::Narrow, color.ink, &value));
         left += wide;
@@ -430,7 +445,14 @@ pub fn caution(x: f64, y: f64, width: f64, text: &str, style: &Style) -> Group {
     mark.line(&[(x + 2.1, y - 1.6), (x + 2.1, y - 0.55)]).line(&[(x + 2.1, y - 0.02), (x + 2.1, y + 0.02)]);
     group.shape(Shape::stroked(mark, color.ink, 0.45).rounded());
     for (row, line) in wrapped(Face::Narrow, style.font.tick, text, width - 6.0).into_iter().enumerate() {
-        group.text(Text::new(x + 5.6, y + 4.0 * style.font.pitch() * row as f64, style.font.tick, Face::Narrow, color.ink, &line));
+        group.text(Text::new(
+            x + 5.6,
+            y + 4.0 * style.font.pitch() * row as f64,
+            style.font.tick,
+            Face::Narrow,
+            color.ink,
+            &line,
+        ));
     }
     group
 }

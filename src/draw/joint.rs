@@ -64,10 +64,7 @@ pub fn outline(form: JointForm, (x, y): (f64, f64), radius: f64) -> PathData {
 /// A mark: halo and core.
 pub fn mark(form: JointForm, at: (f64, f64), radius: f64, style: &Style) -> [Shape; 2] {
     let path = outline(form, at, radius);
-    [
-        Shape::stroked(path.clone(), style.color.page, 0.3 + HALO),
-        Shape::filled(path, style.color.mark),
-    ]
+    [Shape::stroked(path.clone(), style.color.page, 0.3 + HALO), Shape::filled(path, style.color.mark)]
 }
 
 /// The marks of all joints in the view that carry enough, largest first so that small ones stay visible.
@@ -83,10 +80,8 @@ pub fn marks(joints: &[JointMark], view: &View, factor: f64, style: &Style) -> G
 
 /// Joints to draw, largest current first, ties by name.
 fn shown<'a>(joints: &'a [JointMark], view: &View) -> Vec<&'a JointMark> {
-    let mut all: Vec<&JointMark> = joints
-        .iter()
-        .filter(|joint| joint.current >= LEAST && view.window.contains(joint.at))
-        .collect();
+    let mut all: Vec<&JointMark> =
+        joints.iter().filter(|joint| joint.current >= LEAST && view.window.contains(joint.at)).collect();
     all.sort_by(|a, b| b.current.total_cmp(&a.current).then_with(|| a.name.cmp(&b.name)));
     all
 }

@@ -19,7 +19,14 @@ pub(super) fn labels(drawn: &mut DrawnMap, data: &MapData, view: &View, look: &M
     for (pin, role) in [(&data.driver, "driver"), (&data.receiver, "receiver")] {
         let Some(pin) = pin.as_ref().filter(|pin| view.window.contains(pin.at)) else { continue };
         let name = shortened(Face::NarrowBold, size, &pin.name, 30.0);
-        let text = Text::new(0.0, 0.0, size, Face::NarrowBold, style.color.ink, &format!("{} {name}", style.word(role)));
+        let text = Text::new(
+            0.0,
+            0.0,
+            size,
+            Face::NarrowBold,
+            style.color.ink,
+            &format!("{} {name}", style.word(role)),
+        );
         let spot = view.place(pin.at);
         let Some((rect, line)) = drawn.placer.label(spot, text.width(), 0.95 * size) else { continue };
         group.group(leader(line, style));
@@ -73,8 +80,6 @@ fn along(line: &[(f64, f64)], step: f64) -> Vec<((f64, f64), (f64, f64))> {
     }
     points
 }
-
-
 
 /// Boxes inside a zone, lower ones cheaper.
 fn zone_boxes(outline: &Ring, view: &View, width: f64, height: f64) -> Vec<(Rect, f64)> {

@@ -75,7 +75,8 @@ pub fn draw(x: f64, y: f64, width: f64, findings: &[ListedFinding], rest: usize,
     }
     if rest > 0 {
         let words = format!("and {rest} more, see the findings file");
-        let text = Text::new(x, top + 3.0 * pitch, style.font.tick, Face::Narrow, style.color.ink_soft, &words);
+        let text =
+            Text::new(x, top + 3.0 * pitch, style.font.tick, Face::Narrow, style.color.ink_soft, &words);
         group.text(text);
     }
     group

@@ -1,8 +1,8 @@
 //! Panels beside a map: key figures, findings, section at the track, locator. Distances between lines follow the
 //! style's type size.
 
-use super::number::coordinate;
 use super::list::ListedFinding;
+use super::number::coordinate;
 use super::path::PathData;
 use super::scale::DensityScale;
 use super::scene::{Group, Shape};
@@ -158,7 +158,13 @@ pub(super) fn heading(group: &mut Group, (x, y, width): (f64, f64, f64), text: &
 fn figure_height(figure: &KeyFigure) -> f64 {
     let bar = match (figure.bar.is_some() || figure.tick.is_some(), figure.notes.is_empty()) {
         (true, _) => 3.0,
-        (false, noted) => if noted { 0.0 } else { 0.6 },
+        (false, noted) => {
+            if noted {
+                0.0
+            } else {
+                0.6
+            }
+        }
     };
     let rows = if figure.rows.is_empty() { 0.0 } else { 4.9 * figure.rows.len() as f64 };
     5.2 + bar + NOTE * figure.notes.len() as f64 + rows + 2.0

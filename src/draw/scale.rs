@@ -44,12 +44,15 @@ impl ScaleChoice {
             _ => return Err(expected()),
         };
         let (a, b) = range.split_once("..").ok_or_else(expected)?;
-        let number = |text: &str| text.parse::<f64>().ok().filter(|value| value.is_finite()).ok_or_else(expected);
+        let number =
+            |text: &str| text.parse::<f64>().ok().filter(|value| value.is_finite()).ok_or_else(expected);
         let (a, b) = (number(a)?, number(b)?);
         let (low, high) = (a.min(b), a.max(b));
         if levels {
             if !(5.0..=200.0).contains(&(high - low)) || high.abs() > 200.0 {
-                return Err(format!("scale must span 5 dB to 200 dB within 200 dB of the anchor; got `{text}`"));
+                return Err(format!(
+                    "scale must span 5 dB to 200 dB within 200 dB of the anchor; got `{text}`"
+                ));
             }
             return Ok(Self::Levels { high_db: high, low_db: low });
         }
@@ -185,7 +188,8 @@ mod tests {
         assert_eq!(ScaleChoice::parse("0..-60dB"), levels(0.0, -60.0));
         assert_eq!(ScaleChoice::parse("-70 .. -10 dB"), levels(-10.0, -70.0));
         assert_eq!(ScaleChoice::parse("1..1000A/m"), Ok(ScaleChoice::Densities { low: 1.0, high: 1000.0 }));
-        for bad in ["", "0..-60", "0-60dB", "0..xdB", "0..0dB", "5..5A/m", "-1..5A/m", "0..0A/m", "1..infA/m"] {
+        for bad in ["", "0..-60", "0-60dB", "0..xdB", "0..0dB", "5..5A/m", "-1..5A/m", "0..0A/m", "1..infA/m"]
+        {
             assert!(ScaleChoice::parse(bad).is_err(), "{bad}");
         }
     }
@@ -193,9 +197,7 @@ mod tests {
     /// The same number has the same color in every picture of a set; what lies above the scale has its own.
     #[test]
     fn chosen_ends_are_the_ends_of_the_colors() {
-        let of = |text| {
-            DensityScale::chosen(0.4e-3, 60.0, ScaleChoice::parse(text).unwrap_or_default())
-        };
+        let of = |text| DensityScale::chosen(0.4e-3, 60.0, ScaleChoice::parse(text).unwrap_or_default());
         let scale = of("1..1000A/m");
         assert_eq!(scale.color_index(scale.level_db(1.0)), 0);
         assert_eq!(scale.color_index(scale.level_db(1000.0)), 254);

@@ -97,7 +97,13 @@ pub fn divide(terrain: &Terrain<'_>, own: &[&str], legs: &[TrackLeg]) -> (Vec<Tr
         let total: f64 = own.iter().map(|sample| sample.length_m).sum();
         let between = longest(own, block.plane.as_ref(), |sample| sample.other.as_ref());
         let between = between.filter(|(_, length_m)| *length_m > 0.5 * total).map(|(plane, _)| plane);
-        let nearer = longest(own, block.plane.as_ref(), |sample| sample.nearer.as_ref());
+        let gap_m = |sample: &Sample, plane: &PlaneId| {
+            terrain.board.stackup.gap_m(legs[sample.leg].layer, plane.layer)
+        };
+        let nearer = longest(own, block.plane.as_ref(), |sample| {
+            let plane = block.plane.as_ref()?;
+            sample.nearer.as_ref().filter(|nearer| gap_m(sample, nearer) < gap_m(sample, plane))
+        });
         stretches.push(Stretch { plane: block.plane, legs: first..divided.len(), between, nearer });
     }
     (divided, stretches)
@@ -113,13 +119,7 @@ fn samples(terrain: &Terrain<'_>, own: &[&str], legs: &[TrackLeg], reference: bo
             let parts = (k as f64 / n as f64, (k + 1) as f64 / n as f64);
             let at = point_at((leg.from, leg.to), 0.5 * (parts.0 + parts.1));
             let (plane, other) = nearest(terrain, own, leg.layer, at, reference);
-            let any = if reference { nearest(terrain, own, leg.layer, at, false).0 } else { None };
-            let gap_m = |plane: &Option<PlaneId>| {
-                plane.as_ref().map(|p| terrain.board.stackup.gap_m(leg.layer, p.layer))
-            };
-            let nearer = any.filter(|any| {
-                gap_m(&plane).is_none_or(|gap_m| terrain.board.stackup.gap_m(leg.layer, any.layer) < gap_m)
-            });
+            let nearer = if reference { nearest(terrain, own, leg.layer, at, false).0 } else { None };
             samples.push(Sample { leg: index, parts, length_m: length / n as f64, plane, other, nearer });
         }
     }

@@ -2,8 +2,8 @@
 
 use crate::diag::{Diagnostic, code::style as code};
 use crate::style::{
-    ChangeLook, Colors, DensityLook, Gradient, LABELS, Lettering, Lines, PairLook, Rgb, Rules, Sheet, Style, check,
-    gradient_names,
+    ChangeLook, Colors, DensityLook, Gradient, LABELS, Lettering, Lines, PairLook, Rgb, Rules, Sheet, Style,
+    check, gradient_names,
 };
 use serde::Deserialize;
 use std::collections::BTreeMap;
@@ -294,19 +294,28 @@ fn gradient(table: &str, map: &str, turn: bool, clip: [f64; 2], report: Report<'
 impl DensityTable {
     fn gradient(&self, report: Report<'_>) -> Option<Gradient> {
         if self.steps == 1 || self.steps > 60 {
-            report("density.steps", format!("steps must be 0 for a smooth map, or 2 to 60; got {}", self.steps));
+            report(
+                "density.steps",
+                format!("steps must be 0 for a smooth map, or 2 to 60; got {}", self.steps),
+            );
             return None;
         }
         let smooth = match (&self.map, &self.stops) {
             (Some(map), None) => gradient("density", map, self.turn_over, self.clip, report)?,
             (None, Some(stops)) => {
                 if self.turn_over || self.clip != whole() {
-                    report("density.stops", "`turn_over` and `clip` belong to `map`, not to `stops`".to_owned());
+                    report(
+                        "density.stops",
+                        "`turn_over` and `clip` belong to `map`, not to `stops`".to_owned(),
+                    );
                 }
                 let colors: Vec<Rgb> = stops.iter().map(|stop| rgb("density.stops", stop, report)).collect();
                 let found = Gradient::through(&colors);
                 if found.is_none() {
-                    report("density.stops", format!("stops must be two colors or more; got {}", colors.len()));
+                    report(
+                        "density.stops",
+                        format!("stops must be two colors or more; got {}", colors.len()),
+                    );
                 }
                 found?
             }
@@ -506,7 +515,11 @@ mod tests {
             ("boundary_dash = \"6 1", "boundary_dash = \"6 -1", "dash must be"),
             ("family     = \"IBM Plex Sans\"", "family     = \"Comic\"", "bundled"),
             ("range_db   = 60", "range_db   = 60\nsteps      = 1", "steps must be"),
-            ("map        = \"MAGMA\"", "stops      = [\"#FFFFFF\", \"#000000\", \"#FFFFFF\"]", "belong to `map`"),
+            (
+                "map        = \"MAGMA\"",
+                "stops      = [\"#FFFFFF\", \"#000000\", \"#FFFFFF\"]",
+                "belong to `map`",
+            ),
             ("[rules]", "[labels]\n\"Key figurs\" = \"Zahlen\"\n[rules]", "`Key figures` is one"),
         ];
         for (from, to, word) in cases {

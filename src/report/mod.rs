@@ -1,5 +1,6 @@
 //! The sheets a user gets: ticket map, contact sheet, tables and JSON, as bytes.
 
+mod conductors;
 mod contact;
 mod findings;
 mod json;

@@ -2,6 +2,8 @@
 //!
 //! Coordinates are in mm from the review's origin, as in the pictures; thicknesses and cells in metres in the JSON.
 
+use super::conductors::{ConductorAccount, EntryEntry};
+use crate::board::Board;
 use crate::diag::Diagnostic;
 use crate::geom::Point;
 use crate::plan::{ChartPlan, Landing, PathPlan, Plan, TrackLeg};
@@ -19,6 +21,7 @@ pub struct PlanAccount {
     schema: u32,
     model: &'static str,
     bands: Vec<BandEntry>,
+    conductors: ConductorAccount,
     nets: Vec<NetEntry>,
     charts: usize,
     withheld: usize,
@@ -42,6 +45,8 @@ struct NetEntry {
     layers: Vec<String>,
     legs: usize,
     width_mm: f64,
+    entries: Vec<EntryEntry>,
+    valid_to_hz: f64,
     charts: Vec<ChartEntry>,
 }
 
@@ -79,10 +84,11 @@ struct MessageEntry {
 }
 
 impl PlanAccount {
-    /// The account of `plan`, which was made for `review`.
-    pub fn new(plan: &Plan, review: &Review) -> Self {
+    /// The account of `plan`, which was made for `review` on `board`.
+    pub fn new(plan: &Plan, review: &Review, board: &Board) -> Self {
         let origin = review.origin;
-        let nets: Vec<NetEntry> = plan.paths.iter().map(|net| net_entry(net, origin)).collect();
+        let entries = |net| ConductorAccount::entries(net, &plan.conductors, board);
+        let nets: Vec<NetEntry> = plan.paths.iter().map(|net| net_entry(net, entries(net), origin)).collect();
         let charts = nets.iter().map(|net| net.charts.len()).sum();
         let withheld =
             nets.iter().flat_map(|net| &net.charts).filter(|chart| chart.withheld.is_some()).count();
@@ -99,6 +105,7 @@ impl PlanAccount {
                 Model::Spread => "spread",
             },
             bands: plan.bands.iter().map(band).collect(),
+            conductors: ConductorAccount::new(&plan.conductors, board, origin),
             nets,
             charts,
             withheld,
@@ -119,6 +126,7 @@ impl PlanAccount {
             .collect();
         // Writing to a string cannot fail, here and below.
         let _ = writeln!(text, "model {}; bands {}", self.model, bands.join("; "));
+        self.conductors.write(&mut text);
         for net in &self.nets {
             net.write(&mut text);
         }
@@ -154,6 +162,10 @@ impl NetEntry {
             counted(self.legs, "leg"),
             length_text(self.width_mm * 1e-3)
         );
+        for entry in &self.entries {
+            let _ = writeln!(text, "  return    {}", entry.in_words());
+        }
+        let _ = writeln!(text, "  holds     up to {}", quantity_text(self.valid_to_hz, "Hz"));
         for chart in &self.charts {
             chart.write(text);
         }
@@ -200,7 +212,7 @@ impl ChartEntry {
     }
 }
 
-fn net_entry(net: &PathPlan, origin: Point) -> NetEntry {
+fn net_entry(net: &PathPlan, entries: Vec<EntryEntry>, origin: Point) -> NetEntry {
     let mut layers: Vec<String> = Vec::new();
     for leg in &net.track {
         let name = format!("L{}", leg.layer + 1);
@@ -216,6 +228,8 @@ fn net_entry(net: &PathPlan, origin: Point) -> NetEntry {
         layers,
         legs: net.track.len(),
         width_mm: width_m(&net.track) * 1e3,
+        entries,
+        valid_to_hz: net.valid_to_hz,
         charts: net.charts.iter().map(|chart| chart_entry(net, chart, origin)).collect(),
     }
 }

@@ -40,9 +40,8 @@ impl Remarks {
         // Those of this plane and band first, each group as it comes: most serious first.
         let (here, elsewhere): (Vec<&Finding>, Vec<&Finding>) =
             all.iter().partition(|finding| is_here(finding, input));
-        let same_plane = |finding: &&&Finding| {
-            finding.plane.as_ref().is_none_or(|plane| *plane == input.chart.plane)
-        };
+        let same_plane =
+            |finding: &&&Finding| finding.plane.as_ref().is_none_or(|plane| *plane == input.chart.plane);
         let shown: Vec<&Finding> =
             here.iter().copied().chain(elsewhere.iter().filter(same_plane).copied()).collect();
         let on_map = here.iter().take(MOST).filter(|finding| finding.place.layer == input.chart.plane.layer);
@@ -127,7 +126,9 @@ pub(super) fn result(finding: &Finding, net: &str, band: &str) -> String {
     match finding.excess.what {
         Measured::ExtraInductance => format!("{cause} adds {value} to the loop of {net} in {band}"),
         Measured::ExtraPath => format!("{cause} makes the return of {net} {value} longer in {band}"),
-        Measured::ShareDrop => format!("{cause} takes {value} of the return of {net} off its track in {band}"),
+        Measured::ShareDrop => {
+            format!("{cause} takes {value} of the return of {net} off its track in {band}")
+        }
         Measured::EdgeDensity => {
             format!("The return of {net} crowds at the plane's edge in {band}: {value} of its peak")
         }

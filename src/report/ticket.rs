@@ -202,7 +202,11 @@ pub(super) fn window(board: Bounds, data: &MapData, height_m: f64, room: (f64, f
     let scale = |window: Bounds| View::fitted(window, 0.0, 0.0, room.0, room.1).scale;
     let too_small = 3.0 * height_m * 1e3 * scale(whole) < 0.6;
     let larger = scale(wanted) / scale(whole);
-    if larger >= 3.0 || (too_small && larger > 1.2) { widened(wanted, whole, scale(wanted), room) } else { whole }
+    if larger >= 3.0 || (too_small && larger > 1.2) {
+        widened(wanted, whole, scale(wanted), room)
+    } else {
+        whole
+    }
 }
 
 /// The window grown to fill the room for the map at its scale, as far as there is board.
@@ -312,7 +316,8 @@ fn headline_text(input: &TicketInput, net: &str) -> String {
     let Some(value) = share.value else {
         return format!("{net}{joint} no stretch is straight for long enough to state a share in {band}");
     };
-    let mut text = format!("{net}{joint} {} of the return stays within 3{} in {band}", percent(value), italic("h"));
+    let mut text =
+        format!("{net}{joint} {} of the return stays within 3{} in {band}", percent(value), italic("h"));
     if input.map.model == Model::Spread {
         if has_voids(input.chart) {
             text.push_str("; voids not considered");

@@ -46,8 +46,11 @@ impl Rgb {
     pub fn from_linear(linear: [f64; 3]) -> Self {
         let [r, g, b] = linear.map(|value| {
             let value = value.clamp(0.0, 1.0);
-            let coded =
-                if value <= 0.003_130_8 { 12.92 * value } else { 1.055 * libm::pow(value, 1.0 / 2.4) - 0.055 };
+            let coded = if value <= 0.003_130_8 {
+                12.92 * value
+            } else {
+                1.055 * libm::pow(value, 1.0 / 2.4) - 0.055
+            };
             (coded * 255.0).round() as u8
         });
         Self(r, g, b)

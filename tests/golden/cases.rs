@@ -135,7 +135,8 @@ fn marked_scene() -> Scene {
         at: Point::mm(x, y),
         words: words.to_owned(),
     };
-    data.callouts = vec![callout("3.1", 11.4, 9.0, "void S1: +3.4 nH"), callout("3.2", 11.4, 15.0, "slot end")];
+    data.callouts =
+        vec![callout("3.1", 11.4, 9.0, "void S1: +3.4 nH"), callout("3.2", 11.4, 15.0, "slot end")];
     let joint = |x: f64, y: f64, form, name: &str, current| JointMark {
         at: Point::mm(x, y),
         form,

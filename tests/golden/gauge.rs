@@ -4,9 +4,9 @@ use ebbmap::board::{Board, CopperArea, CopperLayer, Dielectric, Foil, LayerRole,
 use ebbmap::field::spread::{SpreadLeg, face_currents};
 use ebbmap::field::{JointCurrent, PlaneId, ReturnMap};
 use ebbmap::figure::{Figure, Figures};
-use ebbmap::geom::{Grid, Point, Polygon, Region, Ring};
 use ebbmap::finding::{Cause, Excess, Finding, Grade, Measured, Number, Remedy, Spot};
-use ebbmap::plan::{JointKind, ChartPlan, Landing, PathPlan, TrackLeg, Void};
+use ebbmap::geom::{Grid, Point, Polygon, Region, Ring};
+use ebbmap::plan::{ChartPlan, JointKind, Landing, PathPlan, TrackLeg, Void};
 use ebbmap::review::{Band, Model, Review, Zone};
 use num_complex::Complex64;
 use std::f64::consts::PI;

@@ -5,6 +5,7 @@
 mod conductors;
 mod draft;
 mod drives;
+mod joints;
 mod paths;
 mod planes;
 mod review;
