@@ -1,6 +1,7 @@
 //! A lay ready to be solved at any frequency: the cells it is put on, and its maps.
 
 use super::lay::Lay;
+use super::parts::labels;
 use super::source::Source;
 use super::stack::Stack;
 use super::stage::{Misfit, Stage, View, Voids, plane_cells};
@@ -11,7 +12,7 @@ use super::{JointCurrent, ReturnMap, complaint};
 use crate::diag::Diagnostic;
 use crate::plan::{ChartPlan, End};
 use crate::review::{Band, Model};
-use crate::sheet::{Drive, OperatingPoint, Solution};
+use crate::sheet::{Drive, Labels, OperatingPoint, Solution};
 use num_complex::Complex64;
 use std::sync::Arc;
 
@@ -139,41 +140,98 @@ impl<'w, 'a> LayBench<'w, 'a> {
             let (kept, filled) = rayon::join(|| solve(&pair.kept), || solve(&pair.filled));
             Ok((kept?, Some(filled?)))
         };
-        let maps = |pair: &Pair, (kept, filled): (Solution, Option<Solution>)| {
+        let maps = |pair: &Pair, kept: &Solution, filled: Option<&Solution>| {
             let of = |stage: &Stage, solution: &Solution| {
                 let map = |(_, chart): &(usize, ChartPlan)| {
                     self.map(band, frequency_hz, stage, solution, track_ohm, chart)
                 };
                 self.lay.charts.iter().map(map).collect::<Vec<ReturnMap>>()
             };
-            let with = of(&pair.kept.0, &kept);
-            let without = filled.map_or_else(|| with.clone(), |filled| of(&pair.filled.0, &filled));
-            let joints = self.joint_currents(&pair.kept.0, &kept);
-            (with.into_iter().zip(without).collect::<Vec<_>>(), joints)
+            let with = of(&pair.kept.0, kept);
+            let without = filled.map_or_else(|| with.clone(), |filled| of(&pair.filled.0, filled));
+            with.into_iter().zip(without).collect::<Vec<_>>()
         };
-        let (fine_maps, joints) = maps(&fine, both(&fine)?);
+        let (kept, filled) = both(&fine)?;
+        let fine_maps = maps(&fine, &kept, filled.as_ref());
+        let joints = self.joint_currents(&fine.kept.0, &kept);
+        let parts = filled.and_then(|filled| self.void_parts(&fine, &stack, frequency_hz, &kept, &filled));
+        drop(kept);
         let mut coarse_maps = match &coarse {
-            Some(pair) => maps(pair, both(pair)?).0.into_iter().map(Some).collect(),
+            Some(pair) => {
+                let (kept, filled) = both(pair)?;
+                maps(pair, &kept, filled.as_ref()).into_iter().map(Some).collect()
+            }
             None => vec![None; fine_maps.len()],
         };
-        let planes = fine_maps.into_iter().zip(&self.lay.charts).zip(&mut coarse_maps);
-        let plane = |(((map, without_voids), (index, _)), coarse): ((_, &(usize, _)), &mut Option<_>)| {
-            (*index, PlaneMaps { map, without_voids, coarse: coarse.take() })
+        let mut of_chart = self.parts_by_chart(parts);
+        let rest = coarse_maps.iter_mut().zip(&mut of_chart);
+        let planes = fine_maps.into_iter().zip(&self.lay.charts).zip(rest);
+        let plane = |(((map, without_voids), (index, _)), (coarse, parts)): (
+            (_, &(usize, _)),
+            (&mut Option<_>, &mut Option<_>),
+        )| {
+            (*index, PlaneMaps { map, without_voids, coarse: coarse.take(), void_parts: parts.take() })
         };
         Ok(LaySolved { planes: planes.map(plane).collect(), joints })
     }
 
     fn solution(
         &self,
-        (stage, entered): &(Arc<Stage>, Entered),
+        prepared: &(Arc<Stage>, Entered),
         stack: &Stack,
         frequency_hz: f64,
     ) -> Result<Solution, crate::sheet::SolveFailure> {
+        let (drive, point) = self.asked(prepared, stack, frequency_hz);
+        prepared.0.system()?.solve(&drive, &point, self.workshop.tolerance)
+    }
+
+    /// What drives the sheets, and the point at which they are solved.
+    fn asked(
+        &self,
+        (stage, entered): &(Arc<Stage>, Entered),
+        stack: &Stack,
+        frequency_hz: f64,
+    ) -> (Drive, OperatingPoint) {
         let drive =
             Drive { strips: self.source.strips(stack, frequency_hz), injections: entered.injections.clone() };
         let zs = |sheet: &super::stage::StagedSheet| self.source.foil(sheet.layer).zs_ohm(frequency_hz);
-        let point = OperatingPoint { frequency_hz, zs_ohm: stage.sheets.iter().map(zs).collect() };
-        stage.system()?.solve(&drive, &point, self.workshop.tolerance)
+        (drive, OperatingPoint { frequency_hz, zs_ohm: stage.sheets.iter().map(zs).collect() })
+    }
+
+    /// The loop impedance less that without voids, divided among the voids of all charts, with the rest behind them.
+    fn void_parts(
+        &self,
+        pair: &Pair,
+        stack: &Stack,
+        frequency_hz: f64,
+        kept: &Solution,
+        filled: &Solution,
+    ) -> Option<Vec<Complex64>> {
+        let stage = &pair.filled.0;
+        let (drive, point) = self.asked(&pair.filled, stack, frequency_hz);
+        let system = stage.system().ok()?;
+        let drive = system.prepare(&drive).ok()?;
+        let (of_cells, count) = labels(&self.lay, stage);
+        let of_kept = &pair.kept.0.wiring.joints;
+        let same = |joint: &usize| of_kept.iter().position(|known| known == joint);
+        let same_vertical: Vec<Option<usize>> = stage.wiring.joints.iter().map(same).collect();
+        let labels = Labels { of_cells: &of_cells, count, same_vertical: &same_vertical };
+        system.extra_impedance_parts(kept, filled, &drive, &point, &labels).ok()
+    }
+
+    /// The parts of each chart's voids; what belongs to none of them is the last.
+    fn parts_by_chart(&self, parts: Option<Vec<Complex64>>) -> Vec<Option<Vec<Complex64>>> {
+        let Some(parts) = parts else { return vec![None; self.lay.charts.len()] };
+        let total: Complex64 = parts.iter().sum();
+        let mut first = 0;
+        let mut of_chart = Vec::with_capacity(self.lay.charts.len());
+        for (_, chart) in &self.lay.charts {
+            let mut own = parts[first..first + chart.voids.len()].to_vec();
+            first += chart.voids.len();
+            own.push(total - own.iter().sum::<Complex64>());
+            of_chart.push(Some(own));
+        }
+        of_chart
     }
 
     fn track_impedance_ohm(&self, stack: &Stack, frequency_hz: f64) -> Complex64 {

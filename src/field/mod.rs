@@ -5,6 +5,7 @@ mod foil;
 mod lay;
 mod laybench;
 mod mask;
+mod parts;
 mod pieces;
 mod source;
 pub mod spread;

@@ -9,6 +9,7 @@ use crate::board::Board;
 use crate::diag::Diagnostic;
 use crate::plan::{ChartPlan, Joint, PathPlan, Plan};
 use crate::review::{Band, Model};
+use num_complex::Complex64;
 
 /// Relative residual to which maps are solved unless asked otherwise.
 pub const TOLERANCE: f64 = 1e-5;
@@ -43,6 +44,9 @@ pub struct PlaneMaps {
     pub without_voids: ReturnMap,
     /// Both on cells of twice the size; none where those cannot stand for the copper.
     pub coarse: Option<(ReturnMap, ReturnMap)>,
+    /// Loop impedance less that without voids, in ohm, divided among the voids of the chart, with the rest behind them;
+    /// none where both are the same or the model does not tell.
+    pub void_parts: Option<Vec<Complex64>>,
 }
 
 /// What a path has done so far.
@@ -198,6 +202,11 @@ impl Bench<'_, '_> {
             }
         };
         let (fine, coarse) = (map(chart.cell_m), map(2.0 * chart.cell_m));
-        PlaneMaps { without_voids: fine.clone(), map: fine, coarse: Some((coarse.clone(), coarse)) }
+        PlaneMaps {
+            without_voids: fine.clone(),
+            map: fine,
+            coarse: Some((coarse.clone(), coarse)),
+            void_parts: None,
+        }
     }
 }

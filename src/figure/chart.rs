@@ -2,10 +2,11 @@
 
 use super::Figures;
 use super::compute::{Maps, Track, figures};
+use super::effect::{self, Effects};
 use crate::diag::Diagnostic;
 use crate::field::{Bench, JointCurrent, PlaneMaps, ReturnMap};
 use crate::plan::{ChartPlan, PathPlan};
-use crate::review::Band;
+use crate::review::{Band, Zone};
 
 /// A solved map with its figures.
 #[derive(Clone, Debug)]
@@ -20,6 +21,8 @@ pub struct Charted {
     pub without_voids: ReturnMap,
     /// Its figures; those that need a stretch of the track over the plane have no value where there is none.
     pub figures: Figures,
+    /// What voids, edges and boundaries do to its return.
+    pub effects: Effects,
 }
 
 /// Maps and figures of one path at one frequency.
@@ -33,13 +36,31 @@ pub struct ChartedPath {
 
 /// Solves `path`, which is on `bench`, at one frequency of a band.
 pub fn chart(bench: &Bench, path: &PathPlan, band: &Band, frequency_hz: f64) -> ChartedPath {
+    chart_in_zones(bench, path, band, frequency_hz, &[])
+}
+
+/// The same on a board with zones, over whose boundaries the return may stray.
+pub fn chart_in_zones(
+    bench: &Bench,
+    path: &PathPlan,
+    band: &Band,
+    frequency_hz: f64,
+    zones: &[Zone],
+) -> ChartedPath {
     let solved = bench.solve(band, frequency_hz);
     let planes = solved.planes.into_iter().zip(bench.charts());
-    let planes = planes.map(|(maps, chart)| Ok(charted(maps?, path, chart, band, frequency_hz)));
+    let planes = planes.map(|(maps, chart)| Ok(charted(maps?, path, chart, band, frequency_hz, zones)));
     ChartedPath { planes: planes.collect(), joints: solved.joints }
 }
 
-fn charted(solved: PlaneMaps, path: &PathPlan, chart: &ChartPlan, band: &Band, frequency_hz: f64) -> Charted {
+fn charted(
+    solved: PlaneMaps,
+    path: &PathPlan,
+    chart: &ChartPlan,
+    band: &Band,
+    frequency_hz: f64,
+    zones: &[Zone],
+) -> Charted {
     let landings = [&chart.driver_landing, &chart.receiver_landing];
     let landings: Vec<_> = landings.into_iter().filter(|l| l.radius_m > 0.0).map(|l| l.at).collect();
     let track =
@@ -50,11 +71,13 @@ fn charted(solved: PlaneMaps, path: &PathPlan, chart: &ChartPlan, band: &Band, f
         coarse: solved.coarse.as_ref().map(|(map, filled)| (map, Some(filled))),
     };
     let figures = figures(&maps, &track);
+    let effects = effect::of(&maps, &track, &chart.voids, zones, solved.void_parts.as_deref());
     Charted {
         band: band.name.clone(),
         frequency_hz,
         map: solved.map,
         without_voids: solved.without_voids,
         figures,
+        effects,
     }
 }

@@ -25,7 +25,7 @@ pub mod station;
 pub mod stray;
 pub mod void;
 
-pub use chart::{Charted, ChartedPath, chart};
+pub use chart::{Charted, ChartedPath, chart, chart_in_zones};
 pub use effect::{Effects, Placed};
 pub use stray::Stray;
 pub use void::{VoidEffect, VoidEnd};

@@ -18,6 +18,6 @@ pub use problem::{Injection, Patch, Problem, Sheet, SourceStrip, StripProfile, V
 mod solution;
 mod system;
 pub use family::Family;
-pub use reaction::NO_LABEL;
+pub use reaction::{Labels, NO_LABEL};
 pub use solution::{Solution, SolveFailure};
 pub use system::{Drive, OperatingPoint, Prepared, System};

@@ -11,7 +11,7 @@
 //!
 //! Source: reaction of two fields, V. H. Rumsey, Phys. Rev. 94, 1954 (from memory); derived from the symmetry of Z.
 //!
-//! Holds when: both solutions are of one drive on one grid, with the same verticals.
+//! Holds when: both solutions are of one drive on one grid; a vertical that one of them lacks counts to the rest.
 //!
 //! Checked by: `parts_of_the_voids_add_up_to_the_extra_impedance`.
 
@@ -22,24 +22,37 @@ use num_complex::Complex64;
 /// Mark of a cell without a label.
 pub const NO_LABEL: u32 = u32::MAX;
 
+/// Which void each filled cell belongs to, and which verticals are the same.
+#[derive(Clone, Copy, Debug)]
+pub struct Labels<'a> {
+    /// For each sheet and cell a label smaller than `count`, or [`NO_LABEL`].
+    pub of_cells: &'a [Vec<u32>],
+    /// Number of labels.
+    pub count: usize,
+    /// For each vertical of the filled system the same vertical of that with voids; none where that has none.
+    pub same_vertical: &'a [Option<usize>],
+}
+
 impl System {
-    /// Parts of Z1 - Z0 in ohm by label of cells, `labels` for each sheet and cell, smaller than `count`; the last of
-    /// the `count + 1` parts is what belongs to no label. This system is that with filled voids; `with_voids` is i1,
-    /// `filled` is i0 and `drive` its drive.
+    /// Parts of Z1 - Z0 in ohm by label of cells; the last of the `count + 1` parts is what belongs to no label. This
+    /// system is that with filled voids; `with_voids` is i1, `filled` is i0 and `drive` its drive.
     pub fn extra_impedance_parts(
         &self,
         with_voids: &Solution,
         filled: &Solution,
         drive: &Prepared,
         point: &OperatingPoint,
-        labels: &[Vec<u32>],
-        count: usize,
+        labels: &Labels<'_>,
     ) -> Result<Vec<Complex64>, SolveFailure> {
         let branches = &self.branches;
         let s = Complex64::new(0.0, 2.0 * std::f64::consts::PI * point.frequency_hz);
         let projector = self.projector_at(s, &point.zs_ohm)?;
         let mut law = Impedance::bare(&self.problem, branches, &self.coupling, &projector, s, &point.zs_ohm);
-        let (one, zero) = (self.currents_of(with_voids), self.currents_of(filled));
+        let Labels { of_cells, count, same_vertical } = *labels;
+        let (mut one, zero) = (self.currents_of(with_voids), self.currents_of(filled));
+        one.truncate(branches.faces());
+        let currents = |vertical: &Option<usize>| vertical.map_or(0.0.into(), |v| with_voids.verticals[v]);
+        one.extend(same_vertical.iter().map(currents));
         let mut voltage = vec![Complex64::default(); branches.len()];
         law.apply(&one, &mut voltage);
         voltage.iter_mut().zip(self.emf(drive, s)).for_each(|(v, e)| *v += e);
@@ -55,7 +68,7 @@ impl System {
                     if !branches.conducts[face] {
                         continue;
                     }
-                    let label = |cell: usize| labels[sheet][cell] as usize;
+                    let label = |cell: usize| of_cells[sheet][cell] as usize;
                     let part = label(cell).min(label(cell - step)).min(count);
                     parts[part] -= zero[face] * voltage[face];
                 }
@@ -79,7 +92,9 @@ impl System {
                 }
             }
         }
-        potential[branches.copper_nodes..].copy_from_slice(&solution.outside_v);
+        // a node that the other system lacks keeps zero: what its verticals then show sums to nothing
+        let outside = potential[branches.copper_nodes..].iter_mut().zip(&solution.outside_v);
+        outside.for_each(|(to, &from)| *to = from);
         potential
     }
 }
