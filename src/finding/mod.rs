@@ -10,12 +10,33 @@ mod word;
 
 pub use evidence::{MapEvidence, PlaneEvidence};
 pub use judge::{grade, limits_of, number, plane};
-pub use waive::{compare, waive};
+pub use waive::{compare, waive, waiver_messages};
 pub use word::{digits, hertz, place, quantity};
 
-use crate::diag::Code;
+use crate::board::Board;
+use crate::diag::{Code, Diagnostic};
 use crate::field::PlaneId;
 use crate::geom::{Point, Polygon};
+use crate::review::Review;
+
+/// The findings of one path, and messages about them.
+#[derive(Clone, Debug, Default)]
+pub struct Judged {
+    /// Findings, numbered, worst first.
+    pub findings: Vec<Finding>,
+    /// What could not be tried.
+    pub messages: Vec<Diagnostic>,
+}
+
+/// Judges a path from the evidence of its planes; `noise` are the findings that rest on other paths.
+pub fn of_path(evidence: &[PlaneEvidence], noise: Vec<Finding>, board: &Board, review: &Review) -> Judged {
+    let mut findings: Vec<Finding> =
+        evidence.iter().flat_map(|evidence| plane(evidence, &review.limits)).collect();
+    findings.extend(noise);
+    number(&mut findings);
+    waive(&mut findings, review, &board.revision);
+    Judged { findings, messages: Vec::new() }
+}
 
 /// How much a finding matters.
 #[derive(Clone, Copy, Debug, PartialEq, Eq, PartialOrd, Ord)]

@@ -5,45 +5,49 @@ use crate::diag::Diagnostic;
 use crate::diag::code::finding as code;
 use crate::plan::matches;
 use crate::review::Review;
+use crate::review::limit::Waiver;
 use std::cmp::Ordering;
 
-/// Marks the findings that the review waives. Gives warnings for waivers that are over or fit nothing.
-pub fn waive(findings: &mut [Finding], review: &Review, revision: &str) -> Vec<Diagnostic> {
+/// Marks the findings that the review waives for a revision of the board.
+pub fn waive(findings: &mut [Finding], review: &Review, revision: &str) {
+    for waiver in review.waivers.iter().filter(|waiver| is_valid(waiver, revision)) {
+        let waived = Waived { reason: waiver.reason.clone(), expires: waiver.expires.clone() };
+        let fitting = findings.iter_mut().filter(|finding| fits(waiver, finding));
+        fitting.for_each(|finding| finding.waived = Some(waived.clone()));
+    }
+}
+
+/// Warnings for waivers that are over or fit no finding of the review.
+pub fn waiver_messages(findings: &[Finding], review: &Review, revision: &str) -> Vec<Diagnostic> {
     let mut messages = Vec::new();
     for waiver in &review.waivers {
-        let fits =
-            |finding: &Finding| finding.code.name == waiver.code && matches(&waiver.path, &finding.path);
-        let place = |message: Diagnostic| {
-            let mut message = message.in_file(review.file.clone(), waiver.line);
-            message.place.span = waiver.marks.get("expires").map(|mark| mark.1);
-            message
-        };
-        if !findings.iter().any(fits) {
+        let place = |message: Diagnostic| message.in_file(review.file.clone(), waiver.line);
+        if !findings.iter().any(|finding| fits(waiver, finding)) {
             let text =
                 format!("waiver of `{}` on `{}` must fit a finding; none is left", waiver.code, waiver.path);
             messages.push(place(Diagnostic::warning(code::WAIVER_UNUSED, text)).hint("remove the waiver"));
-            continue;
-        }
-        match compare(revision, &waiver.expires) {
-            Some(Ordering::Less) => {
-                let waived = Waived { reason: waiver.reason.clone(), expires: waiver.expires.clone() };
-                let fitting = findings.iter_mut().filter(|finding| fits(finding));
-                fitting.for_each(|finding| finding.waived = Some(waived.clone()));
-            }
-            order => {
-                let how = if order.is_some() { "has been reached" } else { "cannot be compared with it" };
-                let text = format!(
-                    "waiver of `{}` on `{}` must end after revision `{revision}` of the board; its end `{}` {how}",
-                    waiver.code, waiver.path, waiver.expires
-                );
-                messages.push(
-                    place(Diagnostic::warning(code::WAIVER_EXPIRED, text))
-                        .hint("mend the finding, or decide anew and set a later `expires`"),
-                );
-            }
+        } else if !is_valid(waiver, revision) {
+            let how = match compare(revision, &waiver.expires) {
+                Some(_) => "has been reached",
+                None => "cannot be compared with it",
+            };
+            let text = format!(
+                "waiver of `{}` on `{}` must end after revision `{revision}` of the board; its end `{}` {how}",
+                waiver.code, waiver.path, waiver.expires
+            );
+            let hint = "mend the finding, or decide anew and set a later `expires`";
+            messages.push(place(Diagnostic::warning(code::WAIVER_EXPIRED, text)).hint(hint));
         }
     }
     messages
+}
+
+fn fits(waiver: &Waiver, finding: &Finding) -> bool {
+    finding.code.name == waiver.code && matches(&waiver.path, &finding.path)
+}
+
+fn is_valid(waiver: &Waiver, revision: &str) -> bool {
+    compare(revision, &waiver.expires) == Some(Ordering::Less)
 }
 
 /// Compares revisions: pieces of letters by length and then by the alphabet, pieces of digits by value; none where a

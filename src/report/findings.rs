@@ -1,11 +1,13 @@
-//! `findings.json`: the figures of every map, what was withheld or skipped and why, and all messages.
+//! `findings.json`: the findings, the figures of every map, what was withheld or skipped and why, and all messages.
 //!
 //! Quantities are in SI units with the unit in the member's name; coordinates are in millimetres from the review's
 //! origin. A member that does not apply is `null`.
 
+use super::finding::{self, EffectsEntry, FigureEntry, FindingEntry, JointEntry, PlaneEntry, figure};
 use crate::diag::Diagnostic;
-use crate::field::{PlaneId, ReturnMap};
-use crate::figure::{Figure, Figures};
+use crate::field::{JointCurrent, PlaneId, ReturnMap};
+use crate::figure::{Effects, Figures};
+use crate::finding::Finding;
 use crate::geom::Point;
 use crate::plan::{ChartPlan, PathPlan};
 use crate::review::Model;
@@ -19,7 +21,9 @@ const SCHEMA: u32 = 1;
 pub struct Findings {
     schema: u32,
     board: BoardEntry,
+    findings: Vec<FindingEntry>,
     maps: Vec<MapEntry>,
+    joints: Vec<JointsEntry>,
     skipped: Vec<MessageEntry>,
     messages: Vec<MessageEntry>,
     #[serde(skip)]
@@ -30,12 +34,6 @@ pub struct Findings {
 struct BoardEntry {
     title: String,
     revision: String,
-}
-
-#[derive(Clone, Debug, Serialize)]
-struct PlaneEntry {
-    layer: String,
-    net: String,
 }
 
 #[derive(Clone, Debug, Serialize)]
@@ -58,6 +56,16 @@ struct MapEntry {
     driver_landing: LandingEntry,
     receiver_landing: LandingEntry,
     figures: Option<FiguresEntry>,
+    effects: Option<EffectsEntry>,
+}
+
+/// What joints carry of a path's return at one frequency.
+#[derive(Clone, Debug, Serialize)]
+struct JointsEntry {
+    path: String,
+    band: String,
+    frequency_hz: f64,
+    joints: Vec<JointEntry>,
 }
 
 #[derive(Clone, Debug, Serialize)]
@@ -66,13 +74,6 @@ struct LandingEntry {
     x_mm: f64,
     y_mm: f64,
     radius_m: f64,
-}
-
-#[derive(Clone, Copy, Debug, Serialize)]
-struct FigureEntry {
-    value: Option<f64>,
-    without_voids: Option<f64>,
-    error: f64,
 }
 
 #[derive(Clone, Debug, Serialize)]
@@ -127,14 +128,30 @@ impl Findings {
     /// A document without maps; `origin` is the point of the files' coordinates that the review calls (0, 0).
     pub fn new(title: &str, revision: &str, origin: Point) -> Self {
         let board = BoardEntry { title: title.to_owned(), revision: revision.to_owned() };
-        Self { schema: SCHEMA, board, maps: Vec::new(), skipped: Vec::new(), messages: Vec::new(), origin }
+        Self {
+            schema: SCHEMA,
+            board,
+            findings: Vec::new(),
+            maps: Vec::new(),
+            joints: Vec::new(),
+            skipped: Vec::new(),
+            messages: Vec::new(),
+            origin,
+        }
     }
 
-    /// Adds a map with its figures; `stem` names its pictures.
-    pub fn add_map(&mut self, subject: Subject, stem: &str, map: &ReturnMap, figures: &Figures) {
+    /// Adds a map with its figures and effects; `stem` names its pictures, if there are any.
+    pub fn add_map(
+        &mut self,
+        subject: Subject,
+        stem: Option<&str>,
+        map: &ReturnMap,
+        figures: &Figures,
+        effects: &Effects,
+    ) {
         let mut entry = self.entry(subject);
-        entry.svg = Some(format!("maps/{stem}.svg"));
-        entry.png = Some(format!("maps/{stem}.png"));
+        entry.svg = stem.map(|stem| format!("maps/{stem}.svg"));
+        entry.png = stem.map(|stem| format!("maps/{stem}.png"));
         entry.model = Some(match map.model {
             Model::Sheet => "sheet",
             Model::Spread => "spread",
@@ -142,7 +159,26 @@ impl Findings {
         entry.cell_m = Some(map.grid.cell_m);
         entry.residual = map.residual;
         entry.figures = Some(self.figures(figures));
+        entry.effects = Some(finding::effects(effects, self.origin));
         self.maps.push(entry);
+    }
+
+    /// Adds a finding.
+    pub fn add_finding(&mut self, finding: &Finding) {
+        self.findings.push(finding::finding(finding, self.origin));
+    }
+
+    /// Adds what joints carry of a path's return at a frequency, if they carry any.
+    pub fn add_joints(&mut self, path: &str, band: &str, frequency_hz: f64, joints: &[JointCurrent]) {
+        if !joints.is_empty() {
+            let joints = joints.iter().map(|joint| finding::joint(joint, self.origin)).collect();
+            self.joints.push(JointsEntry {
+                path: path.to_owned(),
+                band: band.to_owned(),
+                frequency_hz,
+                joints,
+            });
+        }
     }
 
     /// Adds a map that was withheld, with the reason.
@@ -188,6 +224,7 @@ impl Findings {
             driver_landing: landing(&chart.driver_landing),
             receiver_landing: landing(&chart.receiver_landing),
             figures: None,
+            effects: None,
         }
     }
 
@@ -225,17 +262,11 @@ impl Findings {
         }
     }
 
-    /// Millimetres from the review's origin, to a nanometre, so that sums of coordinates leave no digits of rounding.
     fn millimetres(&self, at: Point) -> (f64, f64) {
-        let round = |metres: f64| (metres * 1e9).round() * 1e-6 + 0.0;
-        (round(at.x - self.origin.x), round(at.y - self.origin.y))
+        finding::millimetres(at, self.origin)
     }
 }
 
 fn plane(plane: &PlaneId) -> PlaneEntry {
     PlaneEntry { layer: format!("L{}", plane.layer + 1), net: plane.net.clone() }
-}
-
-fn figure(figure: Figure) -> FigureEntry {
-    FigureEntry { value: figure.value, without_voids: figure.without_voids, error: figure.error }
 }

@@ -2,6 +2,7 @@
 
 mod conductors;
 mod contact;
+mod finding;
 mod findings;
 mod json;
 mod look;

@@ -7,7 +7,8 @@ use crate::diag::Diagnostic;
 use crate::diag::code::run as code;
 use crate::draw::DensityScale;
 use crate::field::{Bench, JointCurrent, ReturnMap};
-use crate::figure::{Charted, Figures, chart};
+use crate::figure::{Charted, ChartedPath, Effects, Figures, chart_in_zones};
+use crate::finding::{self, Finding, Judged, MapEvidence, PlaneEvidence};
 use crate::plan::{ChartPlan, PathPlan, Plan};
 use crate::report::{
     ContactCell, ContactRow, Findings, Picture, Subject, Thumbnail, TicketInput, numbers, thumbnail, ticket,
@@ -30,6 +31,8 @@ pub struct Charting<'a, 's> {
     pub benches: &'a [Bench<'a, 'a>],
     /// File stems by path, chart of its bench and frequency.
     pub stems: &'a [Vec<Vec<String>>],
+    /// Whether pictures are drawn.
+    pub pictures: bool,
     /// Whether arrays are written.
     pub numbers: bool,
     pub store: &'s Mutex<Store>,
@@ -53,8 +56,10 @@ pub struct Drawn {
     pub map: ReturnMap,
     /// Its figures.
     pub figures: Figures,
-    /// The map reduced for the contact sheet.
-    pub thumbnail: Thumbnail,
+    /// What voids, edges and boundaries do.
+    pub effects: Effects,
+    /// The map reduced for the contact sheet; none where no pictures are drawn.
+    pub thumbnail: Option<Thumbnail>,
 }
 
 /// What a path leaves for the summary.
@@ -62,34 +67,70 @@ pub struct PathDone<'a> {
     net: &'a PathPlan,
     /// What is charted, with one entry for each frequency.
     rows: Vec<(&'a ChartPlan, Vec<Done>)>,
+    /// What joints carry, for each frequency.
+    joints: Vec<Vec<JointCurrent>>,
+    /// Its findings, numbered.
+    pub findings: Vec<Finding>,
     /// What was assumed on the way.
     notes: Vec<Diagnostic>,
 }
 
 impl<'a> Charting<'a, '_> {
-    /// Solves, draws and writes all maps of a path. An error means that a file could not be written.
+    /// Solves a path in all bands, judges it, draws and writes its maps. An error means that a file could not be
+    /// written.
     pub fn path(&self, index: usize) -> Result<PathDone<'a>, Diagnostic> {
         let (net, bench) = (&self.plan.paths[index], &self.benches[index]);
+        let each = frequencies(self.plan);
+        let mut solved: Vec<ChartedPath> = Vec::with_capacity(each.len());
+        for &(band, hz) in &each {
+            let band = &self.plan.bands[band];
+            let mut charted = chart_in_zones(bench, net, band, hz, &self.review.zones);
+            charted.planes.iter_mut().flatten().for_each(|plane| forget(&mut plane.without_voids));
+            charted.planes.iter().for_each(|_| self.watch.mapped(&net.name, &band.name));
+            solved.push(charted);
+        }
+        let judged = self.judge(index, &solved);
         let mut rows: Vec<(&ChartPlan, Vec<Done>)> =
             bench.charts().iter().map(|chart| (chart, Vec::new())).collect();
-        for (at, (band, frequency_hz)) in frequencies(self.plan).into_iter().enumerate() {
-            let charted = chart(bench, net, &self.plan.bands[band], frequency_hz);
+        let mut joints = Vec::with_capacity(each.len());
+        for (at, ((band, frequency_hz), charted)) in each.into_iter().zip(solved).enumerate() {
             for (row, map) in charted.planes.into_iter().enumerate() {
                 let stem = &self.stems[index][row][at];
                 let (plan, done) = &mut rows[row];
                 let map = match map {
-                    Ok(charted_map) => {
-                        self.draw(net, plan, band, charted_map, &charted.joints, stem, (index, row))?
-                    }
+                    Ok(map) => self.draw(net, plan, band, map, &charted.joints, stem, (index, row))?,
                     Err(reason) => Err(reason),
                 };
-                self.watch.mapped(&net.name, &self.plan.bands[band].name);
                 done.push(Done { band, frequency_hz, stem: stem.clone(), map });
             }
+            joints.push(charted.joints);
         }
         let mut notes = bench.notes();
+        notes.extend(judged.messages);
         notes.dedup();
-        Ok(PathDone { net, rows, notes })
+        Ok(PathDone { net, rows, joints, findings: judged.findings, notes })
+    }
+
+    /// The findings of a path, from its maps in all bands.
+    fn judge(&self, index: usize, solved: &[ChartedPath]) -> Judged {
+        let (net, bench) = (&self.plan.paths[index], &self.benches[index]);
+        let of_chart = |(row, chart): (usize, &'a ChartPlan)| PlaneEvidence {
+            number: index + 1,
+            path: net,
+            chart,
+            maps: solved
+                .iter()
+                .filter_map(|charted| charted.planes[row].as_ref().ok())
+                .map(|charted| MapEvidence {
+                    band: charted.band.clone(),
+                    frequency_hz: charted.frequency_hz,
+                    figures: charted.figures.clone(),
+                    effects: charted.effects.clone(),
+                })
+                .collect(),
+        };
+        let evidence: Vec<PlaneEvidence> = bench.charts().iter().enumerate().map(of_chart).collect();
+        finding::of_path(&evidence, Vec::new(), self.board, self.review)
     }
 
     /// Draws and writes one map. The outer error is a file that cannot be written, the inner one withholds the map.
@@ -103,7 +144,11 @@ impl<'a> Charting<'a, '_> {
         stem: &str,
         at: (usize, usize),
     ) -> Result<Result<Drawn, Diagnostic>, Diagnostic> {
-        let Charted { mut map, figures, .. } = charted;
+        let Charted { mut map, figures, effects, .. } = charted;
+        if !self.pictures {
+            forget(&mut map);
+            return Ok(Ok(Drawn { map, figures, effects, thumbnail: None }));
+        }
         let picture = match self.picture(net, plan, &self.plan.bands[band], (&map, &figures, joints), at) {
             Ok(picture) => picture,
             Err(reason) => return Ok(Err(reason)),
@@ -118,8 +163,8 @@ impl<'a> Charting<'a, '_> {
         }
         let (board, review, scale) = (self.board, self.review, self.scale);
         let thumbnail = thumbnail(board, review, net, plan, &map, &figures, scale, self.style);
-        (map.jx, map.jy, map.copper) = (Vec::new(), Vec::new(), Vec::new());
-        Ok(Ok(Drawn { map, figures, thumbnail }))
+        forget(&mut map);
+        Ok(Ok(Drawn { map, figures, effects, thumbnail: Some(thumbnail) }))
     }
 
     fn picture(
@@ -190,27 +235,35 @@ impl<'a> PathDone<'a> {
         messages
     }
 
-    /// Adds the maps to the findings.
+    /// Adds findings, maps and joints to the document.
     pub fn add_to(&self, findings: &mut Findings, plan: &Plan) {
+        self.findings.iter().for_each(|finding| findings.add_finding(finding));
         for &(chart, ref maps) in &self.rows {
             for done in maps {
                 let band = &plan.bands[done.band].name;
                 let subject = Subject { net: self.net, chart, band, frequency_hz: done.frequency_hz };
                 match &done.map {
-                    Ok(drawn) => findings.add_map(subject, &done.stem, &drawn.map, &drawn.figures),
+                    Ok(drawn) => {
+                        let stem = drawn.thumbnail.is_some().then_some(done.stem.as_str());
+                        findings.add_map(subject, stem, &drawn.map, &drawn.figures, &drawn.effects);
+                    }
                     Err(reason) => findings.add_withheld(subject, reason),
                 }
             }
+        }
+        for (joints, (band, hz)) in self.joints.iter().zip(frequencies(plan)) {
+            findings.add_joints(&self.net.name, &plan.bands[band].name, hz, joints);
         }
     }
 
     /// The rows of the contact sheet.
     pub fn contact(&self) -> Vec<ContactRow<'a>> {
         let cell = |done: &Done| match &done.map {
-            Ok(drawn) => {
+            Ok(Drawn { thumbnail: Some(thumbnail), .. }) => {
                 let ticket = format!("maps/{}.svg", done.stem);
-                ContactCell::Map(Box::new(drawn.thumbnail.clone()), Some(ticket))
+                ContactCell::Map(Box::new(thumbnail.clone()), Some(ticket))
             }
+            Ok(_) => ContactCell::Withheld(String::new()),
             Err(reason) => ContactCell::Withheld(reason.text.clone()),
         };
         let row = |(chart, maps): &(&'a ChartPlan, Vec<Done>)| ContactRow {
@@ -242,6 +295,11 @@ impl<'a> PathDone<'a> {
 pub fn frequencies(plan: &Plan) -> Vec<(usize, f64)> {
     let bands = plan.bands.iter().enumerate();
     bands.flat_map(|(index, band)| band.at_hz.iter().map(move |&hz| (index, hz))).collect()
+}
+
+/// Leaves a map without its cells, which would fill the memory.
+fn forget(map: &mut ReturnMap) {
+    (map.jx, map.jy, map.copper) = (Vec::new(), Vec::new(), Vec::new());
 }
 
 /// A failed write as a message.

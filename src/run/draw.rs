@@ -141,6 +141,7 @@ fn draw_plan(
         scale: DensityScale::chosen(scale_height_m(plan), style.0.density.range_db, order.scale),
         benches: &benches,
         stems: &stems(plan, &benches),
+        pictures: true,
         numbers: order.numbers,
         store: &store,
         watch,
