@@ -13,7 +13,7 @@ pub struct Arguments {
 }
 
 /// Shown below every help text.
-const EXIT_CODES: &str = "Exit codes: 0 complete; 2 unusable input or usage, nothing written; \
+const EXIT_CODES: &str = "Exit codes: 0 complete (and within limits); 1 complete, limits exceeded (`check`, and `draw --limits`); 2 unusable input or usage, nothing written; \
 3 incomplete, something was skipped or withheld and each is named.";
 
 /// The commands.
@@ -22,6 +22,9 @@ pub enum Command {
     /// Draw the maps of a review: one picture for each net, plane and band, a contact sheet and the findings
     #[command(after_help = EXIT_CODES)]
     Draw(DrawArguments),
+    /// Judge a review: findings with their cause, place, figure and limit, and remedies that were computed; no pictures
+    #[command(after_help = EXIT_CODES)]
+    Check(CheckArguments),
     /// Print what was understood of a board, or of a review: tracks, planes, landings, cells, before minutes of work
     #[command(after_help = EXIT_CODES)]
     Look {
@@ -36,6 +39,29 @@ pub enum Command {
         /// The code that stands in brackets in a message
         code: Option<String>,
     },
+}
+
+/// Arguments of `check`.
+#[derive(Args, Debug)]
+pub struct CheckArguments {
+    /// The review file (TOML)
+    #[arg(required_unless_present = "schema")]
+    pub review: Option<PathBuf>,
+    /// Folder for findings.json, findings.csv, review.md and findings.gbr; without it they are only printed
+    #[arg(long, value_name = "DIR")]
+    pub out: Option<PathBuf>,
+    /// Judge only this path of the review (may be repeated; `*` matches any text)
+    #[arg(long, value_name = "PATH")]
+    pub only: Vec<String>,
+    /// Side of a cell with its unit, for example 0.1mm; beats `[solver] cell`
+    #[arg(long, value_name = "LENGTH")]
+    pub cell: Option<String>,
+    /// Threads; the outputs do not depend on it
+    #[arg(long, value_name = "N", default_value_t = 0, hide_default_value = true)]
+    pub jobs: usize,
+    /// Print the JSON Schema of findings.json and do nothing else
+    #[arg(long)]
+    pub schema: bool,
 }
 
 /// Arguments of `draw`.
@@ -56,6 +82,9 @@ pub struct DrawArguments {
     /// Also write the densities as arrays for NumPy, in DIR/numbers
     #[arg(long)]
     pub numbers: bool,
+    /// Exit with 1 where a finding is above its limit
+    #[arg(long)]
+    pub limits: bool,
     /// Threads; the outputs do not depend on it
     #[arg(long, value_name = "N", default_value_t = 0, hide_default_value = true)]
     pub jobs: usize,

@@ -5,6 +5,8 @@
 pub enum Exit {
     /// Complete and within limits.
     Complete,
+    /// Complete, but a finding is above its limit.
+    Exceeded,
     /// Unusable input or usage: nothing was written.
     Unusable,
     /// Incomplete: something was skipped or withheld, each named in a message.
@@ -12,10 +14,11 @@ pub enum Exit {
 }
 
 impl Exit {
-    /// The number that the shell sees. 1 (complete, limits exceeded) belongs to commands that check limits.
+    /// The number that the shell sees.
     pub fn code(self) -> u8 {
         match self {
             Self::Complete => 0,
+            Self::Exceeded => 1,
             Self::Unusable => 2,
             Self::Incomplete => 3,
         }

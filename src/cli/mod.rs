@@ -30,6 +30,7 @@ pub fn main() -> std::process::ExitCode {
     let mut console = Console::of_process();
     let exit = match &arguments.command {
         Command::Draw(order) => draw::draw(order, &mut console),
+        Command::Check(order) => draw::check(order, &mut console),
         Command::Look { path, json } => look::look(path, *json, &mut console),
         Command::Explain { code } => explain::explain(code.as_deref(), &mut console),
     };

@@ -1,6 +1,7 @@
 //! The return-current density of one path on the planes that carry it at one frequency, and how it comes from a model.
 
 mod complaint;
+mod coupling;
 mod foil;
 mod lay;
 mod laybench;
@@ -15,6 +16,7 @@ pub mod track;
 mod wiring;
 mod workshop;
 
+pub use coupling::Couplings;
 pub use foil::Foil;
 pub use mask::{Mask, NO_ISLAND, TooCoarse};
 pub use pieces::Copper;

@@ -51,6 +51,12 @@ pub fn partial_inductance_h(runs: &[Run]) -> f64 {
     MU0 / (4.0 * std::f64::consts::PI) * sum
 }
 
+/// Mutual inductance in henry of two paths, each seen by a current of 1 A.
+pub fn mutual_inductance_h(one: &[Run], other: &[Run]) -> f64 {
+    let pairs = one.iter().flat_map(|a| other.iter().map(move |b| a.current * b.current * mutual(a, b)));
+    MU0 / (4.0 * std::f64::consts::PI) * pairs.sum::<f64>()
+}
+
 /// int int ds ds' / sqrt((s - s')^2 + g^2) over one leg, in metres.
 fn own(run: &Run) -> f64 {
     let (length, g) = (run.from.distance(run.to), run.gmd_m);

@@ -20,6 +20,7 @@ pub mod compute;
 pub mod edge;
 pub mod effect;
 pub mod level;
+pub mod outline;
 pub mod section;
 pub mod station;
 pub mod stray;

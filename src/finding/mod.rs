@@ -5,6 +5,7 @@
 
 mod evidence;
 mod judge;
+pub mod noise;
 mod waive;
 mod word;
 

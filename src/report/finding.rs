@@ -2,9 +2,11 @@
 
 use crate::field::JointCurrent;
 use crate::figure::{Effects, Figure, Placed};
+use crate::finding::noise::{Noise, NoisePart, TRANSFER_ERROR};
 use crate::finding::{Finding, Spot};
 use crate::geom::Point;
 use crate::plan::JointKind;
+use num_complex::Complex64;
 use serde::Serialize;
 
 /// Millimetres from the review's origin, to a nanometre, so that sums of coordinates leave no digits of rounding.
@@ -270,5 +272,60 @@ pub(super) fn joint(joint: &JointCurrent, origin: Point) -> JointEntry {
         y_mm,
         layers: joint.layers.map(|layer| layer.map(|layer| format!("L{}", layer + 1))),
         current: [joint.current.re, joint.current.im],
+    }
+}
+
+/// A transfer impedance.
+#[derive(Clone, Debug, Serialize)]
+pub(super) struct TransferEntry {
+    from: String,
+    to: String,
+    frequency_hz: f64,
+    ohm: [f64; 2],
+    magnitude_ohm: f64,
+    phase_deg: f64,
+    error_ohm: f64,
+}
+
+/// A transfer impedance as an entry.
+pub(super) fn transfer(from: &str, to: &str, frequency_hz: f64, z: Complex64) -> TransferEntry {
+    TransferEntry {
+        from: from.to_owned(),
+        to: to.to_owned(),
+        frequency_hz,
+        ohm: [z.re, z.im],
+        magnitude_ohm: z.norm(),
+        phase_deg: libm::atan2(z.im, z.re).to_degrees(),
+        error_ohm: TRANSFER_ERROR * z.norm(),
+    }
+}
+
+#[derive(Clone, Debug, Serialize)]
+struct PartEntry {
+    from: String,
+    volts_rms: f64,
+}
+
+/// Noise in a path.
+#[derive(Clone, Debug, Serialize)]
+pub(super) struct NoiseEntry {
+    path: String,
+    band: Option<String>,
+    volts_rms: f64,
+    lsb: Option<f64>,
+    budget_v: Option<f64>,
+    parts: Vec<PartEntry>,
+}
+
+/// Noise as an entry.
+pub(super) fn noise(noise: &Noise) -> NoiseEntry {
+    let part = |part: &NoisePart| PartEntry { from: part.from.clone(), volts_rms: part.volts_rms };
+    NoiseEntry {
+        path: noise.path.clone(),
+        band: noise.band.clone(),
+        volts_rms: noise.volts_rms,
+        lsb: noise.lsb,
+        budget_v: noise.budget_v,
+        parts: noise.parts.iter().map(part).collect(),
     }
 }

@@ -3,15 +3,21 @@
 //! Quantities are in SI units with the unit in the member's name; coordinates are in millimetres from the review's
 //! origin. A member that does not apply is `null`.
 
-use super::finding::{self, EffectsEntry, FigureEntry, FindingEntry, JointEntry, PlaneEntry, figure};
+use super::finding::{
+    self, EffectsEntry, FigureEntry, FindingEntry, JointEntry, NoiseEntry, PlaneEntry, TransferEntry, figure,
+};
 use crate::diag::Diagnostic;
-use crate::field::{JointCurrent, PlaneId, ReturnMap};
+use crate::field::{Couplings, JointCurrent, PlaneId, ReturnMap};
 use crate::figure::{Effects, Figures};
 use crate::finding::Finding;
+use crate::finding::noise::Noise;
 use crate::geom::Point;
 use crate::plan::{ChartPlan, PathPlan};
 use crate::review::Model;
 use serde::Serialize;
+
+/// The JSON Schema (draft 2020-12) of the document.
+pub const FINDINGS_SCHEMA: &str = include_str!("findings.schema.json");
 
 /// Version of the document.
 const SCHEMA: u32 = 1;
@@ -24,6 +30,8 @@ pub struct Findings {
     findings: Vec<FindingEntry>,
     maps: Vec<MapEntry>,
     joints: Vec<JointsEntry>,
+    transfer: Vec<TransferEntry>,
+    noise: Vec<NoiseEntry>,
     skipped: Vec<MessageEntry>,
     messages: Vec<MessageEntry>,
     #[serde(skip)]
@@ -134,6 +142,8 @@ impl Findings {
             findings: Vec::new(),
             maps: Vec::new(),
             joints: Vec::new(),
+            transfer: Vec::new(),
+            noise: Vec::new(),
             skipped: Vec::new(),
             messages: Vec::new(),
             origin,
@@ -166,6 +176,20 @@ impl Findings {
     /// Adds a finding.
     pub fn add_finding(&mut self, finding: &Finding) {
         self.findings.push(finding::finding(finding, self.origin));
+    }
+
+    /// Adds the transfer impedances between all paths at a frequency; `name` gives the name of a path.
+    pub fn add_couplings<'n>(&mut self, couplings: &Couplings, name: impl Fn(usize) -> &'n str) {
+        for (from, row) in couplings.paths.iter().zip(&couplings.z_ohm) {
+            for (to, z) in couplings.paths.iter().zip(row).filter(|(to, _)| *to != from) {
+                self.transfer.push(finding::transfer(name(*from), name(*to), couplings.frequency_hz, *z));
+            }
+        }
+    }
+
+    /// Adds the noise in a path.
+    pub fn add_noise(&mut self, noise: &Noise) {
+        self.noise.push(finding::noise(noise));
     }
 
     /// Adds what joints carry of a path's return at a frequency, if they carry any.

@@ -2,23 +2,29 @@
 
 mod conductors;
 mod contact;
+mod csv;
 mod finding;
 mod findings;
 mod json;
 mod look;
 mod manifest;
+mod marks;
 pub mod numbers;
 mod picture;
 mod plan;
 mod remark;
+mod sheet;
 mod ticket;
 mod words;
 
 pub use contact::{ContactCell, ContactInput, ContactRow, Thumbnail, contact, contact_scenes, thumbnail};
-pub use findings::{Findings, Subject};
+pub use csv::csv;
+pub use findings::{FINDINGS_SCHEMA, Findings, Subject};
 pub use json::json;
 pub use look::Look;
 pub use manifest::{Manifest, sha256_hex};
+pub use marks::{Outlined, marks};
 pub use picture::Picture;
 pub use plan::PlanAccount;
+pub use sheet::{SheetInput, listing, sheet};
 pub use ticket::{TicketInput, ticket, ticket_scene};

@@ -6,12 +6,15 @@ use crate::board::Board;
 use crate::diag::Diagnostic;
 use crate::diag::code::run as code;
 use crate::draw::DensityScale;
-use crate::field::{Bench, JointCurrent, ReturnMap};
-use crate::figure::{Charted, ChartedPath, Effects, Figures, chart_in_zones};
+use crate::field::{Bench, Couplings, JointCurrent, ReturnMap};
+use crate::figure::{Charted, ChartedPath, Effects, Figures, chart_in_zones, outline};
+use crate::finding::noise::{Noise, of_others};
 use crate::finding::{self, Finding, Judged, MapEvidence, PlaneEvidence};
+use crate::geom::Point;
 use crate::plan::{ChartPlan, PathPlan, Plan};
 use crate::report::{
-    ContactCell, ContactRow, Findings, Picture, Subject, Thumbnail, TicketInput, numbers, thumbnail, ticket,
+    ContactCell, ContactRow, Findings, Outlined, Picture, Subject, Thumbnail, TicketInput, numbers,
+    thumbnail, ticket,
 };
 use crate::review::{Band, Review};
 use crate::style::Style;
@@ -31,11 +34,14 @@ pub struct Charting<'a, 's> {
     pub benches: &'a [Bench<'a, 'a>],
     /// File stems by path, chart of its bench and frequency.
     pub stems: &'a [Vec<Vec<String>>],
+    /// Transfer impedances between all paths, and the noise that they make.
+    pub couplings: &'a [Couplings],
+    pub noise: &'a [Noise],
     /// Whether pictures are drawn.
     pub pictures: bool,
     /// Whether arrays are written.
     pub numbers: bool,
-    pub store: &'s Mutex<Store>,
+    pub store: &'s Mutex<Option<Store>>,
     pub watch: &'a dyn Watch,
 }
 
@@ -71,6 +77,8 @@ pub struct PathDone<'a> {
     joints: Vec<Vec<JointCurrent>>,
     /// Its findings, numbered.
     pub findings: Vec<Finding>,
+    /// For each finding the lines of the 80 % contour of its map.
+    outlines: Vec<Vec<Vec<Point>>>,
     /// What was assumed on the way.
     notes: Vec<Diagnostic>,
 }
@@ -90,6 +98,7 @@ impl<'a> Charting<'a, '_> {
             solved.push(charted);
         }
         let judged = self.judge(index, &solved);
+        let outlines = judged.findings.iter().map(|finding| outline(bench, &solved, finding)).collect();
         let mut rows: Vec<(&ChartPlan, Vec<Done>)> =
             bench.charts().iter().map(|chart| (chart, Vec::new())).collect();
         let mut joints = Vec::with_capacity(each.len());
@@ -108,7 +117,7 @@ impl<'a> Charting<'a, '_> {
         let mut notes = bench.notes();
         notes.extend(judged.messages);
         notes.dedup();
-        Ok(PathDone { net, rows, joints, findings: judged.findings, notes })
+        Ok(PathDone { net, rows, joints, findings: judged.findings, outlines, notes })
     }
 
     /// The findings of a path, from its maps in all bands.
@@ -130,7 +139,8 @@ impl<'a> Charting<'a, '_> {
                 .collect(),
         };
         let evidence: Vec<PlaneEvidence> = bench.charts().iter().enumerate().map(of_chart).collect();
-        finding::of_path(&evidence, Vec::new(), self.board, self.review)
+        let others = of_others(index, self.couplings, self.noise, self.plan, self.review);
+        finding::of_path(&evidence, others, self.board, self.review)
     }
 
     /// Draws and writes one map. The outer error is a file that cannot be written, the inner one withholds the map.
@@ -213,8 +223,10 @@ impl<'a> Charting<'a, '_> {
     }
 
     fn write(&self, name: &str, bytes: &[u8]) -> Result<(), Diagnostic> {
-        let mut store = self.store.lock().unwrap_or_else(PoisonError::into_inner);
-        store.write(name, bytes).map_err(|failure| cannot_write(&failure))
+        match self.store.lock().unwrap_or_else(PoisonError::into_inner).as_mut() {
+            Some(store) => store.write(name, bytes).map_err(|failure| cannot_write(&failure)),
+            None => Ok(()),
+        }
     }
 }
 
@@ -222,6 +234,33 @@ impl<'a> PathDone<'a> {
     /// Whether every map was drawn.
     pub fn is_complete(&self) -> bool {
         self.rows.iter().flat_map(|(_, maps)| maps).all(|done| done.map.is_ok())
+    }
+
+    /// Name of the path.
+    pub fn name(&self) -> &str {
+        &self.net.name
+    }
+
+    /// The findings with the contours of their maps.
+    pub fn outlined(&self) -> impl Iterator<Item = Outlined<'_>> {
+        let both = self.findings.iter().zip(&self.outlines);
+        both.map(|(finding, lines)| Outlined { finding, lines })
+    }
+
+    /// Why maps are missing.
+    pub fn withheld(&self) -> impl Iterator<Item = &Diagnostic> {
+        self.rows.iter().flat_map(|(_, maps)| maps).filter_map(|done| done.map.as_ref().err())
+    }
+
+    /// File stem of the map of a finding on this path.
+    pub fn stem_of(&self, finding: &Finding, plan: &Plan) -> Option<&str> {
+        let (plane, band) = (finding.plane.as_ref()?, finding.band.as_ref()?);
+        let row =
+            self.rows.iter().find(|(chart, _)| finding.path == self.net.name && chart.plane == *plane)?;
+        let of_band = |done: &&Done| {
+            plan.bands[done.band].name == *band && Some(done.frequency_hz) == finding.frequency_hz
+        };
+        row.1.iter().find(of_band).filter(|done| done.map.is_ok()).map(|done| done.stem.as_str())
     }
 
     /// Notes and reasons, each once.
@@ -295,6 +334,18 @@ impl<'a> PathDone<'a> {
 pub fn frequencies(plan: &Plan) -> Vec<(usize, f64)> {
     let bands = plan.bands.iter().enumerate();
     bands.flat_map(|(index, band)| band.at_hz.iter().map(move |&hz| (index, hz))).collect()
+}
+
+/// Lines of the 80 % contour of the map of a finding; none where it belongs to no map.
+fn outline(bench: &Bench, solved: &[ChartedPath], finding: &Finding) -> Vec<Vec<Point>> {
+    let of_plane = |chart: &ChartPlan| Some(&chart.plane) == finding.plane.as_ref();
+    let Some(row) = bench.charts().iter().position(of_plane) else { return Vec::new() };
+    let mut maps = solved.iter().filter_map(|charted| charted.planes[row].as_ref().ok());
+    let of_band = |charted: &&Charted| {
+        Some(&charted.band) == finding.band.as_ref() && Some(charted.frequency_hz) == finding.frequency_hz
+    };
+    let found = maps.find(of_band);
+    found.map_or_else(Vec::new, |found| outline::lines(&found.map, found.figures.contour_levels[1]))
 }
 
 /// Leaves a map without its cells, which would fill the memory.

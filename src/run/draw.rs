@@ -1,6 +1,7 @@
 //! A whole review: everything that `ebbmap draw` does, without a terminal.
 
 use super::chart::{Charting, PathDone, cannot_write, frequencies};
+use super::documents::Documents;
 use super::input::input_hash;
 use super::name::{MapName, file_stems};
 use super::select::chosen;
@@ -11,10 +12,12 @@ use crate::diag::code::{plan as plan_code, read as read_code, run as code};
 use crate::diag::{Diagnostic, Severity};
 use crate::draw::{DensityScale, ScaleChoice};
 use crate::field::{Bench, Workshop};
+use crate::finding::noise::noise;
+use crate::finding::{Finding, waiver_messages};
 use crate::plan::{Plan, apply_review, build};
 use crate::read::review::{ReviewFile, read_review};
 use crate::read::{read_board, style};
-use crate::report::{ContactInput, Findings, contact, json, numbers};
+use crate::report::numbers;
 use crate::review::{Band, Review};
 use crate::style::Style;
 use crate::unit::quantity_text;
@@ -27,8 +30,10 @@ use std::sync::{Mutex, PoisonError};
 pub struct Order<'a> {
     /// The review file.
     pub review: &'a Path,
-    /// Folder for the outputs.
-    pub out: &'a Path,
+    /// Folder for the outputs; none writes nothing.
+    pub out: Option<&'a Path>,
+    /// Whether pictures are drawn; without them a run does everything else.
+    pub pictures: bool,
     /// Nets to draw, patterns allowed; empty draws all.
     pub only: &'a [String],
     /// Side of a cell in metres, beats the review's.
@@ -43,7 +48,18 @@ pub struct Order<'a> {
     pub scale: ScaleChoice,
 }
 
-/// How a run ended that wrote its outputs.
+/// How a run ended that wrote its outputs, and what it found.
+#[derive(Clone, Debug)]
+pub struct Outcome {
+    /// How it ended.
+    pub ending: Ending,
+    /// Whether a finding is above its limit and not waived.
+    pub exceeded: bool,
+    /// The findings as text.
+    pub listing: String,
+}
+
+/// How complete a run is.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub enum Ending {
     /// Everything asked for was drawn.
@@ -106,12 +122,13 @@ pub fn prepare(path: &Path, cell_m: Option<f64>, watch: &dyn Watch) -> Result<Pr
 }
 
 /// Draws a review. Nothing is written unless the input can be used and the folder can be written.
-pub fn draw(order: &Order, watch: &dyn Watch) -> Result<Ending, Unusable> {
+pub fn draw(order: &Order, watch: &dyn Watch) -> Result<Outcome, Unusable> {
     // The style costs nothing to read and is the user's, so it is refused before the board is read.
     let style = chosen_style(order.style).map_err(|messages| tell(watch, &messages))?;
     let mut prepared = prepare(order.review, order.cell_m, watch)?;
     let chosen = chosen(&prepared.plan, order.only).map_err(|messages| tell(watch, &messages))?;
-    let store = Store::open(order.out).map_err(|failure| tell(watch, &[cannot_write(&failure)]))?;
+    let store = order.out.map(Store::open).transpose();
+    let store = store.map_err(|failure| tell(watch, &[cannot_write(&failure)]))?;
     match rayon::ThreadPoolBuilder::new().num_threads(order.jobs).build() {
         Ok(pool) => pool.install(|| draw_plan(order, watch, &mut prepared, &chosen, &style, store)),
         // Where threads cannot be started the calling thread does all.
@@ -125,13 +142,23 @@ fn draw_plan(
     prepared: &mut Prepared,
     chosen: &[bool],
     style: &(Style, String),
-    store: Store,
-) -> Result<Ending, Unusable> {
+    store: Option<Store>,
+) -> Result<Outcome, Unusable> {
     let Prepared { file, review, board, plan, messages } = prepared;
     let store = Mutex::new(store);
     let workshop = Workshop::new(board, plan, review.solver.model);
     // All paths of the review, whatever is drawn: what is charted of each decides the names and numbers of all maps.
     let benches: Vec<Bench> = plan.paths.par_iter().map(|path| workshop.bench(path)).collect();
+    let paths: Vec<usize> = (0..plan.paths.len()).filter(|&path| chosen[path]).collect();
+    // Coupling counts all paths of the review, whatever is drawn: any of them may disturb one that is.
+    let all: Vec<usize> = (0..plan.paths.len()).collect();
+    let at_hz: Vec<f64> = frequencies(plan).into_iter().map(|(_, hz)| hz).collect();
+    let couplings = workshop.couplings(&all, &at_hz).unwrap_or_else(|reason| {
+        watch.message(&reason, None);
+        messages.push(reason);
+        Vec::new()
+    });
+    let noise = noise(&couplings, plan, review);
     let charting = Charting {
         board,
         review,
@@ -141,12 +168,13 @@ fn draw_plan(
         scale: DensityScale::chosen(scale_height_m(plan), style.0.density.range_db, order.scale),
         benches: &benches,
         stems: &stems(plan, &benches),
-        pictures: true,
+        couplings: &couplings,
+        noise: &noise,
+        pictures: order.pictures,
         numbers: order.numbers,
         store: &store,
         watch,
     };
-    let paths: Vec<usize> = (0..plan.paths.len()).filter(|&path| chosen[path]).collect();
     let rows: usize = paths.iter().map(|&path| benches[path].charts().len()).sum();
     watch.planned(rows * frequencies(plan).len());
     let done: Result<Vec<PathDone>, Diagnostic> = paths.par_iter().map(|&path| charting.path(path)).collect();
@@ -159,40 +187,52 @@ fn draw_plan(
         watch.message(&message, None);
         messages.push(message);
     }
-    let mut findings = Findings::new(&board.title, &board.revision, review.origin);
-    done.iter().for_each(|done| done.add_to(&mut findings, plan));
-    plan.messages.iter().filter(|message| is_skip(message)).for_each(|reason| findings.add_skipped(reason));
-    messages.iter().for_each(|message| findings.add_message(message));
-    let sheets = contact(&ContactInput {
+    let found: Vec<&Finding> = done.iter().flat_map(|done| &done.findings).collect();
+    if order.only.is_empty() {
+        let all: Vec<Finding> = found.iter().map(|&finding| finding.clone()).collect();
+        for message in waiver_messages(&all, review, &board.revision) {
+            watch.message(&message, None);
+            messages.push(message);
+        }
+    }
+    let documents = Documents {
         board,
         review,
-        columns: frequencies(plan).into_iter().map(|(band, hz)| (&plan.bands[band], hz)).collect(),
-        rows: done.iter().flat_map(PathDone::contact).collect(),
-        scale: charting.scale,
-        style: charting.style,
-        input_hash: charting.input_hash,
-    });
-    let sheets = sheets.map_err(|fault| {
-        let text = format!("contact sheet cannot be rendered: {}", fault.0);
-        tell(watch, &[Diagnostic::error(code::CANNOT_RENDER, text)])
-    })?;
-    let mut store = store.into_inner().unwrap_or_else(PoisonError::into_inner);
-    let rest = || {
-        for (sheet, index) in sheets.iter().zip(1..) {
-            store.write(&format!("contact-sheet-{index}.svg"), sheet.svg.as_bytes())?;
-            store.write(&format!("contact-sheet-{index}.png"), &sheet.png)?;
-        }
-        store.write("findings.json", &json(&findings))?;
-        if order.numbers {
-            let entries: Vec<numbers::Numbers> = done.iter().flat_map(|done| done.numbers(plan)).collect();
-            store.write("numbers/index.json", numbers::index(&entries, review.origin).as_bytes())?;
-        }
-        store.finish()
+        plan,
+        messages,
+        done: &done,
+        couplings: &couplings,
+        noise: &noise,
+        pictures: order.pictures,
     };
-    rest().map_err(|failure| tell(watch, &[cannot_write(&failure)]))?;
+    let sheets = if order.pictures { documents.contact(&charting) } else { Ok(Vec::new()) };
+    let sheets = sheets.map_err(|fault| tell(watch, &[fault]))?;
+    let store = store.into_inner().unwrap_or_else(PoisonError::into_inner);
+    if let Some(mut store) = store {
+        let rest = || {
+            for (sheet, index) in sheets.iter().zip(1..) {
+                store.write(&format!("contact-sheet-{index}.svg"), sheet.svg.as_bytes())?;
+                store.write(&format!("contact-sheet-{index}.png"), &sheet.png)?;
+            }
+            for (name, bytes) in documents.files() {
+                store.write(name, &bytes)?;
+            }
+            if order.numbers {
+                let entries: Vec<numbers::Numbers> =
+                    done.iter().flat_map(|done| done.numbers(plan)).collect();
+                store.write("numbers/index.json", numbers::index(&entries, review.origin).as_bytes())?;
+            }
+            store.finish()
+        };
+        rest().map_err(|failure| tell(watch, &[cannot_write(&failure)]))?;
+    }
     let skipped = plan.messages.iter().any(is_skip);
     let complete = !skipped && done.iter().all(PathDone::is_complete);
-    Ok(if complete { Ending::Complete } else { Ending::Incomplete })
+    Ok(Outcome {
+        ending: if complete { Ending::Complete } else { Ending::Incomplete },
+        exceeded: found.iter().any(|finding| finding.is_exceeded()),
+        listing: documents.listing(),
+    })
 }
 
 /// The smallest height of all charts that can be drawn: the anchor of the common scale depends on inputs only.
@@ -242,7 +282,7 @@ fn is_answered(message: &Diagnostic, stackup: &Stackup) -> bool {
 
 /// Whether a message of the plan says that a net has no map at all while the others go on. What a review names and the
 /// board does not have is no such case: it is a slip to mend before minutes of work.
-fn is_skip(message: &Diagnostic) -> bool {
+pub(super) fn is_skip(message: &Diagnostic) -> bool {
     let skips = [plan_code::TRACK_OPEN, plan_code::NET_FEW_PINS, plan_code::PINS_NEEDED];
     message.severity == Severity::Error && skips.contains(&message.code)
 }

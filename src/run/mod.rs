@@ -1,6 +1,7 @@
 //! A whole run: review -> plan -> maps -> files, with progress and threads.
 
 mod chart;
+mod documents;
 mod draw;
 mod input;
 mod name;
@@ -8,7 +9,7 @@ mod select;
 mod store;
 mod watch;
 
-pub use draw::{Ending, Order, Prepared, Unusable, draw, prepare};
+pub use draw::{Ending, Order, Outcome, Prepared, Unusable, draw, prepare};
 pub use name::{MapName, file_stems};
 pub use select::chosen;
 pub use store::{Store, StoreFailure};

@@ -61,6 +61,14 @@ pub const NOT_FACTORED: Code = Code {
               drawn. Set a larger `cell` under `[solver]`.",
 };
 
+/// Paths could not be solved together.
+pub const COUPLING_UNSOLVED: Code = Code {
+    name: "coupling-unsolved",
+    meaning: "Transfer impedances between paths need all paths on the same copper and cells, twice as large as those of \
+              the maps; that could not be solved, so nothing is said of noise. The maps and all other findings stand. \
+              Smaller cells under `[solver]` may help.",
+};
+
 /// All codes of this room.
 pub const ALL: &[Code] = &[
     LANDINGS_APART,
@@ -71,4 +79,5 @@ pub const ALL: &[Code] = &[
     PLANE_ON_CELLS,
     NOT_CONVERGED,
     NOT_FACTORED,
+    COUPLING_UNSOLVED,
 ];
