@@ -3,22 +3,23 @@
 //! Given the figures of all charted paths of a review and its limits, gives numbered findings. Limits act on the
 //! excess over the same path without voids and on noise; an absolute share is never more than a note.
 
+mod change;
 mod evidence;
 mod judge;
 pub mod noise;
+mod remedy;
 mod waive;
 mod word;
 
 pub use evidence::{MapEvidence, PlaneEvidence};
 pub use judge::{grade, limits_of, number, plane};
+pub use remedy::Trials;
 pub use waive::{compare, waive, waiver_messages};
 pub use word::{digits, hertz, place, quantity};
 
-use crate::board::Board;
 use crate::diag::{Code, Diagnostic};
 use crate::field::PlaneId;
 use crate::geom::{Point, Polygon};
-use crate::review::Review;
 
 /// The findings of one path, and messages about them.
 #[derive(Clone, Debug, Default)]
@@ -30,13 +31,21 @@ pub struct Judged {
 }
 
 /// Judges a path from the evidence of its planes; `noise` are the findings that rest on other paths.
-pub fn of_path(evidence: &[PlaneEvidence], noise: Vec<Finding>, board: &Board, review: &Review) -> Judged {
+pub fn of_path(evidence: &[PlaneEvidence], noise: Vec<Finding>, trials: &Trials) -> Judged {
+    let review = trials.review;
     let mut findings: Vec<Finding> =
         evidence.iter().flat_map(|evidence| plane(evidence, &review.limits)).collect();
+    let (changes, mut messages) = trials.layer_changes(evidence);
+    findings.extend(changes);
     findings.extend(noise);
     number(&mut findings);
-    waive(&mut findings, review, &board.revision);
-    Judged { findings, messages: Vec::new() }
+    waive(&mut findings, review, &trials.board.revision);
+    for finding in findings.iter_mut().filter(|finding| finding.is_exceeded() && finding.remedy.is_none()) {
+        let (remedy, untried) = trials.best(evidence, finding);
+        finding.remedy = remedy;
+        messages.extend(untried);
+    }
+    Judged { findings, messages }
 }
 
 /// How much a finding matters.

@@ -9,7 +9,7 @@ use crate::draw::DensityScale;
 use crate::field::{Bench, Couplings, JointCurrent, ReturnMap};
 use crate::figure::{Charted, ChartedPath, Effects, Figures, chart_in_zones, outline};
 use crate::finding::noise::{Noise, of_others};
-use crate::finding::{self, Finding, Judged, MapEvidence, PlaneEvidence};
+use crate::finding::{self, Finding, Judged, MapEvidence, PlaneEvidence, Trials};
 use crate::geom::Point;
 use crate::plan::{ChartPlan, PathPlan, Plan};
 use crate::report::{
@@ -140,7 +140,14 @@ impl<'a> Charting<'a, '_> {
         };
         let evidence: Vec<PlaneEvidence> = bench.charts().iter().enumerate().map(of_chart).collect();
         let others = of_others(index, self.couplings, self.noise, self.plan, self.review);
-        finding::of_path(&evidence, others, self.board, self.review)
+        let trials = Trials {
+            board: self.board,
+            plan: self.plan,
+            review: self.review,
+            path: index,
+            charts: bench.charts(),
+        };
+        finding::of_path(&evidence, others, &trials)
     }
 
     /// Draws and writes one map. The outer error is a file that cannot be written, the inner one withholds the map.
