@@ -45,6 +45,12 @@ pub struct Charting<'a, 's> {
     pub watch: &'a dyn Watch,
 }
 
+/// What a picture shows of a path beside a map.
+struct Beside<'s> {
+    joints: &'s [JointCurrent],
+    findings: &'s [Finding],
+}
+
 /// A map that was drawn, or why not.
 pub struct Done {
     /// Band index and frequency in Hz.
@@ -103,11 +109,12 @@ impl<'a> Charting<'a, '_> {
             bench.charts().iter().map(|chart| (chart, Vec::new())).collect();
         let mut joints = Vec::with_capacity(each.len());
         for (at, ((band, frequency_hz), charted)) in each.into_iter().zip(solved).enumerate() {
+            let beside = Beside { joints: &charted.joints, findings: &judged.findings };
             for (row, map) in charted.planes.into_iter().enumerate() {
                 let stem = &self.stems[index][row][at];
                 let (plan, done) = &mut rows[row];
                 let map = match map {
-                    Ok(map) => self.draw(net, plan, band, map, &charted.joints, stem, (index, row))?,
+                    Ok(map) => self.draw(net, plan, band, map, &beside, stem, (index, row))?,
                     Err(reason) => Err(reason),
                 };
                 done.push(Done { band, frequency_hz, stem: stem.clone(), map });
@@ -157,7 +164,7 @@ impl<'a> Charting<'a, '_> {
         plan: &ChartPlan,
         band: usize,
         charted: Charted,
-        joints: &[JointCurrent],
+        beside: &Beside,
         stem: &str,
         at: (usize, usize),
     ) -> Result<Result<Drawn, Diagnostic>, Diagnostic> {
@@ -166,7 +173,7 @@ impl<'a> Charting<'a, '_> {
             forget(&mut map);
             return Ok(Ok(Drawn { map, figures, effects, thumbnail: None }));
         }
-        let picture = match self.picture(net, plan, &self.plan.bands[band], (&map, &figures, joints), at) {
+        let picture = match self.picture(net, plan, &self.plan.bands[band], (&map, &figures, beside), at) {
             Ok(picture) => picture,
             Err(reason) => return Ok(Err(reason)),
         };
@@ -189,7 +196,7 @@ impl<'a> Charting<'a, '_> {
         net: &PathPlan,
         chart: &ChartPlan,
         band: &Band,
-        (map, figures, joints): (&ReturnMap, &Figures, &[JointCurrent]),
+        (map, figures, beside): (&ReturnMap, &Figures, &Beside),
         at: (usize, usize),
     ) -> Result<Picture, Diagnostic> {
         let input = TicketInput {
@@ -201,8 +208,8 @@ impl<'a> Charting<'a, '_> {
             map,
             figures,
             scale: self.scale,
-            findings: None,
-            joints,
+            findings: Some(beside.findings),
+            joints: beside.joints,
             style: self.style,
             input_hash: self.input_hash,
             sheet: self.sheet_number(at, band, map.frequency_hz),
