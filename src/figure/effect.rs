@@ -2,7 +2,7 @@
 //!
 //! | symbol | meaning | unit |
 //! |---|---|---|
-//! | share drop = F0_3h(s) - F_3h(s) | largest over the regular stations; F0 without voids | 1 |
+//! | share drop = F0_3h(s) - F_3h(s) | largest over the regular stations away from antipads of its own pins; F0 without voids | 1 |
 //! | edge density | largest over the regular stations, see [`super::edge`] | 1 |
 //! | stray | for each zone, see [`super::stray`] | 1 |
 //! | parts of Z - Z0 by void | see [`super::void`] | ohm |
@@ -14,10 +14,14 @@ use super::stray::{Stray, strays};
 use super::void::{VoidEffect, effects};
 use super::{Figure, section};
 use crate::field::ReturnMap;
-use crate::geom::Point;
-use crate::plan::Void;
+use crate::geom::locate::point_segment_distance;
+use crate::geom::{Point, Polygon};
+use crate::plan::{TrackLeg, Void};
 use crate::review::Zone;
 use num_complex::Complex64;
+
+/// Stations keep this distance from antipads of the path's own pins and vias, in heights.
+const OWN_MARGIN_HEIGHTS: f64 = 5.0;
 
 /// A figure that is worst at one place of the track.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -53,7 +57,11 @@ pub fn of(
 ) -> Effects {
     let least = LEAST_ERROR[usize::from(maps.map.grid.cell_m > 1.001 * track.height_m)];
     let all = station::along(track.legs, maps.map.grid.cell_m);
-    let stations = station::regular(&all, track.legs, track.landings, track.height_m);
+    let own = own_voids(track.legs, voids);
+    let mut stations = station::regular(&all, track.legs, track.landings, track.height_m);
+    stations.retain(|station| {
+        own.iter().all(|&index| away_m(&voids[index].shape, station.at) > OWN_MARGIN_HEIGHTS * track.height_m)
+    });
     let filled = maps.without_voids;
     let (coarse, coarse_filled) = (maps.coarse.map(|pair| pair.0), maps.coarse.and_then(|pair| pair.1));
     Effects {
@@ -66,6 +74,23 @@ pub fn of(
         voids: effects(maps.map, track.legs, voids, parts),
         strays: strays(maps.map, filled, coarse, track.legs, zones, least),
     }
+}
+
+/// Indices of the voids that an end of the legs lies in: antipads of the path's own pins and vias, which it needs.
+pub fn own_voids(legs: &[TrackLeg], voids: &[Void]) -> Vec<usize> {
+    let (Some(first), Some(last)) = (legs.first(), legs.last()) else { return Vec::new() };
+    let holds = |at: Point| move |void: &Void| void.shape.bounds().contains(at) && void.shape.contains(at);
+    let own = |void: &Void| holds(first.from)(void) || holds(last.to)(void);
+    (0..voids.len()).filter(|&index| own(&voids[index])).collect()
+}
+
+/// Distance from a place to a shape in metres, zero inside.
+pub fn away_m(shape: &Polygon, at: Point) -> f64 {
+    if shape.contains(at) {
+        return 0.0;
+    }
+    let sides = shape.rings().flat_map(|ring| (0..ring.len()).map(|i| (ring[i], ring[(i + 1) % ring.len()])));
+    sides.map(|side| point_segment_distance(at, side)).fold(f64::INFINITY, f64::min)
 }
 
 fn share_drop(

@@ -27,7 +27,7 @@ pub mod stray;
 pub mod void;
 
 pub use chart::{Charted, ChartedPath, chart, chart_in_zones};
-pub use effect::{Effects, Placed};
+pub use effect::{Effects, Placed, away_m, own_voids};
 pub use stray::Stray;
 pub use void::{VoidEffect, VoidEnd};
 

@@ -8,9 +8,8 @@ use super::word::{digits, hertz, quantity};
 use super::{Cause, Excess, Finding, Grade, Measured, Number, Spot};
 use crate::diag::Code;
 use crate::diag::code::finding as code;
-use crate::figure::{Figure, VoidEffect};
+use crate::figure::{Figure, VoidEffect, away_m, own_voids};
 use crate::geom::Point;
-use crate::geom::locate::point_segment_distance;
 use crate::plan::matches;
 use crate::review::limit::{LimitRequest, Limits};
 
@@ -37,7 +36,8 @@ pub fn grade(value: f64, limit: f64, warn_at: f64) -> Option<Grade> {
 /// Findings of one path on one plane.
 pub fn plane(evidence: &PlaneEvidence, request: &LimitRequest) -> Vec<Finding> {
     let limits = limits_of(request, &evidence.path.name);
-    let judge = Judge { evidence, limits };
+    let legs = &evidence.path.track[evidence.chart.legs.clone()];
+    let judge = Judge { evidence, limits, own: own_voids(legs, &evidence.chart.voids) };
     let mut found = judge.detours();
     found.extend(judge.share_drop(&found));
     found.extend(judge.edge());
@@ -49,6 +49,8 @@ pub fn plane(evidence: &PlaneEvidence, request: &LimitRequest) -> Vec<Finding> {
 struct Judge<'e, 'a> {
     evidence: &'e PlaneEvidence<'a>,
     limits: &'e Limits,
+    /// Antipads of the path's own pins and vias, which it needs: they are no fault.
+    own: Vec<usize>,
 }
 
 /// A void over all maps: where its part is largest.
@@ -161,7 +163,7 @@ impl Judge<'_, '_> {
     /// Voids that are too much only together, by inductance or by the extra path.
     fn together(&self, alone: &[String]) -> Option<Finding> {
         let candidates = self.evidence.maps.iter().flat_map(|map| {
-            let inductance = map.figures.extra_loop_inductance_h;
+            let inductance = map.figures.extra_loop_inductance_h.map(|figure| self.without_own(map, figure));
             let path = map.figures.extra_path_m;
             let excess = |what, figure: Option<Figure>, limit: f64| {
                 let figure = figure?;
@@ -174,7 +176,8 @@ impl Judge<'_, '_> {
         });
         let (map, excess) = candidates.flatten().max_by(|a, b| a.1.ratio().total_cmp(&b.1.ratio()))?;
         let grade = self.grade(excess.value, excess.limit?)?;
-        let effect = map.effects.voids.iter().find(|effect| !alone.contains(&effect.id))?;
+        let blamed = |effect: &&VoidEffect| !alone.contains(&effect.id) && !self.own.contains(&effect.index);
+        let effect = map.effects.voids.iter().find(blamed)?;
         let amount = quantity(excess.what, excess.value);
         let what = match excess.what {
             Measured::ExtraPath => format!("make its return {amount} longer"),
@@ -187,11 +190,18 @@ impl Judge<'_, '_> {
         Some(self.finding(code::DETOUR, grade, map, effect.at, excess, words))
     }
 
+    /// The extra inductance without what the path's own antipads add.
+    fn without_own(&self, map: &MapEvidence, figure: Figure) -> Figure {
+        let own = map.effects.voids.iter().filter(|effect| self.own.contains(&effect.index));
+        let own_h: f64 = own.filter_map(|effect| effect.extra_inductance_h).sum();
+        Figure { value: figure.value.map(|value| value - own_h), ..figure }
+    }
+
     /// Voids by their largest part over all maps, largest first.
     fn worst_voids(&self) -> Vec<WorstVoid<'_>> {
         let mut worst: Vec<WorstVoid> = Vec::new();
         for map in &self.evidence.maps {
-            for effect in &map.effects.voids {
+            for effect in map.effects.voids.iter().filter(|effect| !self.own.contains(&effect.index)) {
                 let Some(inductance_h) = effect.extra_inductance_h else { continue };
                 match worst.iter_mut().find(|known| known.effect.index == effect.index) {
                     Some(known) if known.inductance_h >= inductance_h => {}
@@ -252,16 +262,8 @@ impl Judge<'_, '_> {
     /// The void nearest to a place, and its distance.
     fn nearest_void(&self, at: Point) -> Option<(String, f64)> {
         let voids = self.evidence.chart.voids.iter();
-        let distance = |shape: &crate::geom::Polygon| {
-            if shape.contains(at) {
-                return 0.0;
-            }
-            let rings = shape.rings();
-            let sides = rings.flat_map(|ring| (0..ring.len()).map(|i| (ring[i], ring[(i + 1) % ring.len()])));
-            sides.map(|side| point_segment_distance(at, side)).fold(f64::INFINITY, f64::min)
-        };
         let nearest =
-            voids.map(|void| (distance(&void.shape), &void.id)).min_by(|a, b| a.0.total_cmp(&b.0))?;
+            voids.map(|void| (away_m(&void.shape, at), &void.id)).min_by(|a, b| a.0.total_cmp(&b.0))?;
         Some((nearest.1.clone(), nearest.0))
     }
 

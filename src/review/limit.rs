@@ -21,11 +21,11 @@ pub struct Limits {
 }
 
 impl Default for Limits {
-    /// Common practice where a review says nothing: a via adds about 1 nH, so two of them are a disturbance that a
-    /// careful layout avoids; a return within 3h of a plane's edge shows there with about a quarter of 1/(pi h).
+    /// Common practice where a review says nothing: 1 nH is about what a via adds, which a careful layout spends on
+    /// purpose only; a return 2h inside a plane's edge shows there with about half of 1/(pi h).
     fn default() -> Self {
         Self {
-            extra_inductance_h: 2e-9,
+            extra_inductance_h: 1e-9,
             extra_path_m: 5e-3,
             share_drop: 0.5,
             edge_density: 0.5,

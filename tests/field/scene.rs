@@ -10,6 +10,7 @@ use ebbmap::plan::{ChartPlan, Landing, PathPlan, Plan, TrackLeg, Void};
 use ebbmap::review::{Band, Model};
 
 /// What a test wants of its board, in mm.
+#[derive(Clone)]
 pub struct Scene {
     pub width: f64,
     pub height: f64,
