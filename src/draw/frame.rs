@@ -90,6 +90,13 @@ pub fn scale_bar(view: &View, right: f64, y: f64, style: &Style) -> Group {
     group
 }
 
+/// Room that a scale bar takes in mm.
+pub fn scale_bar_width(view: &View, style: &Style) -> f64 {
+    let step = round_step(9.0 / view.scale);
+    let text = format!("{}, {} mm", view.scale_text(), coordinate(step));
+    step * view.scale + 2.0 + marked_width(Face::Narrow, style.font.tick, &text)
+}
+
 /// The color scale from `x` to `x + width` at `y`, 5.2 mm high: densities above, dB below, contours inside. The pointed
 /// end at the right is the color of what lies above the scale.
 pub fn color_scale(
@@ -263,8 +270,15 @@ impl LegendEntry {
     }
 }
 
-/// A legend from `x`, broken into rows of at most `width` mm, first baseline at `y`; gives the last baseline too.
-pub fn legend(x: f64, y: f64, width: f64, entries: &[LegendEntry], style: &Style) -> (Group, f64) {
+/// A legend from `x`, broken into rows of at most `width` mm, first baseline at `y`; gives the right end of the last row
+/// and its baseline too.
+pub fn legend(
+    x: f64,
+    y: f64,
+    width: f64,
+    entries: &[LegendEntry],
+    style: &Style,
+) -> (Group, (f64, f64)) {
     let mut group = Group::new("legend").labeled("group", "legend");
     let size = style.font.tick;
     let (mut at, mut row) = (x, y);
@@ -289,7 +303,7 @@ pub fn legend(x: f64, y: f64, width: f64, entries: &[LegendEntry], style: &Style
         group.text(Text::new(at + sample + 1.2, row, size, Face::Narrow, style.color.ink, words));
         at += wide + 4.0;
     }
-    (group, row)
+    (group, (at, row))
 }
 
 fn legend_sample(group: &mut Group, entry: LegendEntry, (x, y): (f64, f64), width: f64, style: &Style) {

@@ -128,13 +128,17 @@ pub fn draw_map(data: &MapData, view: &View, look: &MapLook, label: &str) -> Dra
     vectors.group(contour_lines(&contours, look));
     group.group(vectors);
     // The page's color reaches over the rim of the heat image, so that none of it shows beside the board.
-    group.group(not_copper(data, view, look).clipped(view.x - 0.5, view.y - 0.5, width + 1.0, height + 1.0));
+    let mut cover = Group::new("plane");
+    cover.group(not_copper(data, view, look).clipped(view.x - 0.5, view.y - 0.5, width + 1.0, height + 1.0));
     let mut vectors = Group::new("lines").clipped(view.x, view.y, width, height);
     vectors.group(idle_copper(data, view, look));
     vectors.group(zone_lines(data, view, look));
     vectors.group(edges(data, view, look));
-    vectors.group(track(data, view, look));
-    group.group(vectors);
+    cover.group(vectors);
+    // The maps of a set show the same plane again and again.
+    cover.shared = look.small;
+    group.group(cover);
+    group.group(Group { items: track(data, view, look).items, ..Group::new("track").clipped(view.x, view.y, width, height) });
     group.group(joint::marks(&data.joints, view, look.symbols(), look.style).clipped(
         view.x - 2.0,
         view.y - 2.0,

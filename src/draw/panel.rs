@@ -132,6 +132,16 @@ impl Panel {
         Self { height, kind: PanelKind::Locator { outline, window } }
     }
 
+    /// The same with one finding less, the last, which is counted instead; none for other panels or a single finding.
+    pub fn shorter(&self, style: &Style) -> Option<Self> {
+        match &self.kind {
+            PanelKind::Findings(findings, rest) if findings.len() > 1 => {
+                Some(Self::findings(findings[..findings.len() - 1].to_vec(), rest + 1, style))
+            }
+            _ => None,
+        }
+    }
+
     /// Draws the panel.
     pub fn draw(&self, x: f64, y: f64, style: &Style) -> Group {
         match &self.kind {

@@ -99,6 +99,16 @@ pub fn encode(scene: &Scene, pixels: &Pixels) -> Result<Vec<u8>, RenderFault> {
             encoder.add_itxt_chunk(keyword.to_owned(), text.to_owned()).map_err(fault)?;
         }
     }
+    // The facts too, each under its name: `Board`, `Net`, `Band`, `Version`, `Input hash` and so on.
+    for (key, value) in &scene.facts {
+        let mut keyword = key.replace('_', " ");
+        if let Some(first) = keyword.get(..1).map(str::to_uppercase) {
+            keyword.replace_range(..1, &first);
+        }
+        if !value.is_empty() {
+            encoder.add_itxt_chunk(keyword, value.clone()).map_err(fault)?;
+        }
+    }
     let mut writer = encoder.write_header().map_err(fault)?;
     writer.write_image_data(&pixels.rgb).map_err(fault)?;
     writer.finish().map_err(fault)?;

@@ -121,6 +121,8 @@ pub struct Group {
     pub role: &'static str,
     /// What it shows, in words.
     pub label: String,
+    /// Whether the group occurs several times with the same content, which the file then holds once.
+    pub shared: bool,
     /// Address that the group leads to, relative to the picture.
     pub link: Option<String>,
     /// Box that cuts the items off: x, y, width, height in mm.

@@ -1,5 +1,6 @@
 //! The contact sheet: rows of nets and planes, columns of bands, one scale, on A3 drawing sheets.
 
+use super::callout::{disc, disc_size};
 use super::frame::{LegendEntry, color_scale, fields_row, legend};
 use super::map::{MapData, MapLook, draw_map};
 use super::path::PathData;
@@ -17,11 +18,40 @@ pub const COLUMNS: usize = 5;
 pub const ROWS: usize = 5;
 /// Size of a cell's map in mm.
 pub const CELL: (f64, f64) = (57.8, 36.1);
+/// Pixels per mm of a cell's heat image: fields are smooth, and a sheet holds 25 of them.
+const CELL_PX_PER_MM: f64 = 4.0;
+/// Most type that the sheet's cells leave room for, relative to the normal size.
+const TYPE: f64 = 1.03;
 const FRAME: [f64; 4] = [20.0, 10.0, 410.0, 287.0];
 const LEFT: f64 = 26.0;
 const CELL_X: f64 = 92.5;
 const CELL_Y: f64 = 49.4;
 const PITCH: (f64, f64) = (62.9, 43.2);
+
+/// Frame and numbers of a cell with findings, in the box (x, y, width, height) of its map.
+fn flag_group(flags: &[String], (x, y, width, height): (f64, f64, f64, f64), style: &Style) -> Group {
+    const MOST: usize = 3;
+    let mut group = Group::new("flags");
+    if flags.is_empty() {
+        return group;
+    }
+    group = group.labeled("graphics-symbol", format!("findings {}", flags.join(", ")));
+    let mut path = PathData::new();
+    path.rect(x - 0.45, y - 0.45, width + 0.9, height + 0.9);
+    group.shape(Shape::stroked(path, style.color.mark, 0.9));
+    let mut left = x + 1.0;
+    for flag in flags.iter().take(MOST) {
+        let (half_wide, half_high) = disc_size(flag, style);
+        disc(&mut group, (left + half_wide, y + 1.0 + half_high), flag, style);
+        left += 2.0 * half_wide + 0.8;
+    }
+    if flags.len() > MOST {
+        let words = format!("+{}", flags.len() - MOST);
+        let text = Text::new(left, y + 4.2, style.font.label, Face::NarrowBold, style.color.ink, &words);
+        group.text(text.with_halo(style.color.page));
+    }
+    group
+}
 
 /// A map drawn once in the size of a cell, its upper left corner at (0, 0).
 #[derive(Clone, Debug)]
@@ -32,6 +62,8 @@ pub struct CellMap {
     pub turned: bool,
     /// Width of the map in mm.
     pub width: f64,
+    /// Height of the map in mm; it stands on the cell's lower edge.
+    pub height: f64,
 }
 
 /// Draws a map in the size of a cell.
@@ -39,8 +71,8 @@ pub fn cell_map(data: &MapData, board: Bounds, scale: DensityScale, style: &Styl
     // At the lower left of the cell, so that captions stand right under the map and column heads above its edge.
     let mut view = View::filling(board, 0.0, 0.0, CELL.0, CELL.1);
     (view.x, view.y) = (0.0, CELL.1 - view.height());
-    let look = MapLook { style, scale, px_per_mm: style.set.px_per_mm(), small: true, room_right: 0.0 };
-    CellMap { group: draw_map(data, &view, &look, label).group, turned: view.turned, width: view.width() }
+    let look = MapLook { style, scale, px_per_mm: CELL_PX_PER_MM, small: true, room_right: 0.0 };
+    CellMap { group: draw_map(data, &view, &look, label).group, turned: view.turned, width: view.width(), height: view.height() }
 }
 
 /// A cell of the sheet.
@@ -56,6 +88,8 @@ pub enum SetCell {
         right: String,
         /// Address of the ticket map, relative to the sheet.
         link: Option<String>,
+        /// Numbers of findings.
+        flags: Vec<String>,
     },
     /// No map, and why.
     Withheld {
@@ -67,6 +101,8 @@ pub enum SetCell {
 /// A row of the sheet.
 #[derive(Clone, Debug)]
 pub struct SetRow {
+    /// Number of the row in the set, from 1.
+    pub number: usize,
     /// Net.
     pub name: String,
     /// Lines below the name.
@@ -125,6 +161,7 @@ pub struct SetPage<'a> {
 
 /// The scene of a page.
 pub fn scene(page: &SetPage, style: &Style) -> Scene {
+    let style = &Style { font: style.font.at_most(TYPE), ..style.clone() };
     let sheet = style.set;
     let mut scene = Scene {
         width: sheet.width,
@@ -222,6 +259,7 @@ fn head(page: &SetPage, style: &Style) -> Group {
 
 fn row_group(page: &SetPage, row: &SetRow, y: f64, style: &Style) -> Group {
     let mut group = Group::new("row").labeled("group", row.name.clone());
+    group.id = format!("row-{}", row.number);
     let color = style.color;
     let width = CELL_X - LEFT - 4.0;
     let name = shortened(Face::Bold, 5.0, &row.name, width);
@@ -236,18 +274,21 @@ fn row_group(page: &SetPage, row: &SetRow, y: f64, style: &Style) -> Group {
     }
     let cells = row.cells.iter().skip(page.first_column).take(page.columns.len());
     for (index, cell) in cells.enumerate() {
-        group.group(cell_group(cell, CELL_X + PITCH.0 * index as f64, y, style));
+        group.group(cell_group(cell, (CELL_X + PITCH.0 * index as f64, y), row.number, style));
     }
     group
 }
 
-fn cell_group(cell: &SetCell, x: f64, y: f64, style: &Style) -> Group {
+fn cell_group(cell: &SetCell, (x, y): (f64, f64), row: usize, style: &Style) -> Group {
     let color = style.color;
     let mut group = Group::new("cell");
     match cell {
-        SetCell::Map { map, left, right, link } => {
+        SetCell::Map { map, left, right, link, flags } => {
             group.link.clone_from(link);
+            let column = ((x - CELL_X) / PITCH.0).round() as usize + 1;
+            group.id = format!("cell-{row}-{column}");
             group.group(map.group.clone().shifted(x, y));
+            group.group(flag_group(flags, (x, y + CELL.1 - map.height, map.width, map.height), style));
             let base = y + CELL.1 + 4.3;
             group.text(Text::new(x, base, style.font.label, Face::NarrowBold, color.ink, left));
             let right = Text::new(
@@ -279,21 +320,22 @@ fn cell_group(cell: &SetCell, x: f64, y: f64, style: &Style) -> Group {
 
 fn foot(page: &SetPage, escaped: bool, style: &Style) -> Group {
     let mut group = Group::new("foot");
-    group.group(color_scale(LEFT, 270.8, 92.0, &page.scale, &[], style));
+    group.group(color_scale(LEFT, 268.6, 92.0, &page.scale, &[], style));
     let mut entries = vec![LegendEntry::Track, LegendEntry::Contour80, LegendEntry::NoCopper];
     if page.zones {
         entries.push(LegendEntry::Boundary);
     }
-    group.group(legend(141.0, 271.4, 86.0, &entries, style).0);
+    group.group(legend(141.0, 269.4, 86.0, &entries, style).0);
     let anchor = super::number::significant(page.scale.anchor(), 3);
     let mut note = format!("0\u{a0}dB is {anchor} A/m per A on all sheets");
     if escaped {
         note.push_str("; \\uXXXX: not in the font");
     }
-    group.text(Text::new(141.0, 280.6, style.font.tick, Face::Narrow, style.color.ink_soft, &note));
-    // One line, left of the centering mark.
-    for line in wrapped(Face::Narrow, style.font.tick, &page.caution, 184.0).iter().take(1) {
-        group.text(Text::new(LEFT, 284.8, style.font.tick, Face::Narrow, style.color.ink, line));
+    group.text(Text::new(141.0, 278.6, style.font.tick, Face::Narrow, style.color.ink_soft, &note));
+    let lines = wrapped(Face::Narrow, style.font.tick, &page.caution, 201.0);
+    for (row, line) in lines.iter().take(2).enumerate() {
+        let y = 285.4 - 3.7 * (lines.len().min(2) - 1 - row) as f64;
+        group.text(Text::new(LEFT, y, style.font.tick, Face::Narrow, style.color.ink, line));
     }
     group
 }

@@ -24,7 +24,7 @@ pub struct SvgText {
 /// Writes `scene`.
 pub fn write(scene: &Scene) -> SvgText {
     let fonts = fonts(scene);
-    let mut out = Writer { text: String::new(), clips: 0 };
+    let mut out = Writer::default();
     out.head(scene, &fonts);
     out.items(&scene.items);
     out.text.push_str("</svg>\n");
@@ -46,10 +46,18 @@ fn legal(text: &str) -> String {
     escape(text.chars().filter(allowed).collect::<String>()).into_owned()
 }
 
+#[derive(Default)]
 struct Writer {
     text: String,
     clips: usize,
+    /// Before the numbers of clips.
+    prefix: String,
+    /// What was written of shared groups: content to id.
+    shared: BTreeMap<String, String>,
 }
+
+/// Stands for the id of a shared group until its content is known to be new.
+const UNNAMED: &str = "\u{E011}";
 
 impl Writer {
     fn attribute(&mut self, name: &str, value: &str) {
@@ -208,7 +216,27 @@ impl Writer {
         self.text.push_str("/>\n");
     }
 
+    /// A shared group: in full where its content is new, else a reference to where it stands.
+    fn shared(&mut self, group: &Group) {
+        let mut part = Self { prefix: UNNAMED.to_owned(), ..Self::default() };
+        part.plain_group(group);
+        let content = part.text;
+        if let Some(id) = self.shared.get(&content) {
+            self.text.push_str(&format!("<use href=\"#{id}\"/>\n"));
+            return;
+        }
+        let id = format!("u{}", self.shared.len() + 1);
+        self.text.push_str(&format!("<g id=\"{id}\">\n"));
+        self.text.push_str(&content.replace(UNNAMED, &format!("{id}-")));
+        self.text.push_str("</g>\n");
+        self.shared.insert(content, id);
+    }
+
     fn group(&mut self, group: &Group) {
+        if group.shared { self.shared(group) } else { self.plain_group(group) }
+    }
+
+    fn plain_group(&mut self, group: &Group) {
         if let Some(link) = &group.link {
             self.text.push_str("<a");
             self.attribute("href", link);
@@ -216,7 +244,7 @@ impl Writer {
         }
         let clip = group.clip.map(|[x, y, width, height]| {
             self.clips += 1;
-            let id = format!("m{}", self.clips);
+            let id = format!("{}m{}", self.prefix, self.clips);
             self.text.push_str(&format!("<clipPath id=\"{id}\"><rect"));
             for (name, value) in [("x", x), ("y", y), ("width", width), ("height", height)] {
                 self.number(name, value);

@@ -1,6 +1,6 @@
 //! The ticket map: one net, one plane, one frequency, on one A4 page that says the result in words.
 
-use super::frame::{LegendEntry, caution, color_scale, legend, rulers, scale_bar, title_strip};
+use super::frame::{LegendEntry, caution, color_scale, legend, rulers, scale_bar, scale_bar_width, title_strip};
 use super::joint::{self, JointForm, JointMark};
 use super::map::{MapData, MapLook, draw_map};
 use super::panel::{Panel, width as panel_width};
@@ -63,8 +63,6 @@ struct Grid {
     caution: f64,
     /// Distance of lines of the caption.
     caption: f64,
-    /// Room for the scale bar at the right of the legend.
-    bar: f64,
 }
 
 fn grid(style: &Style) -> Grid {
@@ -75,7 +73,7 @@ fn grid(style: &Style) -> Grid {
     let words = strip - 7.4 * pitch;
     // Below the map: ruler, caption, color scale, legend.
     let map = words - MAP_Y - 35.5 * pitch;
-    Grid { pitch, map, words, strip, caution, caption: 4.4 * pitch, bar: 40.0 * pitch }
+    Grid { pitch, map, words, strip, caution, caption: 4.4 * pitch }
 }
 
 /// Room for the map of a sheet in mm: width and height.
@@ -124,11 +122,14 @@ pub fn scene(sheet: &TicketSheet, style: &Style) -> Scene {
     y += 2.2 * grid.pitch;
     scene.group(color_scale(MAP_X, y, block - 24.0 * grid.pitch, &sheet.scale, &drawn.contours, style));
     y += 5.2 + 8.2 * grid.pitch;
-    let (group, last) = legend(MAP_X, y, room - grid.bar, &entries(&sheet.map), style);
+    let (group, (end, mut last)) = legend(MAP_X, y, room, &entries(&sheet.map), style);
     scene.group(group);
-    scene.group(scale_bar(&view, MAP_X + room, y - 1.1, style));
+    if end + scale_bar_width(&view, style) > MAP_X + room {
+        last += 4.8 * grid.pitch;
+    }
+    scene.group(scale_bar(&view, MAP_X + room, last - 1.1, style));
 
-    for (panel, (x, y)) in sheet.panels.iter().zip(slots(&sheet.panels, block, last + 3.0, right, style)) {
+    for (panel, (x, y)) in slots(&sheet.panels, block, last + 3.0, right, style) {
         scene.group(panel.draw(x, y, style));
     }
     let mut words = Group::new("words").labeled("group", "in plain words");
@@ -161,7 +162,10 @@ fn placed_view(sheet: &TicketSheet, right: f64, style: &Style) -> (View, f64, f6
         let first = columns(block, right, style).first().map_or(right, |column| column.0);
         let room = first - 5.0 - MAP_X;
         let captions = caption_lines(sheet, room, style).len().saturating_sub(1) as f64;
-        let (_, last) = legend(MAP_X, 0.0, room - grid.bar, &entries(&sheet.map), style);
+        let (_, (end, mut last)) = legend(MAP_X, 0.0, room, &entries(&sheet.map), style);
+        if end + scale_bar_width(&view, style) > MAP_X + room {
+            last += 4.8 * grid.pitch;
+        }
         let most = room_high - captions * grid.caption - last;
         if view.height() <= most + 1e-9 || height < 40.0 {
             return (view, block, room);
@@ -233,9 +237,10 @@ fn columns(block: f64, right: f64, style: &Style) -> Vec<(f64, f64)> {
     (0..count).map(|index| (right - wide - (count - 1 - index) as f64 * (wide + GAP), MAP_Y)).collect()
 }
 
-/// Upper left corners of panels: each goes to the column right of the map that is filled least, or, where it does not
-/// fit there, under the map. A panel that fits nowhere ends the list.
-fn slots(panels: &[Panel], block: f64, bottom: f64, right: f64, style: &Style) -> Vec<(f64, f64)> {
+/// Panels with their upper left corners: each goes to the column right of the map that is filled least, or, where it
+/// does not fit there, under the map. A list of findings that fits nowhere is cut, and its end counted; another panel
+/// that fits nowhere is left out.
+fn slots(panels: &[Panel], block: f64, bottom: f64, right: f64, style: &Style) -> Vec<(Panel, (f64, f64))> {
     let limit = grid(style).words - 4.0;
     let wide = panel_width(style);
     let mut beside = columns(block, right, style);
@@ -243,11 +248,18 @@ fn slots(panels: &[Panel], block: f64, bottom: f64, right: f64, style: &Style) -
     let mut below: Vec<(f64, f64)> = (0..count).map(|n| (MAP_X + n as f64 * (wide + GAP), bottom)).collect();
     let mut places = Vec::new();
     for panel in panels {
-        let fits = |column: &&mut (f64, f64)| column.1 + panel.height <= limit;
-        let least = beside.iter_mut().filter(fits).min_by(|a, b| a.1.total_cmp(&b.1));
-        let Some(column) = least.or_else(|| below.iter_mut().find(fits)) else { break };
-        places.push(*column);
-        column.1 += panel.height + 4.0;
+        let mut wanted = Some(panel.clone());
+        while let Some(panel) = wanted {
+            let fits = |column: &&mut (f64, f64)| column.1 + panel.height <= limit;
+            let least = beside.iter_mut().filter(fits).min_by(|a, b| a.1.total_cmp(&b.1));
+            if let Some(column) = least.or_else(|| below.iter_mut().find(fits)) {
+                let at = *column;
+                column.1 += panel.height + 4.0;
+                places.push((panel, at));
+                break;
+            }
+            wanted = panel.shorter(style);
+        }
     }
     places
 }

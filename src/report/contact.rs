@@ -9,9 +9,11 @@ use crate::draw::set::{COLUMNS, CellMap, ROWS, SetCell, SetColumn, SetPage, SetR
 use crate::draw::{DensityScale, Scene, italic, plain, with_prefix};
 use crate::field::ReturnMap;
 use crate::figure::Figures;
+use crate::finding::{Finding, Grade};
 use crate::plan::{ChartPlan, PathPlan};
 use crate::review::{Band, Model, Review};
 use crate::style::Style;
+use std::collections::BTreeSet;
 
 /// A map reduced to what the contact sheet needs, so that maps need not be kept.
 #[derive(Clone, Debug)]
@@ -65,6 +67,8 @@ pub struct ContactRow<'a> {
     pub chart: &'a ChartPlan,
     /// One cell for each column.
     pub cells: Vec<ContactCell>,
+    /// Findings of the net.
+    pub findings: &'a [Finding],
 }
 
 /// What a contact sheet is made from.
@@ -117,7 +121,7 @@ pub fn contact_scenes(input: &ContactInput) -> Vec<Scene> {
         };
         by_worst.then_with(|| a.net.name.cmp(&b.net.name)).then_with(|| a.chart.plane.cmp(&b.chart.plane))
     });
-    let rows: Vec<SetRow> = order.iter().map(|row| set_row(row, input)).collect();
+    let rows: Vec<SetRow> = order.iter().zip(1..).map(|(row, number)| set_row(row, number, input)).collect();
     let columns: Vec<SetColumn> =
         input.columns.iter().map(|&(band, hz)| set_column(band, hz, input.board)).collect();
     let count = rows.len().div_ceil(ROWS).max(1) * columns.len().div_ceil(COLUMNS).max(1);
@@ -147,6 +151,8 @@ pub fn contact_scenes(input: &ContactInput) -> Vec<Scene> {
                     ("revision".into(), plain(&input.review.revision)),
                     ("sheet".into(), format!("{sheet} of {count}")),
                     ("style".into(), plain(&input.style.name)),
+                    ("version".into(), env!("CARGO_PKG_VERSION").into()),
+                    ("input_hash".into(), input.input_hash.into()),
                 ],
             };
             scenes.push(scene(&page, input.style));
@@ -167,13 +173,23 @@ fn set_column(band: &Band, frequency_hz: f64, board: &Board) -> SetColumn {
     }
 }
 
-fn set_row(row: &ContactRow, input: &ContactInput) -> SetRow {
+/// Numbers of the findings of a plane in a band; notes are not flagged.
+fn flags(row: &ContactRow, band: &Band) -> Vec<String> {
+    let here = |finding: &&Finding| {
+        finding.grade != Grade::Note
+            && finding.plane.as_ref().is_none_or(|plane| *plane == row.chart.plane)
+            && finding.band.as_ref() == Some(&band.name)
+    };
+    row.findings.iter().filter(here).map(|finding| finding.number.to_string()).collect()
+}
+
+fn set_row(row: &ContactRow, number: usize, input: &ContactInput) -> SetRow {
     let length: f64 = row.net.track[row.chart.legs.clone()].iter().map(|leg| leg.from.distance(leg.to)).sum();
     let shares = row.cells.iter().zip(&input.columns).map(|(cell, &(_, hz))| match cell {
         ContactCell::Map(map, _) => (hz, map.figures.share_3h.value, map.figures.share_3h.without_voids),
         ContactCell::Withheld(_) => (hz, None, None),
     });
-    let cells = row.cells.iter().map(|cell| match cell {
+    let cells = row.cells.iter().zip(&input.columns).map(|(cell, (band, _))| match cell {
         ContactCell::Map(map, link) => SetCell::Map {
             map: Box::new(map.map.clone()),
             left: extra_inductance(&map.figures).map_or(String::new(), signed_henry),
@@ -183,10 +199,12 @@ fn set_row(row: &ContactRow, input: &ContactInput) -> SetRow {
                 .value
                 .map_or(String::new(), |share| format!("{} within 3{}", percent(share), italic("h"))),
             link: link.clone(),
+            flags: flags(row, band),
         },
         ContactCell::Withheld(reason) => SetCell::Withheld { reason: plain(reason) },
     });
     SetRow {
+        number,
         name: plain(&row.net.name),
         lines: vec![
             format!(
@@ -253,11 +271,21 @@ fn lead(order: &[&ContactRow]) -> Vec<String> {
         first.push_str(" The board is turned clockwise by 90\u{b0}.");
     }
     let mut second =
-        "Under each map: left, loop inductance caused by voids (worst net first); right, share of the return.".to_owned();
-    if order.iter().any(|row| hints_at_hazard(&row.net.name)) {
-        second = "Says nothing about insulation or safety: for mains, medical and safety circuits follow local codes \
-                  and licensed practice."
+        "Under each map: left, loop inductance caused by voids (worst net first); right, share of the return."
             .to_owned();
+    let flagged = order.iter().map(|row| {
+        let bands: BTreeSet<Option<&String>> = row
+            .findings
+            .iter()
+            .filter(|finding| finding.grade != Grade::Note)
+            .map(|finding| finding.band.as_ref())
+            .collect();
+        usize::from(!bands.is_empty())
+    });
+    let flagged: usize = flagged.sum();
+    if flagged > 0 {
+        let nets = if flagged == 1 { "row has" } else { "rows have" };
+        second.push_str(&format!(" {flagged} {nets} findings, framed and numbered where they are worst."));
     }
     vec![first, second]
 }
@@ -273,6 +301,12 @@ fn page_caution(order: &[&ContactRow], input: &ContactInput) -> String {
         text.push_str(&format!("; {side} {} (board a tenth of a wavelength)", with_prefix(limit, "Hz", 2)));
     }
     text.push('.');
+    if order.iter().any(|row| hints_at_hazard(&row.net.name)) {
+        text.push_str(
+            " It says nothing about insulation or safety: for mains, medical and safety circuits follow local codes \
+             and licensed practice.",
+        );
+    }
     text
 }
 

@@ -292,6 +292,8 @@ fn sheet(input: &TicketInput) -> TicketSheet {
             ("residual".into(), residual),
             ("scale_0db_a_per_m_per_a".into(), scale.anchor().to_string()),
             ("style".into(), plain(&style.name)),
+            ("version".into(), env!("CARGO_PKG_VERSION").into()),
+            ("input_hash".into(), input.input_hash.into()),
         ],
         index: input.index.map(str::to_owned),
     }

@@ -323,6 +323,7 @@ impl<'a> PathDone<'a> {
             net: self.net,
             chart,
             cells: maps.iter().map(cell).collect(),
+            findings: &[],
         };
         self.rows.iter().map(row).collect()
     }

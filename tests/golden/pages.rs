@@ -223,7 +223,7 @@ fn contact_pages(style: &Style, shapes: &[Shape], bands: &[Band]) -> Vec<Scene> 
             );
             ContactCell::Map(Box::new(map), Some(format!("maps/net-{index}-{column}.svg")))
         });
-        ContactRow { net: &gauge.net, chart: &gauge.net.charts[0], cells: cells.collect() }
+        ContactRow { net: &gauge.net, chart: &gauge.net.charts[0], cells: cells.collect(), findings: &gauge.findings }
     });
     let input = ContactInput {
         board: &gauges[0].board,
