@@ -67,7 +67,7 @@ pub fn callouts(callouts: &[Callout], view: &View, placer: &mut Placer, style: &
     for callout in callouts.iter().filter(|callout| view.window.contains(callout.at)) {
         let spot = view.place(callout.at);
         rings.circle(spot, RING);
-        let words = shortened(Face::NarrowBold, size, &callout.words, WORDS);
+        let words = shortened(Face::NarrowBold, size, &callout.words, WORDS * style.font.pitch());
         let width = marked_width(Face::NarrowBold, size, &words);
         let words_width = if words.is_empty() { 0.0 } else { GAP + width };
         let wanted = Wanted { spot, ring: RING, disc: disc_size(&callout.number, style), words: words_width };

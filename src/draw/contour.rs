@@ -67,6 +67,31 @@ pub fn contours(
     all
 }
 
+/// Lines of one level of a raster that fills `view` (columns, rows, values), where `shown` holds; short ones left out.
+pub fn level_lines(
+    (nx, ny, values): (usize, usize, &[f64]),
+    view: &View,
+    level: f64,
+    shown: impl Fn((f64, f64)) -> bool,
+) -> Vec<Vec<(f64, f64)>> {
+    let step = (view.width() / nx as f64, view.height() / ny as f64);
+    let Ok(found) = ContourBuilder::new(nx, ny, true).lines(values, &[level]) else { return Vec::new() };
+    let mut all = Vec::new();
+    for ring in found.iter().flat_map(|line| &line.geometry().0) {
+        let points: Vec<(f64, f64)> =
+            ring.0.iter().map(|c| (view.x + c.x * step.0, view.y + c.y * step.1)).collect();
+        let inside = |&(x, y): &(f64, f64)| {
+            let (ix, iy) = ((x - view.x) / step.0, (y - view.y) / step.1);
+            ix > 0.6 && iy > 0.6 && ix < nx as f64 - 0.6 && iy < ny as f64 - 0.6 && shown((x, y))
+        };
+        let long = |piece: &Vec<(f64, f64)>| length(piece) >= SHORTEST[1] && extent(piece) >= SMALLEST[0];
+        all.extend(
+            pieces(&points, inside).into_iter().filter(long).map(|piece| simplified(&piece, SIMPLIFIED)),
+        );
+    }
+    all
+}
+
 /// The runs of points that are shown. A closed line is cut open at a point that is not shown, if there is one.
 fn pieces(points: &[(f64, f64)], shown: impl Fn(&(f64, f64)) -> bool) -> Vec<Vec<(f64, f64)>> {
     let closed = points.len() > 2 && points.first() == points.last();

@@ -190,6 +190,21 @@ pub fn indexed_png(width: u32, height: u32, indices: &[u8], palette: Vec<u8>) ->
     if written.is_ok() { bytes } else { Vec::new() }
 }
 
+/// A PNG of 8-bit red, green and blue; empty if it has no pixel.
+pub fn rgb_png(width: u32, height: u32, rgb: &[u8]) -> Vec<u8> {
+    let mut bytes = Vec::new();
+    let mut encoder = png::Encoder::new(&mut bytes, width, height);
+    encoder.set_color(png::ColorType::Rgb);
+    encoder.set_depth(png::BitDepth::Eight);
+    encoder.set_compression(png::Compression::Balanced);
+    let written = encoder.write_header().and_then(|mut writer| {
+        writer.write_image_data(rgb)?;
+        writer.finish()
+    });
+    // Writing to memory fails only for a picture without pixels or with the wrong number of them.
+    if written.is_ok() { bytes } else { Vec::new() }
+}
+
 #[cfg(test)]
 mod tests {
     use super::*;

@@ -272,13 +272,7 @@ impl LegendEntry {
 
 /// A legend from `x`, broken into rows of at most `width` mm, first baseline at `y`; gives the right end of the last row
 /// and its baseline too.
-pub fn legend(
-    x: f64,
-    y: f64,
-    width: f64,
-    entries: &[LegendEntry],
-    style: &Style,
-) -> (Group, (f64, f64)) {
+pub fn legend(x: f64, y: f64, width: f64, entries: &[LegendEntry], style: &Style) -> (Group, (f64, f64)) {
     let mut group = Group::new("legend").labeled("group", "legend");
     let size = style.font.tick;
     let (mut at, mut row) = (x, y);

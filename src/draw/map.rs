@@ -119,26 +119,19 @@ pub fn draw_map(data: &MapData, view: &View, look: &MapLook, label: &str) -> Dra
     group.group(heat(data, view, look, label));
     let lines: Vec<((f64, f64), (f64, f64))> =
         data.track.iter().map(|leg| (view.place(leg.from), view.place(leg.to))).collect();
-    let cover = 0.5 * look.style.line.track_case * look.weight() + 0.25;
-    let hidden = |at: (f64, f64)| lines.iter().any(|&(a, b)| from_segment(at, a, b) < cover);
+    let reach = 0.5 * look.style.line.track_case * look.weight() + 0.25;
+    let hidden = |at: (f64, f64)| lines.iter().any(|&(a, b)| from_segment(at, a, b) < reach);
     let levels = if look.small { [0.0, data.levels[1], 0.0] } else { data.levels };
     let contours = contours(&data.density, view, &look.scale, levels, &hidden);
 
     let mut vectors = Group::new("layers").clipped(view.x, view.y, width, height);
     vectors.group(contour_lines(&contours, look));
     group.group(vectors);
-    // The page's color reaches over the rim of the heat image, so that none of it shows beside the board.
-    let mut cover = Group::new("plane");
-    cover.group(not_copper(data, view, look).clipped(view.x - 0.5, view.y - 0.5, width + 1.0, height + 1.0));
-    let mut vectors = Group::new("lines").clipped(view.x, view.y, width, height);
-    vectors.group(idle_copper(data, view, look));
-    vectors.group(zone_lines(data, view, look));
-    vectors.group(edges(data, view, look));
-    cover.group(vectors);
-    // The maps of a set show the same plane again and again.
-    cover.shared = look.small;
-    group.group(cover);
-    group.group(Group { items: track(data, view, look).items, ..Group::new("track").clipped(view.x, view.y, width, height) });
+    group.group(cover(data, view, look));
+    group.group(Group {
+        items: track(data, view, look).items,
+        ..Group::new("track").clipped(view.x, view.y, width, height)
+    });
     group.group(joint::marks(&data.joints, view, look.symbols(), look.style).clipped(
         view.x - 2.0,
         view.y - 2.0,
@@ -156,6 +149,22 @@ pub fn draw_map(data: &MapData, view: &View, look: &MapLook, label: &str) -> Dra
         drawn.group.group(words);
     }
     drawn
+}
+
+/// What is not copper, idle copper, zones and edges: the plane without its current.
+pub(super) fn cover(data: &MapData, view: &View, look: &MapLook) -> Group {
+    let (width, height) = (view.width(), view.height());
+    let mut cover = Group::new("plane");
+    // The page's color reaches over the rim of the heat image, so that none of it shows beside the board.
+    cover.group(not_copper(data, view, look).clipped(view.x - 0.5, view.y - 0.5, width + 1.0, height + 1.0));
+    let mut vectors = Group::new("lines").clipped(view.x, view.y, width, height);
+    vectors.group(idle_copper(data, view, look));
+    vectors.group(zone_lines(data, view, look));
+    vectors.group(edges(data, view, look));
+    cover.group(vectors);
+    // The maps of a set show the same plane again and again.
+    cover.shared = look.small;
+    cover
 }
 
 fn heat(data: &MapData, view: &View, look: &MapLook, label: &str) -> Group {
@@ -397,7 +406,7 @@ fn pins(data: &MapData, view: &View, look: &MapLook) -> Group {
 }
 
 /// Costs of the map for labels.
-fn placer(data: &MapData, view: &View, look: &MapLook) -> Placer {
+pub(super) fn placer(data: &MapData, view: &View, look: &MapLook) -> Placer {
     let area = [view.x, view.y, view.x + view.width() + look.room_right, view.y + view.height()];
     let mut placer = Placer::new(area);
     let (nx, ny) = ((view.width() as usize).max(1), (view.height() as usize).max(1));

@@ -4,8 +4,10 @@
 //! [`png`] renders that very text, so the two cannot differ. Nothing here knows how a board is read or solved.
 
 pub mod callout;
+pub mod change;
 pub mod contour;
 pub mod density;
+pub mod film;
 pub mod flow;
 mod font;
 pub mod frame;
@@ -14,8 +16,12 @@ mod label;
 pub mod list;
 pub mod map;
 mod number;
+pub mod pair;
+pub mod pairsheet;
 pub mod panel;
 mod path;
+#[cfg(feature = "pdf")]
+pub mod pdf;
 pub mod place;
 pub mod plot;
 pub mod png;

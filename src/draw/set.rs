@@ -72,7 +72,12 @@ pub fn cell_map(data: &MapData, board: Bounds, scale: DensityScale, style: &Styl
     let mut view = View::filling(board, 0.0, 0.0, CELL.0, CELL.1);
     (view.x, view.y) = (0.0, CELL.1 - view.height());
     let look = MapLook { style, scale, px_per_mm: CELL_PX_PER_MM, small: true, room_right: 0.0 };
-    CellMap { group: draw_map(data, &view, &look, label).group, turned: view.turned, width: view.width(), height: view.height() }
+    CellMap {
+        group: draw_map(data, &view, &look, label).group,
+        turned: view.turned,
+        width: view.width(),
+        height: view.height(),
+    }
 }
 
 /// A cell of the sheet.
@@ -320,7 +325,7 @@ fn cell_group(cell: &SetCell, (x, y): (f64, f64), row: usize, style: &Style) -> 
 
 fn foot(page: &SetPage, escaped: bool, style: &Style) -> Group {
     let mut group = Group::new("foot");
-    group.group(color_scale(LEFT, 268.6, 92.0, &page.scale, &[], style));
+    group.group(color_scale(LEFT, 269.2, 92.0, &page.scale, &[], style));
     let mut entries = vec![LegendEntry::Track, LegendEntry::Contour80, LegendEntry::NoCopper];
     if page.zones {
         entries.push(LegendEntry::Boundary);

@@ -1,6 +1,8 @@
 //! The ticket map: one net, one plane, one frequency, on one A4 page that says the result in words.
 
-use super::frame::{LegendEntry, caution, color_scale, legend, rulers, scale_bar, scale_bar_width, title_strip};
+use super::frame::{
+    LegendEntry, caution, color_scale, legend, rulers, scale_bar, scale_bar_width, title_strip,
+};
 use super::joint::{self, JointForm, JointMark};
 use super::map::{MapData, MapLook, draw_map};
 use super::panel::{Panel, width as panel_width};

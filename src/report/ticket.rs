@@ -216,7 +216,8 @@ fn widened(window: Bounds, whole: Bounds, scale: f64, room: (f64, f64)) -> Bound
         if size <= high - low {
             return (low, high);
         }
-        let start = (0.5 * (low + high - size)).clamp(least, most - size);
+        // Rounding may leave the last place a hair below the first.
+        let start = (0.5 * (low + high - size)).min(most - size).max(least);
         (start, start + size)
     };
     let (x0, x1) = stretch(window.min.x, window.max.x, room.0, whole.min.x, whole.max.x);

@@ -288,6 +288,13 @@ impl<'a> PathDone<'a> {
         messages
     }
 
+    /// File stems of the maps that were drawn.
+    #[cfg(feature = "pdf")]
+    pub fn drawn(&self) -> impl Iterator<Item = &str> {
+        let all = self.rows.iter().flat_map(|(_, maps)| maps);
+        all.filter(|done| done.map.is_ok()).map(|done| done.stem.as_str())
+    }
+
     /// Adds findings, maps and joints to the document.
     pub fn add_to(&self, findings: &mut Findings, plan: &Plan) {
         self.findings.iter().for_each(|finding| findings.add_finding(finding));

@@ -207,12 +207,20 @@ fn draw_plan(
     };
     let sheets = if order.pictures { documents.contact(&charting) } else { Ok(Vec::new()) };
     let sheets = sheets.map_err(|fault| tell(watch, &[fault]))?;
+    #[cfg(feature = "pdf")]
+    let pdf = super::pdf::review_pdf(order.out, &review.title, &sheets, &done);
+    #[cfg(feature = "pdf")]
+    let pdf = pdf.map_err(|fault| tell(watch, &[fault]))?;
     let store = store.into_inner().unwrap_or_else(PoisonError::into_inner);
     if let Some(mut store) = store {
         let rest = || {
             for (sheet, index) in sheets.iter().zip(1..) {
                 store.write(&format!("contact-sheet-{index}.svg"), sheet.svg.as_bytes())?;
                 store.write(&format!("contact-sheet-{index}.png"), &sheet.png)?;
+            }
+            #[cfg(feature = "pdf")]
+            if order.pictures {
+                store.write("review.pdf", &pdf)?;
             }
             for (name, bytes) in documents.files() {
                 store.write(name, &bytes)?;

@@ -5,6 +5,8 @@ mod documents;
 mod draw;
 mod input;
 mod name;
+#[cfg(feature = "pdf")]
+mod pdf;
 mod select;
 mod store;
 mod watch;

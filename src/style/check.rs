@@ -84,6 +84,9 @@ fn contrasts(style: &Style, faults: &mut Vec<Fault>) {
         need(name, ink, "page", color.page, mark);
     }
     need("track", color.track, "track_case", color.track_case, mark);
+    for index in [0, Gradient::LEVELS - 1] {
+        need("series", style.series.colors()[index], "page", color.page, mark);
+    }
     // Symbols outside the map stand on the page: bars, discs, the two hues of a pair.
     need("over", color.over, "page", color.page, mark);
     // The weaker of the two inks is never used, so the better of both counts at every level of the map.

@@ -3,14 +3,18 @@
 use crate::compare::{Case, blessing, check, read_case, root};
 use crate::gauge::{Shape as Board, gauge};
 use ebbmap::draw::callout::Callout;
+use ebbmap::draw::change::{self, ChangeRow};
 use ebbmap::draw::density::Density;
+use ebbmap::draw::film::{self, Curve, Frame};
 use ebbmap::draw::flow::Flow;
 use ebbmap::draw::frame::{LegendEntry, caution, color_scale, legend, rulers, scale_bar, title_strip};
 use ebbmap::draw::joint::{JointForm, JointMark};
 use ebbmap::draw::list::ListedFinding;
 use ebbmap::draw::map::{MapData, MapLeg, MapLook, MapPin, draw_map};
+use ebbmap::draw::pair::key;
 use ebbmap::draw::panel::{KeyFigure, KeyRow, Panel, Section, SectionLayer};
 use ebbmap::draw::plot::share_plot;
+use ebbmap::draw::set::cell_map;
 use ebbmap::draw::{DensityScale, Group, Scene, Text, View, italic, plain, raised, shortened};
 use ebbmap::geom::{Bounds, Point};
 use ebbmap::style::{Face, Style};
@@ -32,6 +36,10 @@ const CASES: &[Golden] = &[
     ("panel/figures", figures_scene),
     ("panel/findings", findings_scene),
     ("panel/section", section_scene),
+    ("change/map", change_scene),
+    ("change/table", table_scene),
+    ("film/strip", film_scene),
+    ("pair/key", key_scene),
     ("plot/share", plot_scene),
     ("text/names", names_scene),
 ];
@@ -277,6 +285,58 @@ fn section_scene() -> Scene {
     };
     let panel = Panel::section(section, &style);
     small(&style, 68.0, panel.height + 2.0, panel.draw(2.0, 1.0, &style))
+}
+
+fn change_scene() -> Scene {
+    let style = style("paper");
+    let (before, bounds) = board(&little());
+    let (after, _) = board(&Board { track: vec![(24.0, 12.0), (18.0, 4.0), (7.0, 4.0)], ..little() });
+    let view = View { window: bounds.grown(0.5e-3), x: 1.0, y: 1.0, scale: 1.5, turned: false };
+    let mut group = change::map((&before.density, &after.density), &view, &SCALE, &style, "a change");
+    group.group(change::scale_bar(2.0, 40.0, 78.0, &SCALE, &style));
+    small(&style, 98.0, 52.0, group)
+}
+
+fn table_scene() -> Scene {
+    let style = style("screen");
+    let row = |name: &str, values: [&str; 3], places, better| ChangeRow {
+        name: name.to_owned(),
+        values: values.map(str::to_owned),
+        places,
+        better,
+    };
+    let rows = [
+        row("Extra path by voids", ["16.7 mm", "0.4 mm", "\u{2212}16.3"], [1.0, 0.02], Some(true)),
+        row("Track length", ["37.2 mm", "44.5 mm", "+7.3"], [0.8, 1.0], Some(false)),
+        row("Loop inductance", ["8.2 nH", "8.2 nH", "0"], [0.5, 0.5], None),
+    ];
+    small(&style, 140.0, 24.0, change::table(3.0, 6.0, 134.0, &rows, &style))
+}
+
+fn film_scene() -> Scene {
+    let style = style("paper");
+    let (data, bounds) = board(&little());
+    let frame = |head: &str| Frame {
+        head: head.to_owned(),
+        foot: "63 % within 3h".to_owned(),
+        map: cell_map(&data, bounds, SCALE, &style, head),
+    };
+    let mut group = film::frames((2.0, 1.0, 59.5), &[frame("1 kHz"), frame("1 MHz")], &style);
+    let curve = |name: &str, reach: f64, closed_form| Curve {
+        name: name.to_owned(),
+        points: (-40..=40)
+            .map(|n| (0.25 * f64::from(n), 500.0 / (1.0 + (0.25 * f64::from(n) / reach).powi(2))))
+            .collect(),
+        closed_form,
+    };
+    let curves = [curve("1 kHz", 4.0, false), curve("1 MHz", 1.0, false), curve("closed form", 0.8, true)];
+    group.group(film::cut_plot((10.0, 58.0, 108.0, 36.0), (1.0, 1000.0), &curves, &style));
+    small(&style, 122.0, 102.0, group)
+}
+
+fn key_scene() -> Scene {
+    let style = style("paper");
+    small(&style, 70.0, 44.0, key((2.0, 2.0, 64.5, 30.0), ("MEM_SCK", "AIN_P"), &SCALE, &style))
 }
 
 fn plot_scene() -> Scene {

@@ -34,6 +34,8 @@ pub struct Shape {
     pub track: Vec<(f64, f64)>,
     pub slot: Option<[f64; 4]>,
     pub pins: usize,
+    /// Small round voids in columns and rows.
+    pub perforation: (usize, usize),
     pub zones: bool,
     pub model: Model,
     pub frequency_hz: f64,
@@ -52,6 +54,7 @@ impl Default for Shape {
             track: vec![(44.0, 22.0), (38.0, 22.0), (34.0, 18.0), (18.0, 18.0), (14.0, 22.0)],
             slot: Some([25.5, 12.0, 26.5, 30.0]),
             pins: 12,
+            perforation: (0, 0),
             zones: true,
             model: Model::Sheet,
             frequency_hz: 1e7,
@@ -84,6 +87,14 @@ pub fn gauge(shape: &Shape) -> Gauge {
     voids.extend(
         (0..shape.pins).map(|n| circle(w - 5.0 - 2.54 * (n / 6) as f64, 6.0 + 2.54 * (n % 6) as f64, 0.9)),
     );
+    let (columns, rows) = shape.perforation;
+    for n in 0..columns * rows {
+        let (ix, iy) = ((n % columns) as f64, (n / columns) as f64);
+        let at = (w * (ix + 0.75) / columns as f64, h * (iy + 0.75) / rows as f64);
+        if at.0 < w - 1.0 && at.1 < h - 1.0 {
+            voids.push(circle(at.0, at.1, 0.25));
+        }
+    }
     voids.extend(shape.slot.map(|[x0, y0, x1, y1]| rect(x0, y0, x1, y1)));
     let plane = Polygon {
         outer: rect(0.5, 0.5, w - 0.5, h - 0.5),

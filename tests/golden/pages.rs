@@ -3,10 +3,12 @@
 use crate::gauge::{Gauge, Shape, gauge};
 use ebbmap::draw::{DensityScale, Scene, TextBox};
 use ebbmap::report::{
-    ContactCell, ContactInput, ContactRow, Picture, TicketInput, contact_scenes, thumbnail, ticket_scene,
+    ContactCell, ContactInput, ContactRow, PairInput, PairSide, Picture, TicketInput, contact_scenes,
+    pair_scene, thumbnail, ticket_scene,
 };
 use ebbmap::review::{Band, Model};
 use ebbmap::style::Style;
+use num_complex::Complex64;
 use std::path::PathBuf;
 
 fn style(name: &str) -> Style {
@@ -291,6 +293,103 @@ fn rows_are_ordered_by_loop_inductance_then_name() {
         .filter(|text| text.starts_with("LEVEL_"))
         .collect();
     assert_eq!(names, ["LEVEL_0", "LEVEL_1", "LEVEL_2"]);
+}
+
+fn side(gauge: &Gauge) -> PairSide<'_> {
+    let net = &gauge.net;
+    PairSide { net, chart: &net.charts[0], map: &gauge.map, figures: &gauge.figures }
+}
+
+/// A pair on one plane: overlap, impedance and noise; nothing overlaps in any style.
+#[test]
+fn pair_sheets_keep_their_text_apart() {
+    let base = Shape { cell: 0.25, marked: false, ..Shape::default() };
+    let victim = Shape {
+        net: "AIN_P".to_owned(),
+        track: vec![(46.0, 12.0), (30.0, 12.0), (24.0, 9.0), (12.0, 9.0)],
+        ..base.clone()
+    };
+    let (a, b) = (gauge(&base), gauge(&victim));
+    for name in ["paper", "screen", "mono", "large"] {
+        let style = style(name);
+        let scene = pair_scene(&PairInput {
+            board: &a.board,
+            review: &a.review,
+            aggressor: side(&a),
+            victim: side(&b),
+            band: &a.band,
+            mutual_ohm: Some(Complex64::new(-0.14e-3, 0.9e-3)),
+            noise: Some((10e-3, 9.1e-6)),
+            scale: DensityScale::new(0.2e-3, 60.0),
+            style: &style,
+            input_hash: "0",
+            sheet: (1, 1),
+        });
+        let picture = shown(&format!("pair-{name}"), &scene);
+        let wrong = text_faults(&scene);
+        assert!(wrong.is_empty(), "{name}:\n{}", wrong.join("\n"));
+        assert!(picture.svg.len() <= 900_000 && picture.png.len() <= 650_000, "{name}");
+        assert!(picture.description.contains("9.1\u{a0}\u{b5}V"), "{}", picture.description);
+    }
+}
+
+/// Boards of random size, track, name and findings in all styles: no text overlaps or leaves the page.
+#[test]
+fn random_boards_keep_their_text_apart() {
+    let mut seed = 5_u64;
+    let mut random = move |low: f64, high: f64| {
+        seed = seed.wrapping_mul(6_364_136_223_846_793_005).wrapping_add(1);
+        low + (high - low) * (seed >> 33) as f64 / f64::from(u32::MAX >> 1)
+    };
+    let styles: Vec<Style> = ebbmap::read::style::BUILT_IN.iter().map(|(name, _)| style(name)).collect();
+    for round in 0..40 {
+        let (width, height) = (random(15.0, 200.0), random(15.0, 150.0));
+        let track: Vec<(f64, f64)> =
+            (0..4).map(|_| (random(1.5, width - 1.5), random(1.5, height - 1.5))).collect();
+        let letters = ["N", "SENSOR_A_", "\u{6c34}\u{4f4d}", "W_\u{1F600}"];
+        let net: String = letters[round % 4].chars().cycle().take(1 + random(0.0, 99.0) as usize).collect();
+        let slot = Some([0.4 * width, 0.3 * height, 0.4 * width + 0.8, 0.7 * height]);
+        let cell = 0.004 * (width + height);
+        let shape = Shape {
+            width,
+            height,
+            track,
+            net,
+            slot,
+            cell,
+            pins: 6,
+            zones: round % 3 > 0,
+            ..Shape::default()
+        };
+        let gauge = gauge(&shape);
+        let scene = ticket_scene(&input(&gauge, &styles[round % styles.len()]));
+        let wrong = text_faults(&scene);
+        if !wrong.is_empty() {
+            shown("random", &scene);
+        }
+        assert!(wrong.is_empty(), "board {round}, {}:\n{}", shape.net, wrong.join("\n"));
+    }
+}
+
+/// A contact sheet of 25 maps of a board with many voids stays small, and does not depend on threads.
+#[test]
+fn contact_sheets_are_small_and_the_same_from_threads() {
+    let style = style("paper");
+    let base = Shape { cell: 0.5, perforation: (12, 8), ..Shape::default() };
+    let shapes = some_nets(5, &base);
+    let once = |threads: usize| {
+        let pool = rayon::ThreadPoolBuilder::new().num_threads(threads).build().expect("threads");
+        pool.install(|| Picture::of(&contact_pages(&style, &shapes, &bands()[..5])[0]).expect("a picture"))
+    };
+    let first = once(1);
+    assert!(first.svg.len() <= 900_000, "SVG of {} bytes", first.svg.len());
+    assert!(first.svg.matches("<use ").count() >= 20, "planes are held once");
+    let folder = PathBuf::from(env!("CARGO_MANIFEST_DIR")).join("target/golden/pages");
+    std::fs::write(folder.join("contact-perforated.png"), &first.png).expect("written");
+    println!("perforated: SVG {} kB, PNG {} kB", first.svg.len() / 1000, first.png.len() / 1000);
+    for threads in [2, 8] {
+        assert_eq!(once(threads), first);
+    }
 }
 
 #[test]
