@@ -51,7 +51,7 @@ fn faults_of_parts_and_ties_are_told_at_their_places() {
         (
             "[[part]]\nreference = 'C1'\ncapacitence = '1nF'\n",
             "review-unknown-key",
-            "capacity",
+            "capacitence",
             "`capacitance`?",
         ),
         ("[[part]]\nreference = 'U1'\njoins = ['GND']\n", "review-bad-value", "['GND']", "two at least"),
