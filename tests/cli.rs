@@ -432,6 +432,70 @@ fn look_tells_the_plan_and_writes_nothing() {
 }
 
 #[test]
+fn look_draws_the_layers_where_pictures_are_wanted() {
+    let desk = Desk::new();
+    let run = desk.run(&["look", "review.toml", "--picture", "out"]).exits(0);
+    assert!(run.out().contains("2 layers") && run.out().contains("`out`"), "{}", run.out());
+    let names = ["layer-1.png", "layer-1.svg", "layer-2.png", "layer-2.svg", "layers.json"];
+    let first = desk.files("out");
+    assert_eq!(first.keys().collect::<Vec<_>>(), names);
+    for (name, words) in [
+        ("layer-1.svg", ["charted net", "SIG", "driver"]),
+        ("layer-2.svg", ["reference net", "GND", "landing"]),
+    ] {
+        let svg = String::from_utf8_lossy(&first[name]).into_owned();
+        for word in words {
+            assert!(svg.contains(word), "`{word}` is not in {name}");
+        }
+        assert!(!svg.contains(desk.folder.path().to_str().unwrap()));
+    }
+    desk.run(&["look", "review.toml", "--picture", "again", "--json"]).exits(0);
+    assert!(desk.files("again") == first, "the same input gives the same bytes");
+    // Pictures of layers and maps may share a folder: neither removes the other's.
+    desk.run(&["draw", "review.toml", "--out", "out", "--only", "SIG"]).exits(0);
+    assert!(names.iter().all(|name| desk.path("out").join(name).exists()));
+    desk.run(&["look", "fab", "--picture", "out", "--style", "screen"]).exits(0);
+    let mixed = desk.files("out");
+    assert!(mixed.contains_key("findings.json") && mixed["layer-1.svg"] != first["layer-1.svg"]);
+    assert!(
+        !String::from_utf8_lossy(&mixed["layer-2.svg"]).contains("reference net"),
+        "a board alone has none"
+    );
+    desk.put("file", "not a folder");
+    desk.run(&["look", "fab", "--picture", "file"]).exits(2).says(&["error[cannot-write]", "`file`"]);
+    desk.run(&["look", "fab", "--picture", "new", "--style", "no-such-style"])
+        .exits(2)
+        .says(&["no-such-style"]);
+    assert!(!desk.path("new").exists());
+    desk.run(&["look", "fab", "--style", "screen"]).exits(2).says(&["--picture"]);
+}
+
+/// What a run that was killed has written is removed by the next, although no manifest lists it.
+#[test]
+fn a_killed_run_leaves_nothing_behind_the_next() {
+    let desk = Desk::new();
+    desk.run(&["draw", "review.toml", "--out", "out", "--only", "CLK"]).exits(0);
+    let whole = desk.files("out");
+    let mut child = Command::new(env!("CARGO_BIN_EXE_ebbmap"))
+        .args(["draw", "review.toml", "--out", "out", "--cell", "0.05mm", "--numbers", "--jobs", "1"])
+        .current_dir(desk.folder.path())
+        .stderr(std::process::Stdio::null())
+        .spawn()
+        .unwrap();
+    // Killed as soon as a file stands that the first run did not write.
+    let started = std::time::Instant::now();
+    let more = |files: &BTreeMap<String, Vec<u8>>| files.keys().any(|name| name.contains("SIG"));
+    while !more(&desk.files("out")) && started.elapsed().as_secs() < 60 {
+        std::thread::sleep(std::time::Duration::from_millis(2));
+    }
+    child.kill().unwrap();
+    child.wait().unwrap();
+    assert!(more(&desk.files("out")) && desk.path("out/manifest.json.unfinished").exists());
+    desk.run(&["draw", "review.toml", "--out", "out", "--only", "CLK"]).exits(0);
+    assert!(desk.files("out") == whole, "{:?}", desk.files("out").keys());
+}
+
+#[test]
 fn explain_prints_every_code() {
     let desk = Desk::new();
     let list = desk.run(&["explain"]).exits(0).out();

@@ -33,6 +33,12 @@ pub enum Command {
         /// Print JSON instead of text
         #[arg(long)]
         json: bool,
+        /// Also draw each copper layer as understood (SVG and PNG) into this folder; made if it does not exist
+        #[arg(long, value_name = "DIR")]
+        picture: Option<PathBuf>,
+        /// Style of the pictures by name, or a style file
+        #[arg(long, value_name = "NAME|FILE", default_value = "paper", requires = "picture")]
+        style: String,
     },
     /// Explain a message code, for example `net-unknown`; without a code, list all
     Explain {

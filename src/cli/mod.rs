@@ -31,7 +31,10 @@ pub fn main() -> std::process::ExitCode {
     let exit = match &arguments.command {
         Command::Draw(order) => draw::draw(order, &mut console),
         Command::Check(order) => draw::check(order, &mut console),
-        Command::Look { path, json } => look::look(path, *json, &mut console),
+        Command::Look { path, json, picture, style } => {
+            let pictures = picture.as_deref().map(|out| (out, style.as_str()));
+            look::look(path, *json, pictures, &mut console)
+        }
         Command::Explain { code } => explain::explain(code.as_deref(), &mut console),
     };
     console.finish(exit).into()

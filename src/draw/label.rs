@@ -82,7 +82,7 @@ fn along(line: &[(f64, f64)], step: f64) -> Vec<((f64, f64), (f64, f64))> {
 }
 
 /// Boxes inside a zone, lower ones cheaper.
-fn zone_boxes(outline: &Ring, view: &View, width: f64, height: f64) -> Vec<(Rect, f64)> {
+pub(super) fn zone_boxes(outline: &Ring, view: &View, width: f64, height: f64) -> Vec<(Rect, f64)> {
     let zone = Polygon { outer: outline.clone(), holes: Vec::new() };
     let (right, bottom) = (view.x + view.width(), view.y + view.height());
     let mut boxes = Vec::new();

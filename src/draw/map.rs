@@ -203,7 +203,7 @@ fn contour_lines(contours: &[Contour; 3], look: &MapLook) -> Group {
     group
 }
 
-fn ring_on_sheet(ring: &Ring, view: &View) -> Vec<(f64, f64)> {
+pub(super) fn ring_on_sheet(ring: &Ring, view: &View) -> Vec<(f64, f64)> {
     let mut points: Vec<(f64, f64)> = ring.iter().map(|&point| view.place(point)).collect();
     if let Some(&first) = points.first() {
         points.push(first);
@@ -213,7 +213,7 @@ fn ring_on_sheet(ring: &Ring, view: &View) -> Vec<(f64, f64)> {
     points
 }
 
-fn in_view(ring: &Ring, view: &View) -> bool {
+pub(super) fn in_view(ring: &Ring, view: &View) -> bool {
     crate::geom::Bounds::of(ring.iter().copied()).meets(view.window)
 }
 
@@ -271,16 +271,20 @@ fn zone_lines(data: &MapData, view: &View, look: &MapLook) -> Group {
     let style = look.style;
     let mut group = Group::new("zones");
     let mut path = PathData::coarse();
-    for (index, (_, outline)) in data.zones.iter().enumerate() {
-        for run in inner_edges(outline, &data.zones[..index], &data.outline) {
-            let points: Vec<(f64, f64)> = run.into_iter().map(|point| view.place(point)).collect();
-            path.line(&simplified(&points, OUTLINE));
-        }
+    for run in zone_runs(&data.zones, &data.outline) {
+        let points: Vec<(f64, f64)> = run.into_iter().map(|point| view.place(point)).collect();
+        path.line(&simplified(&points, OUTLINE));
     }
     let width = style.line.boundary * if look.small { 0.7 } else { 1.0 };
     group.shape(Shape::stroked(path.clone(), style.color.page, width + HALO * look.weight()));
     group.shape(Shape::stroked(path, style.color.boundary, width).dashed(&style.line.boundary_dash));
     group
+}
+
+/// The boundaries of zones inside the board, each shared part once.
+pub(super) fn zone_runs(zones: &[(String, Ring)], board: &Region) -> Vec<Vec<Point>> {
+    let each = zones.iter().enumerate();
+    each.flat_map(|(index, (_, outline))| inner_edges(outline, &zones[..index], board)).collect()
 }
 
 /// The parts of a zone's outline that run inside the board, each shared part once.

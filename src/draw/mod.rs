@@ -6,6 +6,7 @@
 pub mod callout;
 pub mod change;
 pub mod contour;
+pub mod copper;
 pub mod density;
 pub mod film;
 pub mod flow;
@@ -13,6 +14,7 @@ mod font;
 pub mod frame;
 pub mod joint;
 mod label;
+pub mod layer;
 pub mod list;
 pub mod map;
 mod number;

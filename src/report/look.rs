@@ -2,6 +2,7 @@
 //!
 //! Coordinates and lengths are in millimetres as in the files, thicknesses of the stackup in metres.
 
+use super::layer::{PLANE_M2, PLANE_PART};
 use crate::board::{Board, CopperKind, CopperLayer, LayerRole, ObjectFunction, Origin, Plating, TieKind};
 use crate::diag::Diagnostic;
 use crate::geom::Polygon;
@@ -11,10 +12,6 @@ use std::fmt::Write as _;
 
 /// Version of the document.
 const SCHEMA: u32 = 1;
-/// A connected piece of copper of this size is a plane, in square metres ...
-const PLANE_M2: f64 = 25e-6;
-/// ... or of this part of the board.
-const PLANE_PART: f64 = 0.01;
 /// Nets listed in the text; the JSON has all.
 const NETS_SHOWN: usize = 24;
 

@@ -50,13 +50,15 @@ impl Manifest {
     /// outside its folder.
     pub fn read(bytes: &[u8]) -> Option<Vec<String>> {
         let document: Document = serde_json::from_slice(bytes).ok()?;
-        let inside = |name: &str| {
-            let mut parts = Path::new(name).components().peekable();
-            parts.peek().is_some() && parts.all(|part| matches!(part, Component::Normal(_)))
-        };
-        let ours = document.program == "ebbmap" && document.files.iter().all(|entry| inside(&entry.file));
+        let ours = document.program == "ebbmap" && document.files.iter().all(|entry| is_inside(&entry.file));
         ours.then(|| document.files.into_iter().map(|entry| entry.file).collect())
     }
+}
+
+/// Whether a name stays inside the folder that it is relative to.
+pub fn is_inside(name: &str) -> bool {
+    let mut parts = Path::new(name).components().peekable();
+    parts.peek().is_some() && parts.all(|part| matches!(part, Component::Normal(_)))
 }
 
 /// SHA-256 of `bytes` in lower-case hexadecimal digits.

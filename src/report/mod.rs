@@ -6,6 +6,7 @@ mod csv;
 mod finding;
 mod findings;
 mod json;
+mod layer;
 mod look;
 mod manifest;
 mod marks;
@@ -22,8 +23,9 @@ pub use contact::{ContactCell, ContactInput, ContactRow, Thumbnail, contact, con
 pub use csv::csv;
 pub use findings::{FINDINGS_SCHEMA, Findings, Subject};
 pub use json::json;
+pub use layer::{LayerInput, layer_scenes, layers};
 pub use look::Look;
-pub use manifest::{Manifest, sha256_hex};
+pub use manifest::{Manifest, is_inside, sha256_hex};
 pub use marks::{Outlined, marks};
 pub use pair::{PairInput, PairSide, pair, pair_scene};
 pub use picture::Picture;

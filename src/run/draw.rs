@@ -5,7 +5,7 @@ use super::documents::Documents;
 use super::input::input_hash;
 use super::name::{MapName, file_stems};
 use super::select::chosen;
-use super::store::Store;
+use super::store::{MANIFEST, Store};
 use super::watch::Watch;
 use crate::board::{Board, Origin, Stackup};
 use crate::diag::code::{plan as plan_code, read as read_code, run as code};
@@ -127,7 +127,7 @@ pub fn draw(order: &Order, watch: &dyn Watch) -> Result<Outcome, Unusable> {
     let style = chosen_style(order.style).map_err(|messages| tell(watch, &messages))?;
     let mut prepared = prepare(order.review, order.cell_m, watch)?;
     let chosen = chosen(&prepared.plan, order.only).map_err(|messages| tell(watch, &messages))?;
-    let store = order.out.map(Store::open).transpose();
+    let store = order.out.map(|out| Store::open(out, MANIFEST)).transpose();
     let store = store.map_err(|failure| tell(watch, &[cannot_write(&failure)]))?;
     match rayon::ThreadPoolBuilder::new().num_threads(order.jobs).build() {
         Ok(pool) => pool.install(|| draw_plan(order, watch, &mut prepared, &chosen, &style, store)),
@@ -296,7 +296,7 @@ pub(super) fn is_skip(message: &Diagnostic) -> bool {
 }
 
 /// A style by name, or from a file, with the text that names or makes it.
-fn chosen_style(name: &str) -> Result<(Style, String), Vec<Diagnostic>> {
+pub(super) fn chosen_style(name: &str) -> Result<(Style, String), Vec<Diagnostic>> {
     let path = Path::new(name);
     if path.extension().is_none_or(|extension| extension != "toml") {
         return Ok((style::built_in(name)?, name.to_owned()));
@@ -308,7 +308,7 @@ fn chosen_style(name: &str) -> Result<(Style, String), Vec<Diagnostic>> {
     Ok((style::load(&text, &file)?, text))
 }
 
-fn tell(watch: &dyn Watch, messages: &[Diagnostic]) -> Unusable {
+pub(super) fn tell(watch: &dyn Watch, messages: &[Diagnostic]) -> Unusable {
     messages.iter().for_each(|message| watch.message(message, None));
     Unusable
 }

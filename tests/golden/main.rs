@@ -7,4 +7,5 @@
 mod cases;
 mod compare;
 mod gauge;
+mod layers;
 mod pages;

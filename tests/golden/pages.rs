@@ -35,7 +35,7 @@ fn input<'a>(gauge: &'a Gauge, style: &'a Style) -> TicketInput<'a> {
 }
 
 /// Writes the page where a person can look at it, and gives the picture.
-fn shown(name: &str, scene: &Scene) -> Picture {
+pub fn shown(name: &str, scene: &Scene) -> Picture {
     let folder = PathBuf::from(env!("CARGO_MANIFEST_DIR")).join("target/golden/pages");
     std::fs::create_dir_all(&folder).expect("a folder");
     let start = std::time::Instant::now();
@@ -52,7 +52,7 @@ fn shown(name: &str, scene: &Scene) -> Picture {
 }
 
 /// What is wrong with the text of a page.
-fn text_faults(scene: &Scene) -> Vec<String> {
+pub fn text_faults(scene: &Scene) -> Vec<String> {
     let boxes = scene.text_boxes();
     let mut wrong = Vec::new();
     for (index, a) in boxes.iter().enumerate() {
