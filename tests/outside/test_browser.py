@@ -1,10 +1,11 @@
 """The SVG files in a second renderer, headless Chromium, against the PNG files that ebbmap writes; links followed by
 clicks from the contact sheet to every map and back.
 
-Both pictures are turned to gray (Rec. 709 luma). Bounds: mean difference at most 2 of 255, and structural similarity
-(Wang et al., IEEE T-IP 13(4), 2004, with an 8 x 8 window, from memory) at least 0.93 over the page. Two renderers smooth
-edges and letters differently, so pixels may differ; a line that moves by two pixels or a missing layer breaks the bounds,
-which the last check shows. Without a browser nothing of this is checked.
+Both pictures are turned to gray (Rec. 709 luma). Bounds: mean difference at most 4 of 255, and structural similarity
+(Wang et al., IEEE T-IP 13(4), 2004, with an 8 x 8 window, from memory) at least 0.95 over the page. Two renderers smooth
+edges and letters differently (measured: up to 3.0 and down to 0.956), so pixels may differ; the same page two pixels lower
+(at most 0.932) or without the third of it that holds most must break the bounds, which each check shows. Without a
+browser nothing of this is checked.
 """
 
 import io
@@ -18,8 +19,8 @@ from scipy.ndimage import uniform_filter
 from browser import Browser, find
 from gerber_board import write_board, write_review
 
-MEAN = 2.0
-STRUCTURE = 0.93
+MEAN = 4.0
+STRUCTURE = 0.95
 PROGRAM = find()
 
 pytestmark = pytest.mark.skipif(
@@ -84,11 +85,12 @@ def test_same_picture(drawn, tmp_path, style, kind):
     difference, similar = mean_difference(shot, png), structure(shot, png)
     print(f"{style} {svg.name}: mean difference {difference:.2f}, structure {similar:.4f}")
     assert difference <= MEAN and similar >= STRUCTURE, (svg.name, difference, similar)
-    # What the bounds would catch: the picture two pixels lower, or without what lies in its middle third.
     moved = np.roll(png, 2, axis=0)
     blank = png.copy()
-    third = slice(png.shape[0] // 3, 2 * png.shape[0] // 3)
-    blank[third] = png[0, 0]
+    third = png.shape[0] // 3
+    ink = np.abs(png - png[0, 0]).sum(axis=1)
+    start = max(range(0, png.shape[0] - third, 10), key=lambda row: ink[row : row + third].sum())
+    blank[start : start + third] = png[0, 0]
     for wrong in (moved, blank):
         assert mean_difference(shot, wrong) > MEAN or structure(shot, wrong) < STRUCTURE
 
