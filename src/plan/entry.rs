@@ -110,7 +110,7 @@ impl Finder<'_, '_> {
         let of_part = |pin: &&Pin| pin.part == signal.part && terrain.is_reference(pin.net);
         let mut pins: Vec<(&Pin, Reached)> = Vec::new();
         for pin in terrain.board.pins.iter().filter(of_part) {
-            pins.extend(self.reach.from_pin(pin).map(|reached| (pin, reached)));
+            pins.extend(self.reach.of_pin(pin).map(|reached| (pin, reached)));
         }
         pins.sort_by(|a, b| a.0.at.distance(signal.at).total_cmp(&b.0.at.distance(signal.at)));
         // Pins of the net of the nearest plane, or of that of the nearest pin.
@@ -156,7 +156,7 @@ impl Finder<'_, '_> {
         let Some(pin) = terrain.board.pins.iter().find(|pin| pin.label() == label) else {
             return bad("the board has no such pin".into());
         };
-        match self.reach.from_pin(pin) {
+        match self.reach.of_pin(pin) {
             Some(reached) => Ok(Landed {
                 end: reached.end(),
                 what: way_in_words(pin, &reached),
@@ -193,7 +193,7 @@ impl Finder<'_, '_> {
                 self.reach
                     .sheets
                     .holds((layer, area))
-                    .then(|| self.reach.from_piece((layer, area), point, SPOT_M, SPOT_M))?
+                    .then(|| self.reach.of_piece((layer, area), point, SPOT_M, SPOT_M))?
             }) {
                 return Ok(landed(&reached, "point named in the review", None));
             }

@@ -119,7 +119,7 @@ impl<'r> Shop<'_, '_, 'r> {
             }
             return;
         };
-        let (Some(from), Some(to)) = (self.reach.from_pin(a), self.reach.from_pin(b)) else { return };
+        let (Some(from), Some(to)) = (self.reach.of_pin(a), self.reach.of_pin(b)) else { return };
         if from.piece == to.piece || (a.net == b.net && class == Class::Capacitor) {
             return;
         }
@@ -151,7 +151,7 @@ impl<'r> Shop<'_, '_, 'r> {
         for pin in pins.iter().filter(|pin| {
             pin.net.is_some() && request.joins.iter().any(|name| name == terrain.net_name(pin.net))
         }) {
-            if let Some(reached) = self.reach.from_pin(pin)
+            if let Some(reached) = self.reach.of_pin(pin)
                 && !places.iter().any(|known| known.1.piece == reached.piece && known.1.at == reached.at)
             {
                 places.push((pin, reached));

@@ -69,7 +69,7 @@ pub struct Reach<'t, 'b> {
 
 impl Reach<'_, '_> {
     /// From a pin of a part.
-    pub fn from_pin(&self, pin: &Pin) -> Option<Reached> {
+    pub fn of_pin(&self, pin: &Pin) -> Option<Reached> {
         let board = self.terrain.board;
         if let Some(hole) = pin.hole {
             // Of the sheets that the barrel touches the one nearest to the part's side.
@@ -93,11 +93,11 @@ impl Reach<'_, '_> {
         let area = self.terrain.copper_of_net(pin.layer, pin.at, pin.net?)?;
         let radius_m = (pin.pad.area() / PI).max(0.0).sqrt();
         let width_m = if radius_m > 0.0 { radius_m.min(2.0 * WIDTH_M) } else { WIDTH_M };
-        self.from_piece((pin.layer, area), pin.at, radius_m.max(0.5 * WIDTH_M), width_m)
+        self.of_piece((pin.layer, area), pin.at, radius_m.max(0.5 * WIDTH_M), width_m)
     }
 
     /// From a spot on a piece of copper; `radius_m` is that of the spot, `width_m` that of the copper leading away.
-    pub fn from_piece(&self, piece: Piece, at: Point, radius_m: f64, width_m: f64) -> Option<Reached> {
+    pub fn of_piece(&self, piece: Piece, at: Point, radius_m: f64, width_m: f64) -> Option<Reached> {
         if self.sheets.holds(piece) {
             return Some(Reached {
                 piece,

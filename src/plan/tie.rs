@@ -58,7 +58,7 @@ fn tie_end(reach: Reach<'_, '_>, tie: &Tie, net: NetId) -> Option<Reached> {
     let terrain = reach.terrain;
     let pins = terrain.board.pins.iter();
     let mut own = pins.filter(|pin| !tie.part.is_empty() && pin.part == tie.part && pin.net == Some(net));
-    if let Some(reached) = own.find_map(|pin| reach.from_pin(pin)) {
+    if let Some(reached) = own.find_map(|pin| reach.of_pin(pin)) {
         return Some(reached);
     }
     let width_m =
@@ -69,7 +69,7 @@ fn tie_end(reach: Reach<'_, '_>, tie: &Tie, net: NetId) -> Option<Reached> {
         for area in terrain.copper_near(tie.layer, &ring, TOUCH_M) {
             if terrain.net_of(tie.layer, area) == Some(net) {
                 let at = spot_nearest(reach, (tie.layer, area), tie.at);
-                return reach.from_piece((tie.layer, area), at, 0.5 * width_m.max(2.0 * SPOT_M), width_m);
+                return reach.of_piece((tie.layer, area), at, 0.5 * width_m.max(2.0 * SPOT_M), width_m);
             }
         }
     }
@@ -164,7 +164,7 @@ fn place(reach: Reach<'_, '_>, end: &TieEnd, other: &TieEnd) -> Result<Reached, 
             let Some(pin) = board.pins.iter().find(|pin| pin.label() == *label) else {
                 return Err(bad(format!("end `{label}` of a tie must be a pin of the board; it is not")));
             };
-            reach.from_pin(pin).ok_or_else(|| {
+            reach.of_pin(pin).ok_or_else(|| {
                 let net = terrain.net_name(pin.net);
                 bad(format!(
                     "end `{label}` of a tie must lead to copper that carries return; its net is `{net}`"
@@ -211,7 +211,7 @@ fn on_net(reach: Reach<'_, '_>, net: NetId, point: Point) -> Option<(f64, Reache
     for layer in 0..terrain.board.layers.len() {
         let piece = terrain.copper_of_net(layer, point, net).map(|area| (layer, area));
         if let Some(piece) = piece.filter(|&piece| reach.sheets.holds(piece)) {
-            return reach.from_piece(piece, point, SPOT_M, 2.0 * SPOT_M).map(|reached| (0.0, reached));
+            return reach.of_piece(piece, point, SPOT_M, 2.0 * SPOT_M).map(|reached| (0.0, reached));
         }
     }
     let mut best: Option<(f64, Reached)> = None;
@@ -225,7 +225,7 @@ fn on_net(reach: Reach<'_, '_>, net: NetId, point: Point) -> Option<(f64, Reache
         if let Some(piece) = reach.sheets_at(index, Some(net)).into_iter().min() {
             let radius_m = super::barrel::radius_m(hole);
             best = reach
-                .from_piece(piece, hole.centre(), radius_m, 2.0 * PI * radius_m)
+                .of_piece(piece, hole.centre(), radius_m, 2.0 * PI * radius_m)
                 .map(|reached| (distance, reached));
         }
     }
@@ -238,7 +238,7 @@ fn on_net(reach: Reach<'_, '_>, net: NetId, point: Point) -> Option<(f64, Reache
             let at = spot_nearest(reach, piece, point);
             let distance = at.distance(point);
             if best.as_ref().is_none_or(|known| distance < known.0) {
-                best = reach.from_piece(piece, at, SPOT_M, 2.0 * SPOT_M).map(|reached| (distance, reached));
+                best = reach.of_piece(piece, at, SPOT_M, 2.0 * SPOT_M).map(|reached| (distance, reached));
             }
         }
     }
