@@ -154,7 +154,8 @@ pub fn color_scale(
     }
     group.shape(Shape::stroked(ticks, style.color.ink, 0.25));
     for (row, unit) in [(y - 1.9, "A/m per A"), (y + HEIGHT + 1.1 + size, "dB")] {
-        let at = if row < y { x + width + 1.8 } else { x + width + 5.2 };
+        // Clear of a number at the very end of the scale.
+        let at = if row < y { (x + width + 1.8).max(last + 1.6) } else { x + width + 5.2 };
         group.text(Text::new(at, row, size, Face::Narrow, style.color.ink, unit));
     }
     contour_marks(&mut group, (x, y, width, HEIGHT), scale, contours, style);

@@ -520,7 +520,7 @@ mod tests {
                 "stops      = [\"#FFFFFF\", \"#000000\", \"#FFFFFF\"]",
                 "belong to `map`",
             ),
-            ("[rules]", "[labels]\n\"Key figurs\" = \"Zahlen\"\n[rules]", "`Key figures` is one"),
+            ("\n[rules]\n", "\n[labels]\n\"Key figurs\" = \"Zahlen\"\n[rules]\n", "`Key figures` is one"),
         ];
         for (from, to, word) in cases {
             let faults = changed(from, to);

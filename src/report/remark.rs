@@ -42,8 +42,10 @@ impl Remarks {
             all.iter().partition(|finding| is_here(finding, input));
         let same_plane =
             |finding: &&&Finding| finding.plane.as_ref().is_none_or(|plane| *plane == input.chart.plane);
-        let shown: Vec<&Finding> =
+        let mut shown: Vec<&Finding> =
             here.iter().copied().chain(elsewhere.iter().filter(same_plane).copied()).collect();
+        // Notes last, whatever their band.
+        shown.sort_by_key(|finding| finding.grade == Grade::Note);
         let on_map = here.iter().take(MOST).filter(|finding| finding.place.layer == input.chart.plane.layer);
         let callout = |finding: &&Finding| Callout {
             number: finding.number.to_string(),
@@ -90,12 +92,25 @@ fn amount(what: Measured, value: f64) -> String {
 
 fn cause_words(cause: &Cause) -> String {
     match cause {
-        Cause::Void(id) => format!("void {}", plain(id)),
+        Cause::Void(id) => void_words(id),
         Cause::Edge => "plane edge".to_owned(),
         Cause::LayerChange => "layer change".to_owned(),
         Cause::Path(name) => plain(name),
         Cause::Spread => "wide spread".to_owned(),
     }
+}
+
+/// A void by its name or id; ids carry the word themselves.
+fn void_words(id: &str) -> String {
+    let id = plain(id);
+    if id.to_lowercase().contains("void") { id } else { format!("void {id}") }
+}
+
+fn capital(mut text: String) -> String {
+    if let Some(first) = text.get(..1).map(str::to_uppercase) {
+        text.replace_range(..1, &first);
+    }
+    text
 }
 
 /// For the map: cause and amount.
@@ -117,7 +132,7 @@ fn few_words(finding: &Finding) -> String {
 pub(super) fn result(finding: &Finding, net: &str, band: &str) -> String {
     let value = amount(finding.excess.what, finding.excess.value);
     let cause = match &finding.cause {
-        Cause::Void(id) => format!("Void {}", plain(id)),
+        Cause::Void(id) => capital(void_words(id)),
         Cause::Edge => "The plane's edge".to_owned(),
         Cause::LayerChange => "A layer change without a via for the return".to_owned(),
         Cause::Path(name) => plain(name),
@@ -161,12 +176,8 @@ fn listed(finding: &Finding, input: &TicketInput) -> ListedFinding {
     if finding.grade != Grade::Fail {
         note.push_str(&format!(" ({})", finding.grade.name()));
     }
-    let mut title = few_words(finding);
-    if let Some(first) = title.get(..1).map(str::to_uppercase)
-        && !matches!(finding.cause, Cause::Path(_))
-    {
-        title.replace_range(..1, &first);
-    }
+    let title = few_words(finding);
+    let title = if matches!(finding.cause, Cause::Path(_)) { title } else { capital(title) };
     let remedy = finding.remedy.as_ref().map(|remedy| remedy_words(finding, &plain(&remedy.action)));
     ListedFinding { number: finding.number.to_string(), title, note, remedy }
 }
@@ -176,8 +187,9 @@ pub(super) fn joint_marks(joints: &[JointCurrent], layer: usize) -> Vec<JointMar
     let mut marks: Vec<JointMark> = Vec::new();
     for joint in joints.iter().filter(|joint| joint.layers.contains(&Some(layer))) {
         let form = match joint.kind {
-            JointKind::Barrel => JointForm::Via,
-            JointKind::Part | JointKind::Inside => JointForm::Part,
+            // Pins that a part ties together inside are named as their vias.
+            JointKind::Barrel | JointKind::Inside => JointForm::Via,
+            JointKind::Part => JointForm::Part,
             JointKind::Tie => JointForm::Tie,
         };
         let current = joint.current.norm();

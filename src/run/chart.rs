@@ -317,7 +317,7 @@ impl<'a> PathDone<'a> {
     }
 
     /// The rows of the contact sheet.
-    pub fn contact(&self) -> Vec<ContactRow<'a>> {
+    pub fn contact<'s>(&'s self) -> Vec<ContactRow<'s>> {
         let cell = |done: &Done| match &done.map {
             Ok(Drawn { thumbnail: Some(thumbnail), .. }) => {
                 let ticket = format!("maps/{}.svg", done.stem);
@@ -326,11 +326,11 @@ impl<'a> PathDone<'a> {
             Ok(_) => ContactCell::Withheld(String::new()),
             Err(reason) => ContactCell::Withheld(reason.text.clone()),
         };
-        let row = |(chart, maps): &(&'a ChartPlan, Vec<Done>)| ContactRow {
+        let row = |(chart, maps): &'s (&'a ChartPlan, Vec<Done>)| ContactRow {
             net: self.net,
             chart,
             cells: maps.iter().map(cell).collect(),
-            findings: &[],
+            findings: &self.findings,
         };
         self.rows.iter().map(row).collect()
     }
