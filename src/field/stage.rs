@@ -79,7 +79,12 @@ impl Stage {
                 cut_y: sheet.mask.cut_y.clone(),
             };
             let sheets = self.sheets.iter().zip(&self.z_m).map(sheet).collect();
-            System::new(Problem { grid: self.grid, sheets, verticals: self.wiring.verticals.clone() })
+            System::new(Problem {
+                grid: self.grid,
+                sheets,
+                verticals: self.wiring.verticals.clone(),
+                gaps: Vec::new(),
+            })
         };
         self.system.get_or_init(prepare).as_ref().map_err(Clone::clone)
     }

@@ -9,8 +9,8 @@
 //!
 //! Not here: the kernels, see `sheet::kernel`.
 
-use num_complex::Complex64;
-use rustfft::{Fft, FftPlanner};
+use num_complex::Complex;
+use rustfft::{Fft, FftNum, FftPlanner};
 use std::sync::Arc;
 
 /// Columns that are gathered at a time: two cache lines of complex values.
@@ -32,18 +32,21 @@ pub fn smooth_size(at_least: usize) -> usize {
     best
 }
 
-/// Plans for one size of planes and padding.
+/// Plans in double precision.
+pub type Filter = FilterOf<f64>;
+
+/// Plans for one size of planes and padding, in single or double precision.
 #[derive(Clone)]
-pub struct Filter {
+pub struct FilterOf<T> {
     nx: usize,
     ny: usize,
     px: usize,
     py: usize,
-    rows: [Arc<dyn Fft<f64>>; 2],
-    columns: [Arc<dyn Fft<f64>>; 2],
+    rows: [Arc<dyn Fft<T>>; 2],
+    columns: [Arc<dyn Fft<T>>; 2],
 }
 
-impl std::fmt::Debug for Filter {
+impl<T> std::fmt::Debug for FilterOf<T> {
     fn fmt(&self, out: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
         write!(out, "Filter {} x {} padded to {} x {}", self.nx, self.ny, self.px, self.py)
     }
@@ -51,13 +54,13 @@ impl std::fmt::Debug for Filter {
 
 /// Buffers of a filter, kept between calls.
 #[derive(Debug, Default)]
-pub struct Scratch {
-    rows: Vec<Complex64>,
-    columns: Vec<Complex64>,
-    fft: Vec<Complex64>,
+pub struct Scratch<T = f64> {
+    rows: Vec<Complex<T>>,
+    columns: Vec<Complex<T>>,
+    fft: Vec<Complex<T>>,
 }
 
-impl Filter {
+impl<T: FftNum> FilterOf<T> {
     /// Plans for planes of `nx` x `ny` on a torus of at least `px` x `py`; the lengths used are [`Filter::size`].
     pub fn new(nx: usize, ny: usize, px: usize, py: usize) -> Self {
         let (px, py) = (smooth_size(px.max(nx)), smooth_size(py.max(ny)));
@@ -81,13 +84,13 @@ impl Filter {
     /// px * py), to `output`. `multiply(kx, columns)` gets for each plane in turn the py values at column kx.
     pub fn apply(
         &self,
-        input: &[&[Complex64]],
-        output: &mut [&mut [Complex64]],
-        scratch: &mut Scratch,
-        mut multiply: impl FnMut(usize, &mut [Complex64]),
+        input: &[&[Complex<T>]],
+        output: &mut [&mut [Complex<T>]],
+        scratch: &mut Scratch<T>,
+        mut multiply: impl FnMut(usize, &mut [Complex<T>]),
     ) {
         let (nx, ny, px, py) = (self.nx, self.ny, self.px, self.py);
-        let (planes, zero) = (input.len(), Complex64::default());
+        let (planes, zero) = (input.len(), Complex::new(T::zero(), T::zero()));
         let need = [&self.rows[0], &self.rows[1], &self.columns[0], &self.columns[1]]
             .map(|plan| plan.get_inplace_scratch_len());
         scratch.rows.resize(planes * ny * px, zero);
@@ -141,10 +144,10 @@ impl Filter {
     }
 }
 
-impl Filter {
+impl<T: FftNum> FilterOf<T> {
     /// Transforms one row of length px in place (forward).
-    pub fn transform_in_place(&self, row: &mut [Complex64], scratch: &mut Scratch) {
-        scratch.fft.resize(self.rows[0].get_inplace_scratch_len(), Complex64::default());
+    pub fn transform_in_place(&self, row: &mut [Complex<T>], scratch: &mut Scratch<T>) {
+        scratch.fft.resize(self.rows[0].get_inplace_scratch_len(), Complex::new(T::zero(), T::zero()));
         self.rows[0].process_with_scratch(row, &mut scratch.fft);
     }
 }

@@ -4,4 +4,5 @@ pub mod exponential_integral;
 pub mod filter;
 pub mod measure;
 pub mod quadrature;
+pub mod real;
 pub mod small;

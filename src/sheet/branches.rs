@@ -2,7 +2,8 @@
 //!
 //! A vector of branch currents holds for each sheet nx * ny x-faces (index iy * nx + ix is the face between cells
 //! (ix - 1, iy) and (ix, iy)), then nx * ny y-faces (between (ix, iy - 1) and (ix, iy)), then one value for each
-//! vertical. Faces that do not conduct are always zero. Currents in A, positive towards rising index.
+//! vertical, then one for each pair of facing cells of each gap. Faces that do not conduct are always zero. Currents in
+//! A, positive towards rising index.
 //!
 //! Model: divergence (D i)_n = current that leaves node n; resistance of a face
 //! Zs (1 + (d_xx - d_yy)/24) on x-faces, signs exchanged on y-faces, second differences between conducting faces only:
@@ -19,8 +20,9 @@
 //!
 //! Checked by: `ground_plane_of_finite_width`, `straight_track_on_a_resistive_sheet` and `dense_direct_solve_agrees` in tests/physics.
 
-use super::{Patch, Problem, SolveFailure, Vertical};
-use num_complex::Complex64;
+use super::{Gap, Patch, Problem, SolveFailure, Vertical};
+use crate::math::real::Real;
+use num_complex::Complex;
 
 /// Mark of a cell without copper.
 pub const NO_NODE: u32 = u32::MAX;
@@ -44,6 +46,10 @@ pub struct Branches {
     pub copper_nodes: usize,
     /// For each vertical the nodes it touches with what leaves them for 1 A.
     pub ends: Vec<Vec<(u32, f64)>>,
+    /// Capacitors between facing cells: their two nodes and capacitance in F, gap by gap in rising order of cells.
+    pub facing: Vec<(u32, u32, f64)>,
+    /// For each gap its cells in the order of `facing`.
+    pub gap_cells: Vec<Vec<u32>>,
     /// Weights of the faces' own currents in their resistive voltages.
     resistive: Vec<f64>,
     /// Symmetric edge terms: two faces and a weight, to be multiplied by [`EDGE_PART`] mu0 d/2.
@@ -78,8 +84,25 @@ impl Branches {
         let outside = ends.filter(|patch| patch.sheet == Patch::OUTSIDE).flat_map(|patch| &patch.cells);
         let copper_nodes = nodes as usize;
         let nodes = copper_nodes + outside.map(|(node, _)| node + 1).max().unwrap_or(0);
-        let mut branches =
-            Self { nx, ny, sheets, conducts, node, nodes, copper_nodes, ends: Vec::new(), resistive, edges };
+        let unknown_sheet = |gap: &Gap| gap.sheets.0.max(gap.sheets.1) >= sheets;
+        if let Some(index) = problem.gaps.iter().position(unknown_sheet) {
+            return Err(SolveFailure::NoCopper { index: problem.verticals.len() + index });
+        }
+        let (gap_cells, facing) = facing_cells(problem, &node);
+        let mut branches = Self {
+            nx,
+            ny,
+            sheets,
+            conducts,
+            node,
+            nodes,
+            copper_nodes,
+            ends: Vec::new(),
+            facing,
+            gap_cells,
+            resistive,
+            edges,
+        };
         let ends =
             problem.verticals.iter().enumerate().map(|(index, vertical)| branches.ends_of(vertical, index));
         branches.ends = ends.collect::<Result<_, _>>()?;
@@ -127,6 +150,11 @@ impl Branches {
 
     /// Number of values of a vector of branch currents.
     pub fn len(&self) -> usize {
+        self.faces() + self.ends.len() + self.facing.len()
+    }
+
+    /// Where the values of the verticals end and those of the gaps begin.
+    pub fn first_gap(&self) -> usize {
         self.faces() + self.ends.len()
     }
 
@@ -153,59 +181,71 @@ impl Branches {
     }
 
     /// Current that leaves each node.
-    pub fn divergence(&self, currents: &[Complex64]) -> Vec<Complex64> {
-        let mut leaves = vec![Complex64::default(); self.nodes];
+    pub fn divergence<T: Real>(&self, currents: &[Complex<T>]) -> Vec<Complex<T>> {
+        let mut leaves = vec![Complex::new(T::zero(), T::zero()); self.nodes];
         self.each_face(|branch, from, to| {
             leaves[from] += currents[branch];
             leaves[to] -= currents[branch];
         });
         for (ends, current) in self.ends.iter().zip(&currents[self.faces()..]) {
-            ends.iter().for_each(|&(node, weight)| leaves[node as usize] += current * weight);
+            ends.iter().for_each(|&(node, weight)| leaves[node as usize] += current * T::of(weight));
+        }
+        for (&(from, to, _), current) in self.facing.iter().zip(&currents[self.first_gap()..]) {
+            leaves[from as usize] += current;
+            leaves[to as usize] -= current;
         }
         leaves
     }
 
     /// Subtracts from `emf` the potential differences along the branches, `emf - scale D^T potential`; `inverse_weight`
-    /// multiplies those of the verticals.
-    pub fn subtract_gradient(
+    /// multiplies those of the verticals and leaves gaps alone.
+    pub fn subtract_gradient<T: Real>(
         &self,
-        potential: &[Complex64],
+        potential: &[Complex<T>],
         inverse_weight: Option<&[f64]>,
-        emf: &mut [Complex64],
+        emf: &mut [Complex<T>],
     ) {
         self.each_face(|branch, from, to| emf[branch] -= potential[from] - potential[to]);
         let faces = self.faces();
         for (index, ends) in self.ends.iter().enumerate() {
-            let drop: Complex64 = ends.iter().map(|&(node, weight)| potential[node as usize] * weight).sum();
-            emf[faces + index] -= drop * inverse_weight.map_or(1.0, |weights| weights[index]);
+            let drop: Complex<T> =
+                ends.iter().map(|&(node, weight)| potential[node as usize] * T::of(weight)).sum();
+            emf[faces + index] -= drop * T::of(inverse_weight.map_or(1.0, |weights| weights[index]));
+        }
+        if inverse_weight.is_none() {
+            let gaps = self.first_gap();
+            for (&(from, to, _), voltage) in self.facing.iter().zip(&mut emf[gaps..]) {
+                *voltage -= potential[from as usize] - potential[to as usize];
+            }
         }
     }
 
     /// Adds the edge terms, `out += factor weight currents`; `factor` is s [`EDGE_PART`] mu0 d/2 in ohm.
-    pub fn add_edges(&self, factor: Complex64, currents: &[Complex64], out: &mut [Complex64]) {
+    pub fn add_edges<T: Real>(&self, factor: Complex<T>, currents: &[Complex<T>], out: &mut [Complex<T>]) {
         for &(a, b, weight) in &self.edges {
             let (a, b) = (a as usize, b as usize);
-            out[a] += factor * weight * currents[b];
+            let factor = factor * T::of(weight);
+            out[a] += factor * currents[b];
             if a != b {
-                out[b] += factor * weight * currents[a];
+                out[b] += factor * currents[a];
             }
         }
     }
 
     /// Adds the resistive voltages of one plane of faces, `out += zs (1 +- (d_xx - d_yy)/24) currents`.
-    pub fn add_resistive(
+    pub fn add_resistive<T: Real>(
         &self,
         sheet: usize,
         direction: usize,
-        zs: Complex64,
-        currents: &[Complex64],
-        out: &mut [Complex64],
+        zs: Complex<T>,
+        currents: &[Complex<T>],
+        out: &mut [Complex<T>],
     ) {
         // faces that do not conduct carry nothing, so that only the centre's weight depends on the neighbours
         let (nx, ny) = (self.nx, self.ny);
         let centre = &self.resistive[self.plane(sheet, direction)];
-        let part = if direction == 0 { zs / 24.0 } else { -zs / 24.0 };
-        let nothing = vec![Complex64::default(); nx];
+        let part = zs * T::of(if direction == 0 { 1.0 } else { -1.0 } / 24.0);
+        let nothing = vec![Complex::new(T::zero(), T::zero()); nx];
         for iy in 0..ny {
             let row = iy * nx..(iy + 1) * nx;
             let here = &currents[row.clone()];
@@ -213,16 +253,40 @@ impl Branches {
             let above = if iy + 1 < ny { &currents[row.end..row.end + nx] } else { &nothing };
             let (centre, out) = (&centre[row.clone()], &mut out[row]);
             for ix in 0..nx {
-                // zero marks a face that does not conduct
-                if centre[ix] == 0.0 {
-                    continue;
-                }
                 let left = if ix > 0 { here[ix - 1] } else { nothing[0] };
                 let right = if ix + 1 < nx { here[ix + 1] } else { nothing[0] };
-                out[ix] += zs * here[ix] * centre[ix] + part * (left + right - above[ix] - below[ix]);
+                let value = zs * here[ix] * T::of(centre[ix]) + part * (left + right - above[ix] - below[ix]);
+                // zero marks a face that does not conduct
+                out[ix] += if centre[ix] == 0.0 { nothing[0] } else { value };
             }
         }
     }
+}
+
+/// For each gap its cells, and the capacitors between the nodes there.
+fn facing_cells(problem: &Problem, node: &[u32]) -> (Vec<Vec<u32>>, Vec<(u32, u32, f64)>) {
+    let cells = problem.grid.len();
+    let area = problem.grid.cell_m * problem.grid.cell_m;
+    let (mut gap_cells, mut facing) = (Vec::new(), Vec::new());
+    for gap in &problem.gaps {
+        let (from, to) = gap.sheets;
+        let (low, high) = (problem.sheets[from].z_m, problem.sheets[to].z_m);
+        let (low, high) = (low.min(high), low.max(high));
+        let between: Vec<usize> = (0..problem.sheets.len())
+            .filter(|&p| p != from && p != to && problem.sheets[p].z_m > low && problem.sheets[p].z_m < high)
+            .collect();
+        let mut here = Vec::new();
+        for cell in 0..cells {
+            let (a, b) = (node[from * cells + cell], node[to * cells + cell]);
+            let hidden = between.iter().any(|&p| problem.sheets[p].copper[cell]);
+            if a != NO_NODE && b != NO_NODE && a != b && !hidden && gap.farad_per_m2 > 0.0 {
+                here.push(cell as u32);
+                facing.push((a, b, gap.farad_per_m2 * area));
+            }
+        }
+        gap_cells.push(here);
+    }
+    (gap_cells, facing)
 }
 
 /// Weight of a face's own current in its resistive voltage: 1 less 1/24 for each neighbour along and plus 1/24 for each

@@ -24,25 +24,33 @@ use crate::math::small;
 use num_complex::Complex64;
 use std::f64::consts::PI;
 
-/// Relative residual of the solves that make the basis.
-const SOLVE_TOLERANCE: f64 = 1e-7;
+/// Relative residual of the solves that make the basis against the tolerance of the family, and its limits.
+const SOLVE_PART: f64 = 3e-3;
+const SOLVE_LIMITS: (f64, f64) = (1e-8, 1e-5);
 /// Real shifts in a decade of frequency.
 const SHIFTS_A_DECADE: f64 = 1.6;
+/// Frequencies in a band of one decade at which bounds are watched; wider bands have as many in all, but 1.5 a decade.
+const WATCHED_A_DECADE: f64 = 8.0;
 /// Vectors beyond which no more are added.
 const MOST_VECTORS: usize = 48;
 /// Series impedance that stands for an open vertical in the reduced system, in ohm.
 const OPEN_OHM: f64 = 1e9;
 
+/// Complex frequency in 1/s at which open gaps are taken in the reduced system.
+const OPEN_SHIFT: f64 = 1e-6;
+
 /// A reduced basis of one drive.
 pub struct Family<'a> {
-    system: &'a System,
+    pub(super) system: &'a System,
     drive: Prepared,
     /// Start and basis vectors: row 0 is i0, not normalized.
-    vectors: Vec<Vec<f64>>,
+    pub(super) vectors: Vec<Vec<f64>>,
     /// For each sheet V^T R V over all rows.
     resistive: Vec<Vec<f64>>,
     /// V^T L V over all rows.
     inductive: Vec<f64>,
+    /// V^T C^-1 V of the gaps over all rows, in 1/F.
+    elastance: Vec<f64>,
     /// V^T a.
     flux: Vec<f64>,
     /// Solves that were needed.
@@ -59,7 +67,48 @@ impl<'a> Family<'a> {
         points: &[OperatingPoint],
         tolerance: f64,
     ) -> Result<Self, SolveFailure> {
-        let drive = system.prepare(drive)?;
+        Self::prepared(system, system.prepare(drive)?, points, tolerance)
+    }
+
+    /// The family of a prepared drive over all `frequencies_hz`, which may be thousands of lines: `at` gives the
+    /// operating point of a frequency. Bounds are watched at a dozen of them spread over the band.
+    pub fn for_band(
+        system: &'a System,
+        drive: Prepared,
+        frequencies_hz: &[f64],
+        at: impl Fn(f64) -> OperatingPoint,
+        tolerance: f64,
+    ) -> Result<Self, SolveFailure> {
+        let mut sorted: Vec<f64> = frequencies_hz.to_vec();
+        sorted.sort_by(f64::total_cmp);
+        sorted.dedup();
+        let decades = match (sorted.iter().find(|f| **f > 0.0), sorted.last()) {
+            (Some(low), Some(high)) => libm::log10(high / low),
+            _ => 0.0,
+        };
+        let steps = WATCHED_A_DECADE / decades.max(1.0);
+        let mut watched: Vec<f64> = Vec::new();
+        for (index, &f) in sorted.iter().enumerate() {
+            let far = match watched.last() {
+                None => true,
+                Some(&last) if last == 0.0 => true,
+                Some(&last) => libm::log10(f / last) >= 1.0 / steps.max(1.5) - 1e-12,
+            };
+            if far || index + 1 == sorted.len() {
+                watched.push(f);
+            }
+        }
+        let points: Vec<OperatingPoint> = watched.into_iter().map(at).collect();
+        Self::prepared(system, drive, &points, tolerance)
+    }
+
+    /// As [`Family::new`] for a prepared drive.
+    pub fn prepared(
+        system: &'a System,
+        drive: Prepared,
+        points: &[OperatingPoint],
+        tolerance: f64,
+    ) -> Result<Self, SolveFailure> {
         let start = drive.start.clone();
         let mut family = Self {
             system,
@@ -67,6 +116,7 @@ impl<'a> Family<'a> {
             vectors: Vec::new(),
             resistive: vec![Vec::new(); system.problem.sheets.len()],
             inductive: Vec::new(),
+            elastance: Vec::new(),
             flux: Vec::new(),
             solves: 0,
             worst_bound: 0.0,
@@ -90,9 +140,11 @@ impl<'a> Family<'a> {
             Some(point) => point.zs_ohm.iter().map(|z| z.re.into()).collect(),
             None => return Ok(family),
         };
-        let mut solved = Vec::new();
+        let each = (SOLVE_PART * tolerance).clamp(SOLVE_LIMITS.0, SOLVE_LIMITS.1);
+        let mut solved: Vec<Vec<f64>> = Vec::new();
         for s in shifts {
-            let raw = system.raw(&family.drive, s.into(), &direct, SOLVE_TOLERANCE)?;
+            // the solution of the shift before is a good start
+            let raw = system.raw(&family.drive, s.into(), &direct, each, solved.last().map(Vec::as_slice))?;
             solved.push(raw.currents.iter().map(|i| i.re).collect());
             family.solves += 1;
         }
@@ -111,7 +163,7 @@ impl<'a> Family<'a> {
             }
             let point = &points[worst.1];
             let s = Complex64::new(0.0, 2.0 * PI * point.frequency_hz);
-            let raw = system.raw(&family.drive, s, &point.zs_ohm, SOLVE_TOLERANCE)?;
+            let raw = system.raw(&family.drive, s, &point.zs_ohm, each, None)?;
             family.solves += 1;
             let before = family.vectors.len();
             let parts =
@@ -184,13 +236,20 @@ impl<'a> Family<'a> {
         let system = self.system;
         let sheets = system.problem.sheets.len();
         self.inductive = grow(&self.inductive);
+        self.elastance = grow(&self.elastance);
         self.resistive = self.resistive.iter().map(|matrix| grow(matrix)).collect();
         let nothing = vec![Complex64::default(); sheets];
         let one = Complex64::new(1.0, 0.0);
         // s = 1 with no resistance applies L; the verticals enter by their own currents
         let projector = &system.projector;
-        let mut inductance =
-            Impedance::bare(&system.problem, &system.branches, &system.coupling, projector, one, &nothing);
+        let mut inductance = Impedance::<f64>::bare(
+            &system.problem,
+            &system.branches,
+            &system.coupling,
+            projector,
+            one,
+            &nothing,
+        );
         let faces = system.branches.faces();
         let mut voltages = vec![Complex64::default(); system.branches.len()];
         for row in first..new {
@@ -217,6 +276,13 @@ impl<'a> Family<'a> {
                     self.resistive[sheet][column * new + row] = value;
                 }
             }
+            let gaps = system.branches.first_gap();
+            for column in 0..new {
+                let both = self.vectors[row][gaps..].iter().zip(&self.vectors[column][gaps..]);
+                let value = both.zip(&system.branches.facing).map(|((a, b), (_, _, c))| a * b / c).sum();
+                self.elastance[row * new + column] = value;
+                self.elastance[column * new + row] = value;
+            }
             self.flux.push(product(&self.drive.flux, &self.vectors[row][..faces]));
         }
     }
@@ -228,6 +294,9 @@ impl<'a> Family<'a> {
         for (resistive, zs) in self.resistive.iter().zip(zs) {
             matrix.iter_mut().zip(resistive).for_each(|(z, r)| *z += zs * r);
         }
+        // gaps are open at DC
+        let shift = if s == Complex64::default() { OPEN_SHIFT.into() } else { s };
+        matrix.iter_mut().zip(&self.elastance).for_each(|(z, e)| *z += e / shift);
         let faces = self.system.branches.faces();
         for (index, vertical) in self.system.problem.verticals.iter().enumerate() {
             let impedance = vertical_impedance(vertical, s);
@@ -243,7 +312,7 @@ impl<'a> Family<'a> {
     }
 
     /// Coefficients of start (1) and basis at one operating point.
-    fn coefficients(&self, point: &OperatingPoint) -> Vec<Complex64> {
+    pub(super) fn coefficients(&self, point: &OperatingPoint) -> Vec<Complex64> {
         let s = Complex64::new(0.0, 2.0 * PI * point.frequency_hz);
         let rows = self.vectors.len();
         let matrix = self.matrix(s, &point.zs_ohm);
@@ -267,6 +336,16 @@ impl<'a> Family<'a> {
             sum += y[row] * (line + 2.0 * s * self.flux[row]);
         }
         sum
+    }
+
+    /// Current in A through each vertical at one operating point: costs nothing.
+    pub fn verticals(&self, point: &OperatingPoint) -> Vec<Complex64> {
+        let range = self.system.branches.faces()..self.system.branches.first_gap();
+        let mut currents = vec![Complex64::default(); range.len()];
+        for (y, vector) in self.coefficients(point).iter().zip(&self.vectors) {
+            currents.iter_mut().zip(&vector[range.clone()]).for_each(|(i, v)| *i += y * v);
+        }
+        currents
     }
 
     fn currents(&self, point: &OperatingPoint) -> Vec<Complex64> {
@@ -298,7 +377,7 @@ impl<'a> Family<'a> {
         let mut voltage = vec![Complex64::default(); currents.len()];
         let problem = &system.problem;
         let mut law =
-            Impedance::bare(problem, &system.branches, &system.coupling, &projector, s, &point.zs_ohm);
+            Impedance::<f64>::bare(problem, &system.branches, &system.coupling, &projector, s, &point.zs_ohm);
         law.apply(&currents, &mut voltage);
         let size = dot(&conjugate(&currents), &voltage);
         // R + w L of the solution
@@ -308,7 +387,7 @@ impl<'a> Family<'a> {
         let potential = projector.take_out_potential(&system.branches, &mut voltage);
         let real: Vec<Complex64> = point.zs_ohm.iter().map(|z| Complex64::from(z.re)).collect();
         let mut positive =
-            Impedance::new(problem, &system.branches, &system.coupling, &projector, w.into(), &real);
+            Impedance::<f64>::new(problem, &system.branches, &system.coupling, &projector, w.into(), &real);
         let mut answer = vec![Complex64::default(); currents.len()];
         positive.precondition(&voltage, &mut answer);
         let dual = dot(&conjugate(&voltage), &answer).re.max(0.0);

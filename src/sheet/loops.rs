@@ -17,7 +17,7 @@
 
 use super::branches::Branches;
 use super::kernel;
-use super::operator::{dot, inverse_symbols, mix_sheets, norm};
+use super::operator::{dot, inverse_symbols, mix_sheets, norm, triangle_index};
 use super::projector::root;
 use crate::math::filter::{Filter, Scratch};
 use num_complex::Complex64;
@@ -208,19 +208,9 @@ impl Loops {
             let mut mixed = vec![Complex64::default(); sheets];
             self.padded.apply(&from, &mut to, &mut desk.scratch, |kx, columns| {
                 let row = kx.min(px - kx) * half;
-                for ky in 0..py {
-                    let at = row + ky.min(py - ky);
-                    if sheets == 1 {
-                        columns[ky] *= law.s * self.spectra[0][at];
-                        continue;
-                    }
-                    for (p, mix) in mixed.iter_mut().enumerate() {
-                        let terms = (0..sheets)
-                            .map(|q| columns[q * py + ky] * self.spectra[self.pair[p * sheets + q]][at]);
-                        *mix = law.s * terms.sum::<Complex64>();
-                    }
-                    mixed.iter().enumerate().for_each(|(p, mix)| columns[p * py + ky] = *mix);
-                }
+                let table = |p: usize, q: usize| &self.spectra[self.pair[p * sheets + q]][row..row + half];
+                mix_sheets(table, columns, py, &mut mixed);
+                columns.iter_mut().for_each(|value| *value *= law.s);
             });
         }
         self.currents(branches, &desk.corners, &mut desk.currents);
@@ -251,33 +241,33 @@ impl Loops {
         let from: Vec<&[Complex64]> = desk.corners.chunks_exact(corners).collect();
         let mut to: Vec<&mut [Complex64]> = desk.out.chunks_exact_mut(corners).collect();
         let (px, py) = self.torus.size();
-        let (half, triangle) = (py / 2 + 1, sheets * (sheets + 1) / 2);
-        let mut mixed = vec![Complex64::default(); sheets];
+        let half = py / 2 + 1;
+        let modes = inverse.len() / (sheets * (sheets + 1) / 2);
+        let mut mixed = Vec::new();
         self.torus.apply(&from, &mut to, &mut desk.scratch, |kx, columns| {
             let row = kx.min(px - kx) * half;
-            for ky in 0..py {
-                let table = &inverse[(row + ky.min(py - ky)) * triangle..][..triangle];
-                mix_sheets(table, columns, (ky, py), &mut mixed);
-            }
+            let table = |p: usize, q: usize| &inverse[triangle_index(p, q, sheets) * modes + row..][..half];
+            mix_sheets(table, columns, py, &mut mixed);
         });
         self.restrict(&desk.out, result);
         result.iter_mut().zip(&self.count).for_each(|(z, count)| *z /= count);
     }
 
     /// Inverse symbols 1/(kh^2 (Zs + s L^)) on the torus, divided by the number of its points.
-    fn inverse(&self, law: &Law<'_>, sheets: usize) -> Vec<Complex64> {
+    fn inverse(&self, law: &Law<'_>) -> Vec<Complex64> {
         let (px, py) = self.torus.size();
-        let mut inverse = inverse_symbols(law.s, law.zs, &self.pair, &self.symbols, px * py);
-        let triangle = sheets * (sheets + 1) / 2;
+        let mut inverse: Vec<Complex64> = inverse_symbols(law.s, law.zs, &self.pair, &self.symbols, px * py);
         let half = py / 2 + 1;
+        let modes = (px / 2 + 1) * half;
         let square = |m: usize, size: usize| {
             let sine = libm::sin(std::f64::consts::PI * m as f64 / size as f64);
             4.0 * sine * sine
         };
         let lowest = square(1, px.max(py).max(2));
-        for (mode, entry) in inverse.chunks_exact_mut(triangle).enumerate() {
+        for (at, value) in inverse.iter_mut().enumerate() {
+            let mode = at % modes;
             let k2 = square(mode / half, px) + square(mode % half, py);
-            entry.iter_mut().for_each(|value| *value /= k2.max(lowest));
+            *value /= k2.max(lowest);
         }
         inverse
     }
@@ -303,7 +293,7 @@ impl Loops {
             voltages: vec![zero; branches.faces()],
             scratch: Scratch::default(),
         };
-        let inverse = self.inverse(law, sheets);
+        let inverse = self.inverse(law);
         let mut residual = vec![zero; unknowns];
         self.add_emf(branches, voltage, &mut desk.out);
         self.restrict(&desk.out, &mut residual);

@@ -82,6 +82,17 @@ pub struct Vertical {
     pub capacitance_f: Option<f64>,
 }
 
+/// Capacitance between two facing sheets, spread evenly over their area: it joins every cell of one with the cell above
+/// or below, where both are copper and no copper of a third sheet lies between. It carries displacement current and is
+/// open at DC.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Gap {
+    /// Indices of the sheets; current is positive from the first to the second.
+    pub sheets: (usize, usize),
+    /// Capacitance per area in F/m^2, permittivity over thickness.
+    pub farad_per_m2: f64,
+}
+
 /// How the current spreads over a source strip's width.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub enum StripProfile {
@@ -126,4 +137,6 @@ pub struct Problem {
     pub sheets: Vec<Sheet>,
     /// Verticals between sheets (or between two places of one sheet).
     pub verticals: Vec<Vertical>,
+    /// Capacitance between facing sheets.
+    pub gaps: Vec<Gap>,
 }

@@ -11,6 +11,8 @@ pub struct Solution {
     pub jy: Vec<Vec<Complex64>>,
     /// Current in A through each vertical, positive from `from` to `to`.
     pub verticals: Vec<Complex64>,
+    /// For each gap and cell the displacement current in A from the gap's first sheet to its second.
+    pub displacement: Vec<Vec<Complex64>>,
     /// For each sheet and cell the potential in V against some cell of the same connected copper (zero without copper);
     /// differences are those along the copper, without the EMF of the fields.
     pub potential_v: Vec<Vec<Complex64>>,
@@ -36,9 +38,9 @@ pub enum SolveFailure {
         /// Net current in A into the first island.
         current_a: f64,
     },
-    /// A landing patch has no copper cell.
+    /// A landing patch has no copper cell, or a gap names a sheet that does not exist.
     NoCopper {
-        /// Index of the injection or vertical.
+        /// Index of the injection or vertical; gaps count on after the verticals.
         index: usize,
     },
     /// The graph of cells could not be factored: out of memory.

@@ -16,6 +16,7 @@ use super::operator::{Coupling, Impedance, dot, norm, typical, vertical_impedanc
 use super::projector::Projector;
 use super::source;
 use super::{Injection, Problem, Solution, SolveFailure, SourceStrip};
+use crate::math::real::{complex_double, complex_of};
 use crate::unit::constants::MU0;
 use num_complex::Complex64;
 use std::sync::Arc;
@@ -47,7 +48,7 @@ pub struct Prepared {
     pub entering: Vec<f64>,
     /// Potential flow of the entering currents on the branches in A, with the base weights of the system.
     pub(super) start: Vec<f64>,
-    /// Size of the flux without its potential part in V s.
+    /// Size of the flux through the faces without its potential part in V s.
     driving: f64,
 }
 
@@ -72,6 +73,12 @@ pub(super) struct Raw {
 
 /// Steps after which a solve is given up.
 const MOST_STEPS: usize = 400;
+/// Rounds after which a solve is given up.
+const MOST_ROUNDS: usize = 8;
+/// Residual to which an iteration in single precision is trusted.
+const SINGLE_REDUCTION: f64 = 1e-5;
+/// Steps in single precision without halving after which rounding has won.
+const SINGLE_PATIENCE: usize = 6;
 
 impl System {
     /// Numbers the branches, factors the graph Laplacian and transforms the kernels of `problem`.
@@ -111,7 +118,7 @@ impl System {
         let mut driving: Vec<Complex64> = flux.iter().map(|&a| a.into()).collect();
         driving.resize(self.branches.len(), Complex64::default());
         self.projector.take_out_potential(&self.branches, &mut driving);
-        Ok(Prepared { flux, entering, start, driving: norm(&driving) })
+        Ok(Prepared { flux, entering, start, driving: norm(&driving[..self.branches.faces()]) })
     }
 
     /// Solves for one drive at one frequency to a relative residual of `tolerance`.
@@ -132,64 +139,113 @@ impl System {
         tolerance: f64,
     ) -> Result<Solution, SolveFailure> {
         let s = Complex64::new(0.0, 2.0 * std::f64::consts::PI * point.frequency_hz);
-        let raw = self.raw(drive, s, &point.zs_ohm, tolerance)?;
+        let raw = self.raw(drive, s, &point.zs_ohm, tolerance, None)?;
         Ok(self.solution(&raw.currents, &raw.potential, raw.impedance, raw.residual, raw.steps))
     }
 
-    /// Branch currents at the complex frequency `s`.
+    /// Branch currents at the complex frequency `s`; `near` are those of a frequency nearby.
     pub(super) fn raw(
         &self,
         drive: &Prepared,
         s: Complex64,
         zs: &[Complex64],
         tolerance: f64,
+        near: Option<&[f64]>,
     ) -> Result<Raw, SolveFailure> {
         let projector = self.projector_at(s, zs)?;
         self.check_balance(&projector, &drive.entering)?;
         let branches = &self.branches;
         let loops = self.loops.as_ref().filter(|_| self.loops_pay(s, zs));
-        let make = if loops.is_some() { Impedance::bare } else { Impedance::new };
-        let mut operator = make(&self.problem, branches, &self.coupling, &projector, s, zs);
+        let bare = Impedance::<f64>::bare;
+        let mut operator = bare(&self.problem, branches, &self.coupling, &projector, s, zs);
         let emf = self.emf(drive, s);
-        let mut currents: Vec<Complex64> = if Arc::ptr_eq(&projector, &self.projector) {
+        let suits = Arc::ptr_eq(&projector, &self.projector);
+        let mut currents: Vec<Complex64> = if suits {
             drive.start.iter().map(|&i| i.into()).collect()
         } else {
             self.potential_flow(&projector, &drive.entering)
         };
         // the voltages that drive the currents: induced ones without their potential part, resistive ones of the start
-        let size = s.norm() * drive.driving + projector.size(branches, &operator.resistive(&currents));
+        let size = s.norm() * drive.driving + operator.resistive_size(&currents);
         let mut steps = 0;
         let mut voltage = vec![Complex64::default(); branches.len()];
-        if loops.is_none() {
-            (steps, _) = operator.iterate(&emf, &mut currents, tolerance * size, MOST_STEPS);
-            // rounding of many steps: bring the divergence back
-            let mut surplus = branches.divergence(&currents);
-            surplus.iter_mut().zip(&drive.entering).for_each(|(leaves, enters)| *leaves -= enters);
-            let potential = projector.potential(&surplus);
-            branches.subtract_gradient(&potential, Some(&projector.conductance), &mut currents);
+        if let Some(near) = near {
+            currents = near.iter().map(|&i| i.into()).collect();
+            // a gap that was open may carry now, a vertical that carried may be open
+            let gaps = branches.first_gap();
+            for (i, _) in currents[branches.faces()..gaps]
+                .iter_mut()
+                .zip(&projector.conductance)
+                .filter(|(_, g)| **g == 0.0)
+            {
+                *i = Complex64::default();
+            }
+            self.balance(&projector, drive, &mut currents);
         }
-        // what is left of the voltage law; the size of the EMF round loops is another measure, so that loops are
-        // added until the law holds
+        // Rounds end when the voltage law holds in double precision. A round solves for what is left, by loops (where
+        // the EMF round loops is another measure) or by projection in single precision, which is accurate to some
+        // digits of what is left; if that does not help, in double precision.
+        let mut single: Option<Impedance<'_, f32>> = None;
         let mut rounds = 0;
+        let mut before = f64::INFINITY;
+        // the voltage of a vertical of high impedance drowns that of the faces in single precision
+        let mut doubtful = projector.conductance.iter().any(|&g| g > 0.0 && g < 1.0);
         let (impedance, potential, left) = loop {
             operator.apply(&currents, &mut voltage);
             voltage.iter_mut().zip(&emf).for_each(|(v, e)| *v += e);
             let impedance = dot(&currents, &voltage) + dot(&currents, &emf);
             let potential = projector.take_out_potential(branches, &mut voltage);
-            let left = projector.size(branches, &voltage);
-            let Some(loops) = loops.filter(|_| left > tolerance * size && rounds < 4) else {
+            let left = operator.size(&voltage);
+            if left <= tolerance * size || rounds == MOST_ROUNDS || steps >= MOST_STEPS || !left.is_finite() {
                 break (impedance, potential, left);
-            };
-            let reduction = (0.5 * tolerance * size / left).min(0.1);
+            }
             let most = MOST_STEPS - steps;
-            steps += loops.iterate(branches, &operator.law(), &voltage, &mut currents, reduction, most);
+            let reduction = 0.5 * tolerance * size / left;
             rounds += 1;
+            if let Some(loops) = loops {
+                steps += loops.iterate(
+                    branches,
+                    &operator.law(),
+                    &voltage,
+                    &mut currents,
+                    reduction.min(0.1),
+                    most,
+                );
+                continue;
+            }
+            doubtful |= left > 0.1 * before;
+            if !doubtful {
+                before = left;
+                let make = || Impedance::new(&self.problem, branches, &self.coupling, &projector, s, zs);
+                let operator = single.get_or_insert_with(make);
+                let residual = voltage.iter().map(|v| complex_of(-v / left)).collect();
+                let mut change = vec![complex_of(Complex64::default()); branches.len()];
+                let reduction = reduction.max(SINGLE_REDUCTION);
+                steps += operator.iterate(residual, &mut change, reduction, (most, SINGLE_PATIENCE)).0;
+                currents.iter_mut().zip(&change).for_each(|(i, c)| *i += left * complex_double(*c));
+            } else {
+                let make = Impedance::<f64>::new;
+                let mut operator = make(&self.problem, branches, &self.coupling, &projector, s, zs);
+                voltage.iter_mut().for_each(|v| *v = -*v);
+                let residual = std::mem::take(&mut voltage);
+                steps += operator.iterate(residual, &mut currents, 0.5 * tolerance * size, (most, most)).0;
+                voltage = vec![Complex64::default(); branches.len()];
+            }
+            // rounding of many steps
+            self.balance(&projector, drive, &mut currents);
         };
         let residual = if size > 0.0 { left / size } else { 0.0 };
         if residual.is_nan() || residual > 1.01 * tolerance.max(1e-11) {
             return Err(SolveFailure::NoConvergence { steps, residual, tolerance });
         }
         Ok(Raw { currents, potential, impedance, residual, steps })
+    }
+
+    /// Brings the divergence of `currents` back to what enters.
+    fn balance(&self, projector: &Projector, drive: &Prepared, currents: &mut [Complex64]) {
+        let mut surplus = self.branches.divergence(currents);
+        surplus.iter_mut().zip(&drive.entering).for_each(|(leaves, enters)| *leaves -= enters);
+        projector.take_up(&self.branches, &surplus, currents);
     }
 
     /// EMF of the strips on every branch at `s`.
@@ -240,8 +296,7 @@ impl System {
     fn potential_flow(&self, projector: &Projector, entering: &[f64]) -> Vec<Complex64> {
         let entering: Vec<Complex64> = entering.iter().map(|&a| a.into()).collect();
         let mut currents = vec![Complex64::default(); self.branches.len()];
-        let flow = projector.potential(&entering);
-        self.branches.subtract_gradient(&flow, Some(&projector.conductance), &mut currents);
+        projector.take_up(&self.branches, &entering, &mut currents);
         currents.iter_mut().for_each(|i| *i = -*i);
         currents
     }
@@ -252,8 +307,14 @@ impl System {
         let off: Vec<Complex64> = a.iter().zip(&b).map(|(a, b)| a - b).collect();
         let s = Complex64::new(0.0, 2.0 * std::f64::consts::PI * point.frequency_hz);
         let Ok(projector) = self.projector_at(s, &point.zs_ohm) else { return f64::NAN };
-        let mut law =
-            Impedance::bare(&self.problem, &self.branches, &self.coupling, &projector, s, &point.zs_ohm);
+        let mut law = Impedance::<f64>::bare(
+            &self.problem,
+            &self.branches,
+            &self.coupling,
+            &projector,
+            s,
+            &point.zs_ohm,
+        );
         let mut size = |currents: &[Complex64]| {
             let mut voltage = vec![Complex64::default(); currents.len()];
             law.apply(currents, &mut voltage);
@@ -272,6 +333,9 @@ impl System {
             currents.extend_from_slice(&jy[..self.branches.cells()]);
         }
         currents.extend_from_slice(&solution.verticals);
+        for (cells, through) in self.branches.gap_cells.iter().zip(&solution.displacement) {
+            currents.extend(cells.iter().map(|&cell| through[cell as usize]));
+        }
         currents
     }
 
@@ -299,10 +363,13 @@ impl System {
                 }
             })
             .collect();
-        if suits == self.projector.conductance {
-            return Ok(self.projector.clone());
-        }
-        Ok(Arc::new(Projector::new(&self.branches, suits)?))
+        let open = s == Complex64::default() && self.projector.joins_gaps();
+        let projector = match suits == self.projector.conductance {
+            true if !open => return Ok(self.projector.clone()),
+            true => self.projector.as_ref().clone(),
+            false => Projector::new(&self.branches, suits)?,
+        };
+        Ok(Arc::new(if open { projector.with_open_gaps() } else { projector }))
     }
 
     /// The net current of every connected piece of copper must vanish.
@@ -310,18 +377,17 @@ impl System {
         let mut net = vec![0.0; entering.len()];
         let mut total = 0.0;
         for (node, &current) in entering.iter().enumerate() {
-            net[projector.piece[node] as usize] += current;
+            net[projector.joined(node) as usize] += current;
             total += current.abs();
         }
-        let off = |piece: &&u32| net[**piece as usize].abs() > 1e-9 * total;
+        let off = |node: usize| net[projector.joined(node) as usize].abs() > 1e-9 * total;
         let lands = |node: usize| entering[node] != 0.0;
-        let Some(first) = (0..entering.len()).find(|&node| lands(node) && off(&&projector.piece[node]))
-        else {
+        let Some(first) = (0..entering.len()).find(|&node| lands(node) && off(node)) else {
             return Ok(());
         };
-        let piece = projector.piece[first];
-        let second = (0..entering.len())
-            .find(|&node| lands(node) && projector.piece[node] != piece && off(&&projector.piece[node]));
+        let piece = projector.joined(first);
+        let second =
+            (0..entering.len()).find(|&node| lands(node) && projector.joined(node) != piece && off(node));
         let cell = |wanted: usize| {
             let at = self.branches.node.iter().position(|&node| node as usize == wanted && node != NO_NODE);
             at.unwrap_or(0) % self.branches.cells()
@@ -356,11 +422,17 @@ impl System {
             let at = |&node: &u32| if node == NO_NODE { zero } else { potential[node as usize] };
             potentials.push(nodes.iter().map(at).collect());
         }
+        let mut displaced = currents[branches.first_gap()..].iter();
+        let mut displacement = vec![vec![zero; nx * ny]; branches.gap_cells.len()];
+        for (cells, through) in branches.gap_cells.iter().zip(&mut displacement) {
+            cells.iter().zip(&mut displaced).for_each(|(&cell, current)| through[cell as usize] = *current);
+        }
         let outside_v = potential[branches.copper_nodes..].to_vec();
         Solution {
             jx,
             jy,
-            verticals: currents[branches.faces()..].to_vec(),
+            verticals: currents[branches.faces()..branches.first_gap()].to_vec(),
+            displacement,
             potential_v: potentials,
             outside_v,
             sheet_impedance_ohm: impedance,

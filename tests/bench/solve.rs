@@ -38,7 +38,7 @@ fn board(cell_m: f64, sheets: usize, vias: usize) -> (Problem, Drive) {
     let (nx, ny) = ((0.1 / cell_m).round() as usize, (0.08 / cell_m).round() as usize);
     let grid = Grid { origin: Point::new(0.0, 0.0), cell_m, nx, ny };
     let mut places = Places(7);
-    let mut problem = Problem { grid, sheets: Vec::new(), verticals: Vec::new() };
+    let mut problem = Problem { grid, sheets: Vec::new(), verticals: Vec::new(), gaps: Vec::new() };
     for sheet in 0..sheets {
         let mut copper = vec![true; grid.len()];
         let mut voids: Vec<Point> = Vec::new();

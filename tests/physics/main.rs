@@ -25,9 +25,13 @@
 //! | steps with 2, 100, 400 vias, d and d/2 | each other | preconditioner | 1/4, 1/3 | - |
 //! | densities on two sheets from 1 MHz | 2 x 2 system in wave numbers | bonded at the ends | 2 % + 0.2 % of the peak | derived here |
 //! | loop inductance of a strip, edge-crowded | Hammerstad and Jensen L' | perfect plane | 2 % (even: 2.6 to 5.9 % more) | `spread::microstrip` |
+//! | displacement between two plates | eps A/d, lambda/2 resonance | plate capacitor, parallel plates | 1e-4, 4 % | textbook |
 //! | U-shaped track, share beyond the middle | endless resistive sheet | plane of five times the loop | 0.03 of I | derived, see `lines` |
 //! | reduced basis | direct solves at 40 frequencies | same system | its bound, 1e-3 | reduced basis method |
+//! | sums over spectral lines from a Gram matrix | explicit sum, lines solved directly | linear algebra | 1e-12, 1e-3 | - |
 //! | Z_AB | Z_BA | Lorentz reciprocity | 1e-6 of sqrt abs(Z_AA Z_BB) | - |
+//! | mutual inductance of strips | parallel, meeting, skew filaments; minus the image over a plane | Neumann's integral | 1e-6 (strips 1e-5) | Grover 1946; derived here |
+//! | real part of a matrix of ten paths | positive | passivity | 1e-9 of the largest eigenvalue | - |
 //! | bits with one thread | bits with many | fixed order of sums | equal | - |
 
 #![allow(clippy::unwrap_used)] // a failed step of a test is a failed test
@@ -41,8 +45,10 @@ mod dc;
 mod dense;
 mod edges;
 mod family;
+mod gaps;
 mod kernels;
 mod lines;
+mod mutual;
 mod patches;
 mod reciprocity;
 mod sheets;

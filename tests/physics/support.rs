@@ -8,7 +8,12 @@ use num_complex::Complex64;
 /// A full rectangle of copper at height zero.
 pub fn plate(nx: usize, ny: usize, cell_m: f64) -> Problem {
     let grid = Grid { origin: Point::new(0.0, 0.0), cell_m, nx, ny };
-    Problem { grid, sheets: vec![Sheet::new(vec![true; nx * ny], 0.0)], verticals: Vec::new() }
+    Problem {
+        grid,
+        sheets: vec![Sheet::new(vec![true; nx * ny], 0.0)],
+        verticals: Vec::new(),
+        gaps: Vec::new(),
+    }
 }
 
 /// Everything at one cell.
