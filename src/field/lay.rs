@@ -86,7 +86,9 @@ impl<'p> Lay<'p> {
             Entry { end, current, what: landing.what.clone() }
         };
         // The return enters the plane at the receiver and leaves it at the driver, against the track's current.
-        let entries = vec![entry(&chart.receiver_landing, 1.0), entry(&chart.driver_landing, -1.0)];
+        let ends = [(&chart.receiver_landing, 1.0), (&chart.driver_landing, -1.0)];
+        let ends = ends.into_iter().filter(|end| end.0.radius_m > 0.0);
+        let entries = ends.map(|(landing, current)| entry(landing, current)).collect();
         Self {
             name: &path.name,
             legs: &path.track[chart.legs.clone()],

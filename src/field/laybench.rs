@@ -25,7 +25,7 @@ const LEAST_JOINT: f64 = 1e-3;
 pub struct LayBench<'w, 'a> {
     workshop: &'w Workshop<'a>,
     lay: Lay<'w>,
-    source: Source<'w>,
+    pub(super) source: Source<'w>,
     /// The cells that stand for its copper, and whether they can be twice as large.
     view: View,
     notes: Vec<Diagnostic>,
@@ -92,7 +92,7 @@ impl<'w, 'a> LayBench<'w, 'a> {
         Ok(())
     }
 
-    fn stack(&self, frequency_hz: f64) -> Stack {
+    pub(super) fn stack(&self, frequency_hz: f64) -> Stack {
         Stack::new(&self.workshop.board.stackup, self.source.stack_part(frequency_hz))
     }
 
@@ -105,6 +105,13 @@ impl<'w, 'a> LayBench<'w, 'a> {
             Ok((stage, entered))
         };
         Ok(Pair { kept: stage(Voids::Kept)?, filled: stage(Voids::Filled)? })
+    }
+
+    /// The copper as it is on the largest cells that can stand for it, and the currents that enter.
+    pub(super) fn coarsest(&self, stack: &Stack) -> Option<(Arc<Stage>, Entered)> {
+        let coarse = View { cell_m: 2.0 * self.view.cell_m, ..self.view.clone() };
+        let pair = self.pair(&coarse, stack).or_else(|_| self.pair(&self.view, stack));
+        pair.ok().map(|pair| pair.kept)
     }
 
     fn enter(&self, stage: &Stage) -> Result<Entered, Diagnostic> {
@@ -282,6 +289,7 @@ impl<'w, 'a> LayBench<'w, 'a> {
             zs_ohm: Some(self.source.foil(layer).zs_ohm(frequency_hz)),
             residual: Some(solution.residual),
             loop_impedance_ohm: Some(track_ohm + solution.sheet_impedance_ohm),
+            band_density: None,
         }
     }
 

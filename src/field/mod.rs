@@ -1,7 +1,9 @@
 //! The return-current density of one path on the planes that carry it at one frequency, and how it comes from a model.
 
+mod band;
 mod complaint;
 mod coupling;
+mod curve;
 mod foil;
 mod lay;
 mod laybench;
@@ -16,7 +18,9 @@ pub mod track;
 mod wiring;
 mod workshop;
 
+pub use band::BandDensity;
 pub use coupling::Couplings;
+pub use curve::LoopCurve;
 pub use foil::Foil;
 pub use mask::{Mask, NO_ISLAND, TooCoarse};
 pub use pieces::Copper;
@@ -81,6 +85,9 @@ pub struct ReturnMap {
     /// Loop impedance of track and plane seen at the driver in ohm (resistance of the track included); none for the
     /// closed form.
     pub loop_impedance_ohm: Option<Complex64>,
+    /// For the map of a whole band of a drive: its rms density. The currents above then are their mean weighted by
+    /// power, see [`BandDensity`].
+    pub band_density: Option<BandDensity>,
 }
 
 /// What a joint (via, part, tie) carries of a path's return, per ampere of the driver's current. Of several joints at
@@ -109,8 +116,11 @@ impl ReturnMap {
         (kx, ky)
     }
 
-    /// Magnitude of the density in a cell in A/m per A: the root of |Kx|^2 + |Ky|^2.
+    /// Magnitude of the density in a cell in A/m per A: the root of |Kx|^2 + |Ky|^2, of a band its rms value.
     pub fn magnitude(&self, ix: usize, iy: usize) -> f64 {
+        if let Some(band) = &self.band_density {
+            return band.rms[self.grid.index(ix, iy)];
+        }
         let (kx, ky) = self.density(ix, iy);
         (kx.norm_sqr() + ky.norm_sqr()).sqrt()
     }

@@ -25,7 +25,12 @@ pub struct SpreadLeg {
     pub width_m: f64,
     /// Height over the plane in metres.
     pub height_m: f64,
+    /// Current from `from` to `to` in A per A of the driver's current.
+    pub current: f64,
 }
+
+/// Ends of legs nearer than this are one place, in metres.
+const SAME_M: f64 = 1e-7;
 
 /// In-phase return between the track and the distance `u_m` to one side, odd in u: -1/2 to 1/2.
 fn one_sided_share(u_m: f64, width_m: f64, height_m: f64) -> f64 {
@@ -43,9 +48,21 @@ enum Nearest {
     End,
 }
 
-/// Face currents (vertical faces, horizontal faces) per ampere of net current, as in a return map.
+/// Face currents (vertical faces, horizontal faces) per ampere of the driver's current, as in a return map: the sum over
+/// the ways that the legs make, each of which ends where the next leg starts elsewhere.
 pub fn face_currents(legs: &[SpreadLeg], grid: &Grid) -> (Vec<Complex64>, Vec<Complex64>) {
     let legs: Vec<SpreadLeg> = legs.iter().copied().filter(|leg| leg.from.distance(leg.to) > 0.0).collect();
+    let follows = |a: &SpreadLeg, b: &SpreadLeg| a.to.distance(b.from) < SAME_M;
+    let mut ways = legs.chunk_by(follows).map(|way| way_currents(way, grid));
+    let Some((mut jx, mut jy)) = ways.next() else { return way_currents(&[], grid) };
+    for (x, y) in ways {
+        jx.iter_mut().zip(x).for_each(|(sum, own)| *sum += own);
+        jy.iter_mut().zip(y).for_each(|(sum, own)| *sum += own);
+    }
+    (jx, jy)
+}
+
+fn way_currents(legs: &[SpreadLeg], grid: &Grid) -> (Vec<Complex64>, Vec<Complex64>) {
     let (nx, ny) = (grid.nx, grid.ny);
     let mut jx = vec![Complex64::new(0.0, 0.0); (nx + 1) * ny];
     let mut jy = vec![Complex64::new(0.0, 0.0); nx * (ny + 1)];
@@ -56,15 +73,15 @@ pub fn face_currents(legs: &[SpreadLeg], grid: &Grid) -> (Vec<Complex64>, Vec<Co
     const BLOCK: usize = 16;
     for by in (0..=ny).step_by(BLOCK) {
         for bx in (0..=nx).step_by(BLOCK) {
-            let near = candidates(&legs, corner(bx + BLOCK / 2, by + BLOCK / 2), BLOCK as f64 * grid.cell_m);
+            let near = candidates(legs, corner(bx + BLOCK / 2, by + BLOCK / 2), BLOCK as f64 * grid.cell_m);
             for iy in by..(by + BLOCK).min(ny + 1) {
                 for ix in bx..(bx + BLOCK).min(nx + 1) {
                     if iy < ny {
-                        let flux = crossing(&legs, &near, corner(ix, iy), corner(ix, iy + 1));
+                        let flux = crossing(legs, &near, corner(ix, iy), corner(ix, iy + 1));
                         jx[iy * (nx + 1) + ix] = Complex64::new(-flux, 0.0);
                     }
                     if ix < nx {
-                        let flux = crossing(&legs, &near, corner(ix, iy), corner(ix + 1, iy));
+                        let flux = crossing(legs, &near, corner(ix, iy), corner(ix + 1, iy));
                         jy[iy * nx + ix] = Complex64::new(flux, 0.0);
                     }
                 }
@@ -100,13 +117,13 @@ fn crossing(legs: &[SpreadLeg], near: &[usize], from: Point, to: Point) -> f64 {
         }
     }
     let (_, leg, part) = best;
-    let (SpreadLeg { width_m, height_m, .. }, measured) = (legs[leg], nearest(legs, leg, part));
+    let (SpreadLeg { width_m, height_m, current, .. }, measured) = (legs[leg], nearest(legs, leg, part));
     let share = |point: Point| match measured {
         Nearest::Leg(leg, unit) => one_sided_share(unit.cross(point - legs[leg].from), width_m, height_m),
         Nearest::Corner(leg, sign) => one_sided_share(sign * point.distance(legs[leg].to), width_m, height_m),
         Nearest::End => 0.0,
     };
-    share(to) - share(from)
+    current * (share(to) - share(from))
 }
 
 fn nearest(legs: &[SpreadLeg], leg: usize, part: f64) -> Nearest {

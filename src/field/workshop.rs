@@ -67,7 +67,7 @@ pub struct Bench<'w, 'a> {
     workshop: &'w Workshop<'a>,
     path: &'w PathPlan,
     charts: Vec<ChartPlan>,
-    lays: Vec<Result<LayBench<'w, 'a>, (Vec<usize>, Diagnostic)>>,
+    pub(super) lays: Vec<Result<LayBench<'w, 'a>, (Vec<usize>, Diagnostic)>>,
 }
 
 impl<'a> Workshop<'a> {
@@ -182,6 +182,7 @@ impl Bench<'_, '_> {
                 to: leg.to,
                 width_m: leg.width_m,
                 height_m: board.stackup.gap_m(leg.layer, chart.plane.layer),
+                current: leg.current,
             };
             let (jx, jy) = face_currents(&legs.iter().map(leg).collect::<Vec<_>>(), &grid);
             ReturnMap {
@@ -199,6 +200,7 @@ impl Bench<'_, '_> {
                 zs_ohm: None,
                 residual: None,
                 loop_impedance_ohm: None,
+                band_density: None,
             }
         };
         let (fine, coarse) = (map(chart.cell_m), map(2.0 * chart.cell_m));

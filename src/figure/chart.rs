@@ -4,7 +4,8 @@ use super::Figures;
 use super::compute::{Maps, Track, figures};
 use super::effect::{self, Effects};
 use crate::diag::Diagnostic;
-use crate::field::{Bench, JointCurrent, PlaneMaps, ReturnMap};
+use crate::diag::code::field as code;
+use crate::field::{Bench, JointCurrent, PlaneMaps, ReturnMap, Solved};
 use crate::plan::{ChartPlan, PathPlan};
 use crate::review::{Band, Zone};
 
@@ -34,7 +35,34 @@ pub struct ChartedPath {
     pub joints: Vec<JointCurrent>,
 }
 
-/// Solves `path`, which is on `bench`, at one frequency of a band.
+/// Solves `path`, which is on `bench`, in a band: over all lines of the path's drive there, or for 1 A at
+/// `frequency_hz` where it has no drive or the band has frequencies of its own.
+pub fn chart_band(
+    bench: &Bench,
+    path: &PathPlan,
+    band: (usize, &Band),
+    frequency_hz: f64,
+    zones: &[Zone],
+) -> ChartedPath {
+    let Some(spectrum) = path.signal.spectrum(band) else {
+        return chart_in_zones(bench, path, band.1, frequency_hz, zones);
+    };
+    match bench.solve_band(band.1, spectrum, path.signal.is_absolute) {
+        Some(solved) => of_path(solved, bench, path, (band.1, frequency_hz), zones),
+        None => {
+            let text = format!(
+                "no line of the drive of `{}` ({}) lies in band `{}`",
+                path.name, path.signal.drive, band.1.name
+            );
+            let silent = Diagnostic::note(code::BAND_SILENT, text);
+            let planes =
+                bench.charts().iter().map(|chart| Err(chart.withheld.clone().unwrap_or(silent.clone())));
+            ChartedPath { planes: planes.collect(), joints: Vec::new() }
+        }
+    }
+}
+
+/// Solves `path`, which is on `bench`, for 1 A at one frequency of a band.
 pub fn chart(bench: &Bench, path: &PathPlan, band: &Band, frequency_hz: f64) -> ChartedPath {
     chart_in_zones(bench, path, band, frequency_hz, &[])
 }
@@ -47,7 +75,16 @@ pub fn chart_in_zones(
     frequency_hz: f64,
     zones: &[Zone],
 ) -> ChartedPath {
-    let solved = bench.solve(band, frequency_hz);
+    of_path(bench.solve(band, frequency_hz), bench, path, (band, frequency_hz), zones)
+}
+
+fn of_path(
+    solved: Solved,
+    bench: &Bench,
+    path: &PathPlan,
+    (band, frequency_hz): (&Band, f64),
+    zones: &[Zone],
+) -> ChartedPath {
     let planes = solved.planes.into_iter().zip(bench.charts());
     let planes = planes.map(|(maps, chart)| Ok(charted(maps?, path, chart, band, frequency_hz, zones)));
     ChartedPath { planes: planes.collect(), joints: solved.joints }

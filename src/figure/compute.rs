@@ -135,7 +135,9 @@ impl Profile {
         let mut mean = vec![0.0; within_m.len()];
         let mut worst: Option<(f64, Point)> = None;
         for station in stations {
-            let shares = section::shares(map, station.at, station.along, &within_m);
+            let mut shares = section::shares(map, station.at, station.along, &within_m);
+            // The share of a branch is that of its own current.
+            shares.iter_mut().for_each(|share| *share /= station.current);
             let near = shares[3 * STEPS_PER_HEIGHT];
             if worst.is_none_or(|(least, _)| near < least) {
                 worst = Some((near, station.at));

@@ -26,7 +26,7 @@ pub mod station;
 pub mod stray;
 pub mod void;
 
-pub use chart::{Charted, ChartedPath, chart, chart_in_zones};
+pub use chart::{Charted, ChartedPath, chart, chart_band, chart_in_zones};
 pub use effect::{Effects, Placed, away_m, own_voids};
 pub use stray::Stray;
 pub use void::{VoidEffect, VoidEnd};

@@ -2,9 +2,9 @@
 
 use super::chart::Ground;
 use super::course::{self, Course};
-use super::route::{self, Port, Way};
+use super::route::Port;
 use super::terrain::Terrain;
-use super::{ChartPlan, PathPlan, Plan, conductors, stretch};
+use super::{ChartPlan, PathPlan, Plan, conductors, signal, stretch};
 use crate::board::Board;
 use crate::diag::Diagnostic;
 use crate::diag::code::plan as code;
@@ -66,12 +66,8 @@ impl<'b> Planner<'b> {
 
     fn path<'r>(&mut self, course: Course<'r>) -> Result<Draft<'r>, Diagnostic> {
         let board = self.terrain.board;
-        let mut way = Way::default();
-        for line in &course.lines {
-            let found = route::find(&self.terrain, &course.who, line, self.review.origin)
-                .map_err(|message| course.in_review("name", message))?;
-            way.join(found);
-        }
+        let (mut way, signal) =
+            signal::signal(&self.terrain, &course, &self.review.bands, self.review.origin)?;
         let (legs, stretches) = match course.plane {
             None => stretch::divide(&self.terrain, &course.own_nets(&self.terrain), &way.legs),
             Some(plane) => self.on_plane(plane, &course, std::mem::take(&mut way.legs))?,
@@ -89,6 +85,7 @@ impl<'b> Planner<'b> {
             receiver: label(course.lines[0].receiver()),
             track: legs,
             charts,
+            signal,
             ..PathPlan::default()
         };
         Ok(Draft { course, path, ports: way.ports })

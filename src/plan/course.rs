@@ -29,7 +29,6 @@ pub struct Course<'r> {
     /// The same at the receiver.
     pub receiver_landing: Option<&'r LandingRequest>,
     /// Drive, load, landing of the driver, budget.
-    #[allow(dead_code, reason = "read by what follows the plan of the way")]
     pub signal: &'r SignalRequest,
     place: Place<'r>,
 }

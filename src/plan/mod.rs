@@ -11,13 +11,16 @@ mod entry;
 mod extent;
 mod graph;
 mod landing;
+mod line;
 mod part;
 mod place;
 mod reach;
 mod request;
 mod route;
 mod sheets;
+mod signal;
 mod stretch;
+mod supply;
 mod terrain;
 mod tie;
 mod touch;
@@ -27,6 +30,7 @@ mod web;
 
 pub use build::build;
 pub use request::{apply_review, matches};
+pub use signal::SignalPlan;
 
 use crate::diag::Diagnostic;
 use crate::field::PlaneId;
@@ -70,6 +74,8 @@ pub struct PathPlan {
     pub valid_to_hz: f64,
     /// One entry for each plane that the track passes, in the order of the track.
     pub charts: Vec<ChartPlan>,
+    /// Spectrum of the drive by band, and what is assumed of the signal.
+    pub signal: SignalPlan,
 }
 
 /// A current that enters the conductors.

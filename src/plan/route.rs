@@ -37,6 +37,8 @@ pub struct Way {
     pub ports: Vec<Port>,
     /// Parts passed, branches, loops, pours and further receivers, stated.
     pub notes: Vec<Diagnostic>,
+    /// Whether the current comes back to the pin where it starts, so that nothing lands at the driver.
+    pub closed: bool,
 }
 
 /// A place where current of a way enters the conductors (positive) or leaves them.
@@ -116,6 +118,7 @@ pub fn find(terrain: &Terrain<'_>, who: &str, line: &Line, origin: Point) -> Res
     }
     ports.retain(|port| port.current != 0.0);
     way.ports = ports;
+    way.closed = line.receivers.iter().all(|receiver| receiver.0 == line.driver);
     Ok(way)
 }
 
@@ -124,6 +127,44 @@ fn listed_names(names: &[&str]) -> String {
 }
 
 impl Way {
+    /// Lets a part of the driver's return come through its supply: `feed` is the way from the planes to the supply
+    /// pin, whose current then does not leave the planes at the driver.
+    pub fn feed(&mut self, feed: Way) {
+        let part: f64 = feed
+            .ports
+            .iter()
+            .filter(|port| matches!(port.place, PortPlace::Receiver(_)))
+            .map(|port| port.current)
+            .sum();
+        if let Some(driver) = self.ports.iter_mut().find(|port| matches!(port.place, PortPlace::Driver(_))) {
+            driver.current += part;
+        }
+        let kept = feed.ports.into_iter().filter(|port| !matches!(port.place, PortPlace::Receiver(_)));
+        // The capacitor's ground pad is a place of its own, whatever the review says of the driver's landing.
+        self.ports.extend(kept.map(|port| match port.place {
+            PortPlace::Driver(pin) => Port { place: PortPlace::Pin(pin), ..port },
+            _ => port,
+        }));
+        self.ports.retain(|port| port.current != 0.0);
+        self.legs.extend(feed.legs);
+        self.notes.extend(feed.notes);
+    }
+
+    /// Closes the two lines of a pair inside the parts at their ends, straight from pad to pad: what both carry passes
+    /// from one to the other there, and only the difference of their currents lands.
+    pub fn close_pair(&mut self, terrain: &Terrain<'_>, positive: &Line, negative: &Line) {
+        let shared = positive.current.abs().min(negative.current.abs()) * positive.current.signum();
+        let ends = [(positive.receiver(), negative.receiver()), (negative.driver, positive.driver)];
+        for (from, to) in ends {
+            let [enter, leave] = [from, to].map(|pin| &terrain.board.pins[pin.0 as usize]);
+            if enter.part == leave.part {
+                let before = self.legs.len();
+                self.add_crossing(terrain, from, to);
+                self.legs[before..].iter_mut().for_each(|leg| leg.current = shared);
+            }
+        }
+    }
+
     /// Adds the way of another line of the same course; the two of a pair share their landings, so that only the
     /// difference of their currents lands.
     pub fn join(&mut self, other: Way) {

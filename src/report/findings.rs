@@ -7,7 +7,7 @@ use super::finding::{
     self, EffectsEntry, FigureEntry, FindingEntry, JointEntry, NoiseEntry, PlaneEntry, TransferEntry, figure,
 };
 use crate::diag::Diagnostic;
-use crate::field::{Couplings, JointCurrent, PlaneId, ReturnMap};
+use crate::field::{Couplings, JointCurrent, LoopCurve, PlaneId, ReturnMap};
 use crate::figure::{Effects, Figures};
 use crate::finding::Finding;
 use crate::finding::noise::Noise;
@@ -32,10 +32,30 @@ pub struct Findings {
     joints: Vec<JointsEntry>,
     transfer: Vec<TransferEntry>,
     noise: Vec<NoiseEntry>,
+    loops: Vec<LoopEntry>,
     skipped: Vec<MessageEntry>,
     messages: Vec<MessageEntry>,
     #[serde(skip)]
     origin: Point,
+}
+
+/// The loop of a path against frequency.
+#[derive(Clone, Debug, Serialize)]
+struct LoopEntry {
+    net: String,
+    frequency_hz: Vec<f64>,
+    resistance_ohm: Vec<f64>,
+    inductance_h: Vec<f64>,
+}
+
+/// Current and lines of a band of a drive.
+#[derive(Clone, Debug, Serialize)]
+struct DriveEntry {
+    drive: String,
+    /// Current of the band, rms; null where only the shape of the spectrum is known.
+    current_rms_a: Option<f64>,
+    lines: u64,
+    solved_hz: Vec<f64>,
 }
 
 #[derive(Clone, Debug, Serialize)]
@@ -61,6 +81,10 @@ struct MapEntry {
     track_width_m: f64,
     cell_m: Option<f64>,
     residual: Option<f64>,
+    /// Of a band map: what stands behind it; null for a map of 1 A at one frequency.
+    band_of_drive: Option<DriveEntry>,
+    /// What was assumed of current and return.
+    remarks: Vec<String>,
     driver_landing: LandingEntry,
     receiver_landing: LandingEntry,
     figures: Option<FiguresEntry>,
@@ -144,6 +168,7 @@ impl Findings {
             joints: Vec::new(),
             transfer: Vec::new(),
             noise: Vec::new(),
+            loops: Vec::new(),
             skipped: Vec::new(),
             messages: Vec::new(),
             origin,
@@ -168,6 +193,12 @@ impl Findings {
         });
         entry.cell_m = Some(map.grid.cell_m);
         entry.residual = map.residual;
+        entry.band_of_drive = map.band_density.as_ref().map(|band| DriveEntry {
+            drive: subject.net.signal.drive.clone(),
+            current_rms_a: band.current_rms_a,
+            lines: band.line_count,
+            solved_hz: band.solved.iter().map(|line| line.0).collect(),
+        });
         entry.figures = Some(self.figures(figures));
         entry.effects = Some(finding::effects(effects, self.origin));
         self.maps.push(entry);
@@ -203,6 +234,16 @@ impl Findings {
                 joints,
             });
         }
+    }
+
+    /// Adds the loop of a path against frequency.
+    pub fn add_loop(&mut self, net: &str, curve: &LoopCurve) {
+        self.loops.push(LoopEntry {
+            net: net.to_owned(),
+            frequency_hz: curve.frequency_hz.clone(),
+            resistance_ohm: curve.resistance_ohm.clone(),
+            inductance_h: curve.inductance_h.clone(),
+        });
     }
 
     /// Adds a map that was withheld, with the reason.
@@ -245,6 +286,8 @@ impl Findings {
             track_width_m: chart.width_m,
             cell_m: None,
             residual: None,
+            band_of_drive: None,
+            remarks: net.signal.remarks.clone(),
             driver_landing: landing(&chart.driver_landing),
             receiver_landing: landing(&chart.receiver_landing),
             figures: None,

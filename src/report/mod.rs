@@ -3,6 +3,7 @@
 mod conductors;
 mod contact;
 mod csv;
+mod current;
 mod finding;
 mod findings;
 mod json;

@@ -1,7 +1,8 @@
 //! The maps as numbers: one NPZ file for each map and an index, for NumPy and anything else that reads them.
 //!
 //! A file holds `kx` and `ky` (complex, 16 bytes, `[iy, ix]`, A/m per A, mean of a cell's two face currents divided
-//! by the cell) and `copper` (bool, same shape). Format: NPY version 1.0 inside a ZIP archive, as NumPy documents.
+//! by the cell) and `copper` (bool, same shape). Of a band of a drive `kx` and `ky` are the mean weighted by the power of
+//! the lines, and `k_rms` (8 bytes, A/m per A of band current) is the rms density. Format: NPY version 1.0 inside a ZIP archive, as NumPy documents.
 //! Checked by: tests/field/numbers.rs.
 
 use crate::field::ReturnMap;
@@ -75,6 +76,17 @@ struct Entry {
     zs_ohm: Option<[f64; 2]>,
     residual: Option<f64>,
     model: Option<&'static str>,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    band_density: Option<BandEntry>,
+}
+
+/// What stands behind the map of a band of a drive.
+#[derive(Serialize)]
+struct BandEntry {
+    current_rms_a: Option<f64>,
+    lines: u64,
+    solved_hz: Vec<f64>,
+    parts_of_power: Vec<f64>,
 }
 
 /// Index of the maps as JSON text; `origin` is the point of the files' coordinates that the review calls (0, 0).
@@ -113,6 +125,12 @@ fn described(entry: &Numbers, origin: Point) -> Entry {
                     Model::Sheet => "sheet",
                     Model::Spread => "spread",
                 }),
+                band_density: map.band_density.as_ref().map(|band| BandEntry {
+                    current_rms_a: band.current_rms_a,
+                    lines: band.line_count,
+                    solved_hz: band.solved.iter().map(|line| line.0).collect(),
+                    parts_of_power: band.solved.iter().map(|line| line.1).collect(),
+                }),
             }
         }
         Numbers::Withheld { net, plane: found, band, frequency_hz, reason } => Entry {
@@ -130,6 +148,7 @@ fn described(entry: &Numbers, origin: Point) -> Entry {
             zs_ohm: None,
             residual: None,
             model: None,
+            band_density: None,
         },
     }
 }
@@ -159,9 +178,11 @@ pub fn npz(map: &ReturnMap) -> std::io::Result<Vec<u8>> {
         .compression_method(CompressionMethod::Deflated)
         .compression_level(Some(1))
         .last_modified_time(DateTime::default());
-    for (name, kind, bytes) in
-        [("kx.npy", "<c16", &kx), ("ky.npy", "<c16", &ky), ("copper.npy", "|b1", &copper)]
-    {
+    let rms: Option<Vec<u8>> =
+        map.band_density.as_ref().map(|band| band.rms.iter().flat_map(|value| value.to_le_bytes()).collect());
+    let always = [("kx.npy", "<c16", &kx), ("ky.npy", "<c16", &ky), ("copper.npy", "|b1", &copper)];
+    let of_band = rms.iter().map(|rms| ("k_rms.npy", "<f8", rms));
+    for (name, kind, bytes) in always.into_iter().chain(of_band) {
         archive.start_file(name, options)?;
         archive.write_all(&npy_header(kind, ny, nx))?;
         archive.write_all(bytes)?;

@@ -47,6 +47,12 @@ struct NetEntry {
     width_mm: f64,
     entries: Vec<EntryEntry>,
     valid_to_hz: f64,
+    /// The drive in words; null without one, then maps are of 1 A.
+    drive: Option<String>,
+    /// Current of the drive in each band in amperes, rms, in the order of the bands; empty without an absolute drive.
+    band_current_rms_a: Vec<f64>,
+    /// What was assumed of current and return.
+    remarks: Vec<String>,
     charts: Vec<ChartEntry>,
 }
 
@@ -166,6 +172,19 @@ impl NetEntry {
             let _ = writeln!(text, "  return    {}", entry.in_words());
         }
         let _ = writeln!(text, "  holds     up to {}", quantity_text(self.valid_to_hz, "Hz"));
+        if let Some(drive) = &self.drive {
+            let currents: Vec<String> =
+                self.band_current_rms_a.iter().map(|&current| quantity_text(current, "A")).collect();
+            let in_bands = if currents.is_empty() {
+                String::new()
+            } else {
+                format!("; in the bands {}", currents.join(", "))
+            };
+            let _ = writeln!(text, "  drive     {drive}{in_bands}");
+        }
+        for remark in &self.remarks {
+            let _ = writeln!(text, "  assumed   {remark}");
+        }
         for chart in &self.charts {
             chart.write(text);
         }
@@ -220,11 +239,18 @@ fn net_entry(net: &PathPlan, entries: Vec<EntryEntry>, origin: Point) -> NetEntr
             layers.push(name);
         }
     }
+    let spectra = net.signal.spectra.iter().filter(|_| net.signal.is_absolute);
+    // Three digits: the exact value stands with each map.
+    let rounded = |current: f64| format!("{current:.2e}").parse().unwrap_or(current);
+    let currents = spectra.map(|band| rounded(band.current_rms_a)).collect();
     NetEntry {
         name: net.name.clone(),
         driver: net.driver.clone(),
         receiver: net.receiver.clone(),
         length_mm: length_m(&net.track) * 1e3,
+        drive: (!net.signal.drive.is_empty()).then(|| net.signal.drive.clone()),
+        band_current_rms_a: currents,
+        remarks: net.signal.remarks.clone(),
         layers,
         legs: net.track.len(),
         width_mm: width_m(&net.track) * 1e3,

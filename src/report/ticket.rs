@@ -1,6 +1,7 @@
 //! The ticket map of one net, plane and frequency: from plan, map and figures to a picture.
 
 use super::Picture;
+use super::current;
 use super::remark::{Remarks, joint_marks, result, worst_here};
 use super::words::{
     band_range, given_millimeters, hertz, hints_at_hazard, millimeters, percent, power_of_ten,
@@ -241,14 +242,21 @@ fn sheet(input: &TicketInput) -> TicketSheet {
         &[&net.name, &chart.plane.to_string(), &band.name, &map.frequency_hz.to_string(), &style.name],
     );
     let headline = headline(input);
-    let lead = format!(
-        "Return current of {} ({} to {}) on plane {} at {}, per ampere in the net. Seen from the top.",
+    let mut lead = format!(
+        "Return current of {} ({} to {}) on plane {} {}. Seen from the top.",
         shortened(Face::Regular, style.font.lead, &net.name, 70.0),
         shortened(Face::Regular, style.font.lead, &net.driver, 25.0),
         shortened(Face::Regular, style.font.lead, &net.receiver, 25.0),
         shortened(Face::Regular, style.font.lead, &chart.plane.to_string(), 35.0),
-        hertz(map.frequency_hz),
+        current::of_map(map, net),
     );
+    let assumed = plain(&current::assumed(net));
+    // Where the line has no room for it, it stands in the description.
+    let room = style.ticket.width - 2.0 * style.ticket.margin[0];
+    let longer = format!("{lead} {assumed}");
+    if !assumed.is_empty() && crate::draw::width_mm(Face::Regular, style.font.lead, &longer) <= room {
+        lead = longer;
+    }
     let caution = caution_text(board, map.model, map.frequency_hz, &[&net.name, &chart.plane.net]);
     let mut panels = vec![Panel::figures(key_figures(input), style)];
     if !remarks.listed.is_empty() {
@@ -259,9 +267,10 @@ fn sheet(input: &TicketInput) -> TicketSheet {
         panels.push(Panel::locator(board.outline.clone(), window, style));
     }
     let description = format!(
-        "{}. {} {} {}{caution}",
+        "{}. {}{} {} {}{caution}",
         headline_text(input, &plain(&net.name)),
         plain_lead(input),
+        if assumed.is_empty() { assumed } else { format!(" {assumed}") },
         figures_text(figures),
         remarks.sentences()
     );
@@ -350,12 +359,12 @@ fn headline(input: &TicketInput) -> String {
 
 fn plain_lead(input: &TicketInput) -> String {
     format!(
-        "Return current of net {} from {} to {} on plane {} at {}, per ampere in the net, seen from the top.",
+        "Return current of net {} from {} to {} on plane {} {}, seen from the top.",
         plain(&input.net.name),
         plain(&input.net.driver),
         plain(&input.net.receiver),
         plain(&input.chart.plane.to_string()),
-        hertz(input.map.frequency_hz),
+        current::of_map(input.map, input.net),
     )
 }
 

@@ -3,11 +3,11 @@
 use super::store::{Store, StoreFailure};
 use super::watch::Watch;
 use crate::board::Board;
-use crate::diag::Diagnostic;
 use crate::diag::code::run as code;
+use crate::diag::{Diagnostic, Severity};
 use crate::draw::DensityScale;
-use crate::field::{Bench, Couplings, JointCurrent, ReturnMap};
-use crate::figure::{Charted, ChartedPath, Effects, Figures, chart_in_zones, outline};
+use crate::field::{Bench, Couplings, JointCurrent, LoopCurve, ReturnMap};
+use crate::figure::{Charted, ChartedPath, Effects, Figures, chart_band, outline};
 use crate::finding::noise::{Noise, of_others};
 use crate::finding::{self, Finding, Judged, MapEvidence, PlaneEvidence, Trials};
 use crate::geom::Point;
@@ -87,6 +87,8 @@ pub struct PathDone<'a> {
     outlines: Vec<Vec<Vec<Point>>>,
     /// What was assumed on the way.
     notes: Vec<Diagnostic>,
+    /// The loop against frequency.
+    curve: Option<LoopCurve>,
 }
 
 impl<'a> Charting<'a, '_> {
@@ -97,8 +99,8 @@ impl<'a> Charting<'a, '_> {
         let each = frequencies(self.plan);
         let mut solved: Vec<ChartedPath> = Vec::with_capacity(each.len());
         for &(band, hz) in &each {
-            let band = &self.plan.bands[band];
-            let mut charted = chart_in_zones(bench, net, band, hz, &self.review.zones);
+            let (index, band) = (band, &self.plan.bands[band]);
+            let mut charted = chart_band(bench, net, (index, band), hz, &self.review.zones);
             charted.planes.iter_mut().flatten().for_each(|plane| forget(&mut plane.without_voids));
             charted.planes.iter().for_each(|_| self.watch.mapped(&net.name, &band.name));
             solved.push(charted);
@@ -124,7 +126,7 @@ impl<'a> Charting<'a, '_> {
         let mut notes = bench.notes();
         notes.extend(judged.messages);
         notes.dedup();
-        Ok(PathDone { net, rows, joints, findings: judged.findings, outlines, notes })
+        Ok(PathDone { net, rows, joints, findings: judged.findings, outlines, notes, curve: bench.loop_curve() })
     }
 
     /// The findings of a path, from its maps in all bands.
@@ -245,9 +247,11 @@ impl<'a> Charting<'a, '_> {
 }
 
 impl<'a> PathDone<'a> {
-    /// Whether every map was drawn.
+    /// Whether every map was drawn, except where the drive has nothing to draw.
     pub fn is_complete(&self) -> bool {
-        self.rows.iter().flat_map(|(_, maps)| maps).all(|done| done.map.is_ok())
+        let is_done =
+            |done: &Done| done.map.as_ref().err().is_none_or(|reason| reason.severity == Severity::Note);
+        self.rows.iter().flat_map(|(_, maps)| maps).all(is_done)
     }
 
     /// Name of the path.
@@ -298,6 +302,9 @@ impl<'a> PathDone<'a> {
     /// Adds findings, maps and joints to the document.
     pub fn add_to(&self, findings: &mut Findings, plan: &Plan) {
         self.findings.iter().for_each(|finding| findings.add_finding(finding));
+        if let Some(curve) = &self.curve {
+            findings.add_loop(&self.net.name, curve);
+        }
         for &(chart, ref maps) in &self.rows {
             for done in maps {
                 let band = &plan.bands[done.band].name;

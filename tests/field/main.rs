@@ -4,7 +4,11 @@
 
 mod boards;
 mod closed_form;
+#[path = "../plan/draft.rs"]
+#[allow(dead_code, reason = "this binary needs a part of the drafts")]
+mod draft;
 mod mask;
 mod numbers;
 mod scene;
+mod signal;
 mod solved;

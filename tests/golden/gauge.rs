@@ -121,7 +121,13 @@ pub fn gauge(shape: &Shape) -> Gauge {
         (0..grid.len()).map(|i| plane.contains(grid.centre(i % grid.nx, i / grid.nx))).collect();
     let spread: Vec<SpreadLeg> = legs
         .iter()
-        .map(|leg| SpreadLeg { from: leg.from, to: leg.to, width_m: leg.width_m, height_m: shape.gap * 1e-3 })
+        .map(|leg| SpreadLeg {
+            from: leg.from,
+            to: leg.to,
+            width_m: leg.width_m,
+            height_m: shape.gap * 1e-3,
+            current: leg.current,
+        })
         .collect();
     let (jx, jy) = face_currents(&spread, &grid);
     let ends = (shape.track[0], shape.track[shape.track.len() - 1]);
@@ -163,6 +169,7 @@ pub fn gauge(shape: &Shape) -> Gauge {
         zs_ohm: None,
         residual: (shape.model == Model::Sheet).then_some(3.5e-7),
         loop_impedance_ohm: None,
+        band_density: None,
     };
     let figures = figures(&map, shape.gap * 1e-3);
     let layer = |role, areas| CopperLayer { role, objects: Vec::new(), copper: Region::default(), areas };

@@ -183,3 +183,42 @@ impl Draft {
         }
     }
 }
+
+/// A board of 40 x 30 mm with a ground plane below the top layer.
+pub fn plain() -> Draft {
+    let mut draft = Draft::new(40.0, 30.0, &[0.2, 1.0, 0.2]);
+    draft.plane(1, "GND", &[]);
+    draft
+}
+
+/// A ground pin beside a via.
+pub fn ground(draft: &mut Draft, pin: &str, (x, y): (f64, f64)) {
+    draft.pad(0, pin, "GND", (x, y), 0.6);
+    draft.track(0, "GND", &[(x, y), (x, y + 1.0)], 0.3);
+    draft.via("GND", (x, y + 1.0), 0.3);
+}
+
+/// The same copper from U1.1 to U2.1: as one net, or in three nets with two parts between their pads.
+pub fn row(parts: bool) -> Draft {
+    let mut draft = plain();
+    ground(&mut draft, "U1.2", (5.0, 16.0));
+    ground(&mut draft, "U2.2", (35.0, 16.0));
+    let names = if parts { ["OUT", "MID", "TIDE"] } else { ["TIDE"; 3] };
+    draft.pad(0, "U1.1", names[0], (5.0, 15.0), 0.6);
+    draft.pad(0, "U2.1", names[2], (35.0, 15.0), 0.6);
+    draft.track(0, names[0], &[(5.0, 15.0), (14.0, 15.0)], 0.2);
+    draft.track(0, names[1], &[(16.0, 15.0), (20.0, 12.0), (24.0, 12.0)], 0.2);
+    draft.track(0, names[2], &[(26.0, 12.0), (31.0, 15.0), (35.0, 15.0)], 0.2);
+    let ends = [(14.0, 15.0), (16.0, 15.0), (24.0, 12.0), (26.0, 12.0)];
+    let own = [names[0], names[1], names[1], names[2]];
+    for ((pin, at), net) in ["R1.1", "R1.2", "R2.2", "R2.1"].into_iter().zip(ends).zip(own) {
+        if parts {
+            draft.pad(0, pin, net, at, 0.6);
+        }
+    }
+    if !parts {
+        draft.track(0, "TIDE", &ends[..2], 0.6);
+        draft.track(0, "TIDE", &ends[2..], 0.6);
+    }
+    draft
+}

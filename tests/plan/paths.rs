@@ -1,9 +1,10 @@
 //! Paths through parts, with several receivers, closed loops, supply areas, and pairs: legs, currents and entries.
 
-use super::draft::{Draft, rectangle};
+use super::draft::{Draft, ground, plain, rectangle, row};
 use super::{messages, plan};
 use ebbmap::geom::Point;
 use ebbmap::plan::{End, PathPlan, Plan};
+use ebbmap::review::drive::DriverReturn;
 use ebbmap::review::path::{PairRequest, PathRequest, Receiver, Step};
 use ebbmap::review::{LandingRequest, NetRequest, Review};
 
@@ -26,20 +27,6 @@ fn path(driver: &str, through: &[&str], receivers: &[(&str, f64)]) -> Review {
     Review { paths: vec![request], ..review() }
 }
 
-/// A board of 40 x 30 mm with a ground plane below the top layer.
-fn plain() -> Draft {
-    let mut draft = Draft::new(40.0, 30.0, &[0.2, 1.0, 0.2]);
-    draft.plane(1, "GND", &[]);
-    draft
-}
-
-/// A ground pin beside a via.
-fn ground(draft: &mut Draft, pin: &str, (x, y): (f64, f64)) {
-    draft.pad(0, pin, "GND", (x, y), 0.6);
-    draft.track(0, "GND", &[(x, y), (x, y + 1.0)], 0.3);
-    draft.via("GND", (x, y + 1.0), 0.3);
-}
-
 fn only(plan: &Plan) -> &PathPlan {
     assert_eq!(plan.paths.len(), 1, "{:#?}", plan.messages);
     &plan.paths[0]
@@ -59,31 +46,6 @@ fn entries(path: &PathPlan) -> Vec<(f64, f64, f64)> {
         .collect();
     found.sort_by(|a, b| a.0.total_cmp(&b.0).then(a.1.total_cmp(&b.1)));
     found
-}
-
-/// The same copper from U1.1 to U2.1: as one net, or in three nets with two parts between their pads.
-pub fn row(parts: bool) -> Draft {
-    let mut draft = plain();
-    ground(&mut draft, "U1.2", (5.0, 16.0));
-    ground(&mut draft, "U2.2", (35.0, 16.0));
-    let names = if parts { ["OUT", "MID", "TIDE"] } else { ["TIDE"; 3] };
-    draft.pad(0, "U1.1", names[0], (5.0, 15.0), 0.6);
-    draft.pad(0, "U2.1", names[2], (35.0, 15.0), 0.6);
-    draft.track(0, names[0], &[(5.0, 15.0), (14.0, 15.0)], 0.2);
-    draft.track(0, names[1], &[(16.0, 15.0), (20.0, 12.0), (24.0, 12.0)], 0.2);
-    draft.track(0, names[2], &[(26.0, 12.0), (31.0, 15.0), (35.0, 15.0)], 0.2);
-    let ends = [(14.0, 15.0), (16.0, 15.0), (24.0, 12.0), (26.0, 12.0)];
-    let own = [names[0], names[1], names[1], names[2]];
-    for ((pin, at), net) in ["R1.1", "R1.2", "R2.2", "R2.1"].into_iter().zip(ends).zip(own) {
-        if parts {
-            draft.pad(0, pin, net, at, 0.6);
-        }
-    }
-    if !parts {
-        draft.track(0, "TIDE", &ends[..2], 0.6);
-        draft.track(0, "TIDE", &ends[2..], 0.6);
-    }
-    draft
 }
 
 #[test]
@@ -195,7 +157,10 @@ fn the_two_lines_of_a_pair_land_their_difference() {
     };
     let balanced = plan(board.clone(), &pair(0.0));
     let path = only(&balanced);
-    assert_eq!(path.track.iter().map(|leg| leg.current).collect::<Vec<_>>(), [1.0, -1.0]);
+    // The lines, and the two parts that close them.
+    assert_eq!(path.track.iter().map(|leg| leg.current).collect::<Vec<_>>(), [1.0, -1.0, 1.0, 1.0]);
+    let round: Vec<Point> = [0, 2].into_iter().map(|leg| path.track[leg].to).collect();
+    assert!(round[1].distance(path.track[1].to) < 1e-12 && round[0].distance(path.track[2].from) < 1e-12);
     assert!(entries(path).is_empty(), "{:?}", path.entries);
     assert_eq!((path.charts.len(), &path.charts[0].withheld), (1, &None));
     let tilted = plan(board.clone(), &pair(0.1));
@@ -259,4 +224,63 @@ fn faults_of_paths_are_told() {
         let got = told(&review);
         assert!(got.0 == code && got.1.contains(words), "{code}, {words}: {got:?}");
     }
+}
+
+#[test]
+fn an_open_line_draws_its_current_along_the_way() {
+    let mut wanted = review();
+    let load = ebbmap::review::drive::Load { capacitance_f: 2e-12, ..Default::default() };
+    wanted.nets = vec![NetRequest { name: "TIDE".into(), ..NetRequest::default() }];
+    wanted.nets[0].signal.load = Some(load);
+    let plan = plan(row(false).board(), &wanted);
+    let path = only(&plan);
+    let currents: Vec<f64> = path.track.iter().map(|leg| leg.current).collect();
+    assert!((currents[0] - 1.0).abs() < 1e-12 && currents.windows(2).all(|pair| pair[1] <= pair[0] + 1e-12));
+    assert!(currents.windows(2).all(|pair| pair[0] - pair[1] < 0.0101), "{currents:?}");
+    // What is left at the end charges the load; all that leaves the track enters the planes.
+    let last = currents[currents.len() - 1];
+    assert!(last > 0.2 && last < 0.6, "{last}");
+    let sum: f64 = path.entries.iter().map(|entry| entry.current).sum();
+    assert!(sum.abs() < 1e-9, "{sum}");
+    let landed = path.entries.iter().map(|entry| entry.current).fold(0.0, f64::max);
+    assert!((landed - last).abs() < 1e-9, "{landed} {last}");
+    // With a termination the current is the same all along.
+    wanted.nets[0].signal.load.as_mut().unwrap().termination_ohm = Some(50.0);
+    let even = self::plan(row(false).board(), &wanted);
+    assert!(only(&even).track.iter().all(|leg| leg.current == 1.0));
+    assert!(only(&even).signal.remarks.contains(&"same current all along the track".to_owned()));
+}
+
+#[test]
+fn a_return_by_way_of_the_supply_passes_the_nearest_capacitor() {
+    let mut draft = row(false);
+    // Supply pin of the driver and two capacitors, the nearer one 4 mm away.
+    draft.pad(0, "U1.8", "V3", (5.0, 12.0), 0.6);
+    draft.track(0, "V3", &[(5.0, 12.0), (5.0, 4.0)], 0.3);
+    for (part, y) in [("C1", 8.0), ("C2", 4.0)] {
+        draft.pad(0, &format!("{part}.1"), "V3", (5.0, y), 0.6);
+        draft.pad(0, &format!("{part}.2"), "GND", (7.0, y), 0.6);
+        draft.track(0, "GND", &[(7.0, y), (8.0, y)], 0.3);
+        draft.via("GND", (8.0, y), 0.3);
+    }
+    let board = draft.board();
+    for (landing, at_supply) in [(DriverReturn::Supply, 1.0), (DriverReturn::Both, 0.5)] {
+        let mut wanted = review();
+        wanted.nets = vec![NetRequest { name: "TIDE".into(), ..NetRequest::default() }];
+        wanted.nets[0].signal.landing = landing;
+        let plan = plan(board.clone(), &wanted);
+        let path = only(&plan);
+        let found = entries(path);
+        assert!(found.contains(&(8.0, 8.0, -at_supply)), "{landing:?}: {found:?}");
+        assert_eq!(found.iter().any(|entry| (entry.0, entry.1) == (5.0, 17.0)), at_supply < 1.0, "{found:?}");
+        let fed: Vec<f64> = path.track.iter().map(|leg| leg.current).collect();
+        assert!((fed[fed.len() - 1] - at_supply).abs() < 1e-12, "{fed:?}");
+        let said = path.signal.remarks.join("; ");
+        assert!(said.contains("lands on its supply pin U1.8 through C1"), "{said}");
+    }
+    let mut wanted = review();
+    wanted.nets = vec![NetRequest { name: "TIDE".into(), ..NetRequest::default() }];
+    wanted.nets[0].signal.landing = DriverReturn::Supply;
+    let refused = plan(row(false).board(), &wanted);
+    assert_eq!(messages(&refused, "supply-unknown").len(), 1, "{:?}", refused.messages);
 }

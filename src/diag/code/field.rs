@@ -69,6 +69,13 @@ pub const COUPLING_UNSOLVED: Code = Code {
               Smaller cells under `[solver]` may help.",
 };
 
+/// A band without a line of the drive.
+pub const BAND_SILENT: Code = Code {
+    name: "band-silent",
+    meaning: "The drive of the net or path has no spectral line in this band, so it carries no current there and there \
+              is no map. Nothing is wrong; a clock for example has nothing below its own frequency.",
+};
+
 /// All codes of this room.
 pub const ALL: &[Code] = &[
     LANDINGS_APART,
@@ -80,4 +87,5 @@ pub const ALL: &[Code] = &[
     NOT_CONVERGED,
     NOT_FACTORED,
     COUPLING_UNSOLVED,
+    BAND_SILENT,
 ];

@@ -55,6 +55,14 @@ pub const PATH_THROUGH_PARTS: Code = Code {
               the loop's.",
 };
 
+/// No supply of a driver.
+pub const SUPPLY_UNKNOWN: Code = Code {
+    name: "supply-unknown",
+    meaning: "With `landing = \"supply\"` or `\"both\"` the driver's return passes the capacitor nearest to the supply \
+              pin of its part. No pin of the part is on a net with a capacitor (a part with two pins called C and a \
+              number) to a reference net.",
+};
+
 /// No copper between the pins.
 pub const TRACK_OPEN: Code = Code {
     name: "track-open",
@@ -254,6 +262,7 @@ pub const ALL: &[Code] = &[
     PINS_NEEDED,
     PATH_BROKEN,
     PATH_THROUGH_PARTS,
+    SUPPLY_UNKNOWN,
     TRACK_OPEN,
     TRACK_ACROSS_AREA,
     TRACK_FURTHER_PINS,

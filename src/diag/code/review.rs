@@ -65,13 +65,6 @@ pub const REVIEW_STACKUP_LENGTH: Code = Code {
               them, from the top. Write `\"\"` for an entry that shall keep the value of the files.",
 };
 
-/// Read and checked, but not used.
-pub const REVIEW_NOT_USED: Code = Code {
-    name: "review-not-used",
-    meaning: "The review asks for something that is read and checked but that this version does not compute. The maps \
-              are what they would be without it; nothing else of the review is affected.",
-};
-
 /// All codes of this room.
 pub const ALL: &[Code] = &[
     REVIEW_UNREADABLE,
@@ -83,5 +76,4 @@ pub const ALL: &[Code] = &[
     REVIEW_DUPLICATE,
     REVIEW_OVERRIDE,
     REVIEW_STACKUP_LENGTH,
-    REVIEW_NOT_USED,
 ];

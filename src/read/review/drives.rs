@@ -11,8 +11,6 @@ use std::ops::Range;
 use toml::Spanned;
 use toml::de::{DeTable, DeValue};
 
-/// Keys that belong to the signal of an entry.
-pub const KEYS: &[&str] = &["drive", "series", "termination", "load", "landing", "budget"];
 /// Noise that a converter bears unless the budget says otherwise, in LSB rms (common practice).
 const DEFAULT_LSB: f64 = 0.5;
 /// Orders of maximum-length sequences.

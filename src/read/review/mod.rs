@@ -115,7 +115,6 @@ fn fill(desk: &mut Desk<'_>, root: &DeTable<'_>, folder: &Path, review: &mut Rev
     review.parts = joints::read_parts(desk, root);
     review.ties = joints::read_ties(desk, root, review.origin);
     paths::ensure_distinct(desk, root);
-    not_yet_charted(desk, root);
     if whole && ["net", "path", "pair"].iter().all(|kind| root.get(*kind).is_none()) {
         desk.error(code::REVIEW_MISSING_KEY, 0..0, "review must chart one net, path or pair at least")
             .hints
@@ -127,26 +126,6 @@ fn fill(desk: &mut Desk<'_>, root: &DeTable<'_>, folder: &Path, review: &mut Rev
     review.waivers = limits::read_waivers(desk, root);
     if let Some(table) = desk.table(root, "solver") {
         review.solver = solver(desk, table);
-    }
-}
-
-/// Keys and tables that are read and checked but that no map uses yet.
-const NOT_YET: &[(&str, &[&str])] = &[("net", drives::KEYS), ("path", drives::KEYS), ("pair", drives::KEYS)];
-
-/// Says of what is read but not charted that it is not, so that nobody takes a map for what it is not.
-fn not_yet_charted(desk: &mut Desk<'_>, root: &DeTable<'_>) {
-    for (kind, keys) in NOT_YET {
-        let list = root.get(*kind).and_then(|value| value.get_ref().as_array());
-        for table in
-            list.into_iter().flat_map(|list| list.iter()).filter_map(|value| value.get_ref().as_table())
-        {
-            for key in *keys {
-                let Some(value) = table.get(*key) else { continue };
-                let text = format!("key `{key}` is read and checked but not used yet: maps are of 1 A");
-                let message = desk.place(Diagnostic::warning(code::REVIEW_NOT_USED, text), value.span());
-                desk.messages.push(message);
-            }
-        }
     }
 }
 
