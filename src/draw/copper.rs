@@ -304,6 +304,11 @@ fn costs(data: &CopperData, view: &View) -> Placer {
             placer.add_line(&simplified(&points, 0.2), 0.5, cost);
         }
     }
+    for ring in data.outline.0.iter().flat_map(Polygon::rings) {
+        let mut points = ring_on_sheet(ring, view);
+        points.extend(points.first().copied());
+        placer.add_line(&points, 0.6, 3.0);
+    }
     let signs = data.landings.iter().chain(&data.ties).copied().chain(data.pins.iter().map(|pin| pin.0.at));
     for at in signs {
         let (x, y) = view.place(at);
