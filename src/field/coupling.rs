@@ -35,8 +35,9 @@ pub struct Couplings {
     pub frequency_hz: f64,
     /// Indices of the paths in the plan.
     pub paths: Vec<usize>,
-    /// `z_ohm[a][b]` is the voltage in path `paths[b]` per ampere in path `paths[a]`, in ohm.
-    pub z_ohm: Vec<Vec<Complex64>>,
+    /// `z_ohm[a][b]` is the voltage in path `paths[b]` per ampere in path `paths[a]`, in ohm; none between two paths of
+    /// which neither was asked for.
+    pub z_ohm: Vec<Vec<Option<Complex64>>>,
 }
 
 /// A path on the common copper.
@@ -47,28 +48,34 @@ struct Member<'p> {
 }
 
 impl Workshop<'_> {
-    /// Transfer impedances between the paths `which` of the plan at each frequency. Paths that cannot be charted are
-    /// left out; so are all where the plan has no conductors in common or the model is not that of sheets.
-    pub fn couplings(&self, which: &[usize], frequencies_hz: &[f64]) -> Result<Vec<Couplings>, Diagnostic> {
+    /// Transfer impedances between all paths of the plan at each frequency, as far as one of the two is `asked` for.
+    /// Paths that cannot be charted are left out; so are all where the plan has no conductors in common or the model is
+    /// not that of sheets.
+    pub fn couplings(&self, asked: &[bool], frequencies_hz: &[f64]) -> Result<Vec<Couplings>, Diagnostic> {
         let conductors = &self.plan.conductors;
         if self.model != Model::Sheet || conductors.layers.is_empty() {
             return Ok(Vec::new());
         }
-        let member = |&index: &usize| {
+        let member = |index: usize| {
             let path: &PathPlan = &self.plan.paths[index];
             let lays = Lay::of_path(self.board, conductors, &self.joints, path, &path.charts);
             let lay = lays.into_iter().next().filter(|lay| !lay.single)?;
             let source = Source::new(self.board, &lay.plane_layer, lay.legs);
             Some(Member { index, lay, source })
         };
-        let members: Vec<Member> = which.iter().filter_map(member).collect();
+        let members: Vec<Member> = (0..self.plan.paths.len()).filter_map(member).collect();
         if members.len() < 2 {
             return Ok(Vec::new());
         }
-        frequencies_hz.iter().map(|&hz| self.coupled(&members, hz)).collect()
+        frequencies_hz.iter().map(|&hz| self.coupled(&members, asked, hz)).collect()
     }
 
-    fn coupled(&self, members: &[Member], frequency_hz: f64) -> Result<Couplings, Diagnostic> {
+    fn coupled(
+        &self,
+        members: &[Member],
+        asked: &[bool],
+        frequency_hz: f64,
+    ) -> Result<Couplings, Diagnostic> {
         let failed = |what: String| Diagnostic::warning(code::COUPLING_UNSOLVED, what);
         let mut common = members[0].lay.clone();
         common.charts = members.iter().flat_map(|member| member.lay.charts.iter().cloned()).collect();
@@ -106,16 +113,26 @@ impl Workshop<'_> {
             .collect();
         let omega = Complex64::new(0.0, std::f64::consts::TAU * frequency_hz);
         let row = |&(member, drive): &(&Member, &Prepared)| {
+            if !asked[member.index] {
+                return Ok(vec![None; ready.len()]);
+            }
             let solution = system.solve_prepared(drive, &point, self.tolerance).map_err(unsolved)?;
             let runs = member.source.runs(&stack, frequency_hz);
             let to = |&(other, tested): &(&Member, &Prepared)| {
                 let direct = mutual_inductance_h(&runs, &other.source.runs(&stack, frequency_hz));
-                system.transfer_ohm(&solution, frequency_hz, tested) + omega * direct
+                Some(system.transfer_ohm(&solution, frequency_hz, tested) + omega * direct)
             };
             Ok(ready.iter().map(to).collect())
         };
-        let z_ohm: Result<Vec<Vec<Complex64>>, Diagnostic> = ready.par_iter().map(row).collect();
+        let z_ohm: Result<Vec<Vec<Option<Complex64>>>, Diagnostic> = ready.par_iter().map(row).collect();
+        let mut z_ohm = z_ohm?;
+        // by reciprocity the other way round is the same
+        for from in 0..ready.len() {
+            for to in 0..ready.len() {
+                z_ohm[from][to] = z_ohm[from][to].or(z_ohm[to][from]);
+            }
+        }
         let paths = ready.iter().map(|(member, _)| member.index).collect();
-        Ok(Couplings { frequency_hz, paths, z_ohm: z_ohm? })
+        Ok(Couplings { frequency_hz, paths, z_ohm })
     }
 }

@@ -3,8 +3,8 @@
 //! The density is that of the cells at their middles; lines are those of marching squares between them.
 
 use crate::field::ReturnMap;
-use crate::geom::Point;
 use crate::geom::locate::point_segment_distance;
+use crate::geom::{Point, Region, boolean};
 use contour::ContourBuilder;
 
 /// Deviation of a line from its points that is dropped, in cells.
@@ -33,6 +33,19 @@ pub fn lines(map: &ReturnMap, level: f64) -> Vec<Vec<Point>> {
         }
     }
     lines
+}
+
+/// The part of the board where |K| is above `level`.
+pub fn region(map: &ReturnMap, level: f64) -> Region {
+    boolean::fill(&lines(map, level), boolean::Filling::EvenOdd)
+}
+
+/// Area in square metres that two such parts have in common: the overlap of two paths.
+pub fn overlap_m2(one: &Region, other: &Region) -> f64 {
+    if !one.bounds().meets(other.bounds()) {
+        return 0.0;
+    }
+    boolean::intersection(one, other).area()
 }
 
 /// Fewer points, none dropped that lies farther than `tolerance_m` from the line (Ramer, Douglas and Peucker).

@@ -111,6 +111,8 @@ pub enum Measured {
     Stray,
     /// Noise voltage, rms, in volts.
     Noise,
+    /// Magnitude of the transfer impedance between two paths, in ohm.
+    Transfer,
     /// Share within 3h.
     Share,
 }
@@ -125,6 +127,7 @@ impl Measured {
             Self::EdgeDensity => "edge_density",
             Self::Stray => "stray",
             Self::Noise => "noise",
+            Self::Transfer => "transfer_impedance",
             Self::Share => "share_3h",
         }
     }
@@ -135,6 +138,7 @@ impl Measured {
             Self::ExtraInductance => "H",
             Self::ExtraPath => "m",
             Self::Noise => "V",
+            Self::Transfer => "ohm",
             Self::ShareDrop | Self::EdgeDensity | Self::Stray | Self::Share => "1",
         }
     }

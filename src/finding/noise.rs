@@ -104,7 +104,8 @@ pub fn band_volts(signal: &SignalRequest, band: &Band, solved: &[(f64, f64)]) ->
 pub fn noise(couplings: &[Couplings], plan: &Plan, review: &Review) -> Vec<Noise> {
     let Some(first) = couplings.first() else { return Vec::new() };
     let mut victims = Vec::new();
-    for &to in &first.paths {
+    // only a path that was solved itself knows all that others put into it
+    for &to in first.paths.iter().filter(|&&path| transfer(first, path, path).is_some()) {
         let name = &plan.paths[to].name;
         let budget = signal_of(review, name).and_then(|signal| signal.budget);
         let mut bands: Vec<Noise> = Vec::new();
@@ -159,7 +160,7 @@ fn magnitudes(couplings: &[Couplings], from: usize, to: usize) -> Vec<(f64, f64)
 /// The transfer impedance from one path of the plan to another.
 pub fn transfer(couplings: &Couplings, from: usize, to: usize) -> Option<Complex64> {
     let at = |path: usize| couplings.paths.iter().position(|&known| known == path);
-    Some(couplings.z_ohm[at(from)?][at(to)?])
+    couplings.z_ohm[at(from)?][at(to)?]
 }
 
 /// Findings of one path (index in the plan) that rest on other paths: noise above its budget, and a return that it
@@ -261,16 +262,15 @@ fn common(index: usize, path: &PathPlan, couplings: &[Couplings], plan: &Plan) -
     let mut found = finding(index, path, &plan.paths[other])?;
     found.code = code::COMMON_RETURN;
     found.frequency_hz = Some(at.frequency_hz);
-    // of 1 A: volts have the number of the ohms
     found.excess =
-        Excess { what: Measured::Noise, value: between, error: TRANSFER_ERROR * between, limit: None };
+        Excess { what: Measured::Transfer, value: between, error: TRANSFER_ERROR * between, limit: None };
     found.sentence = format!(
-        "the loops of `{}` and `{}` share {} % of their impedance at {}: 1 A in one puts {} into the other",
+        "the loops of `{}` and `{}` share {} % of their impedance at {}: {} from one to the other",
         path.name,
         plan.paths[other].name,
         digits(100.0 * part),
         super::word::hertz(at.frequency_hz),
-        quantity(Measured::Noise, between)
+        quantity(Measured::Transfer, between)
     );
     found.cause_text = "their tracks or their returns lie side by side at the place marked".to_owned();
     Some(found)

@@ -213,11 +213,9 @@ impl Trials<'_> {
         };
         let inward = if goes_on(normal) > goes_on(normal * -1.0) { normal } else { normal * -1.0 };
         let run = 0.75 * chart.height_m;
-        let first_leg = chart.legs.start;
         let legs = &self.path().track[chart.legs.clone()];
         let ends =
             [self.path().track.first().map(|leg| leg.from), self.path().track.last().map(|leg| leg.to)];
-        let _ = first_leg;
         let beside = |point: Point| {
             // what lies as near to the edge as the place itself, but not the ends at the pins
             let off = (point - at).dot(inward);
@@ -266,7 +264,15 @@ impl Trials<'_> {
             }
             match self.change_at(evidence, [&from.plane, &to.plane], leg.to) {
                 Ok(finding) => found.extend(finding),
-                Err(reason) => messages.push(reason),
+                Err(reason) => {
+                    let text = format!(
+                        "a via for the return of `{}` beside its layer change could not be tried: {}",
+                        self.path().name,
+                        reason.text
+                    );
+                    let message = Diagnostic::note(code::REMEDY_UNTRIED, text);
+                    messages.push(message.on_board(Some(from.plane.layer + 1), leg.to));
+                }
             }
         }
         (found, messages)
@@ -396,7 +402,7 @@ fn measured(
             let Some(edge) = effects.edge_density else { return Some((0.0, 0.0)) };
             edge.figure
         }
-        Measured::Stray | Measured::Noise | Measured::Share => return None,
+        Measured::Stray | Measured::Noise | Measured::Transfer | Measured::Share => return None,
     };
     Some((figure.value?, figure.error))
 }

@@ -33,6 +33,7 @@ pub fn quantity(what: Measured, value: f64) -> String {
         Measured::ExtraInductance => prefixed(value, "H"),
         Measured::ExtraPath => format!("{} mm", digits(value * 1e3)),
         Measured::Noise => prefixed(value, "V"),
+        Measured::Transfer => prefixed(value, "ohm"),
         Measured::ShareDrop | Measured::Stray | Measured::Share => format!("{} %", digits(value * 100.0)),
         Measured::EdgeDensity => digits(value),
     }

@@ -11,7 +11,7 @@ use serde::Serialize;
 
 /// Millimetres from the review's origin, to a nanometre, so that sums of coordinates leave no digits of rounding.
 pub(super) fn millimetres(at: Point, origin: Point) -> (f64, f64) {
-    let round = |metres: f64| (metres * 1e9).round() * 1e-6 + 0.0;
+    let round = |metres: f64| (metres * 1e9).round() / 1e6 + 0.0;
     (round(at.x - origin.x), round(at.y - origin.y))
 }
 

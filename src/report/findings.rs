@@ -33,6 +33,7 @@ pub struct Findings {
     transfer: Vec<TransferEntry>,
     noise: Vec<NoiseEntry>,
     loops: Vec<LoopEntry>,
+    overlaps: Vec<OverlapEntry>,
     skipped: Vec<MessageEntry>,
     messages: Vec<MessageEntry>,
     #[serde(skip)]
@@ -89,6 +90,14 @@ struct MapEntry {
     receiver_landing: LandingEntry,
     figures: Option<FiguresEntry>,
     effects: Option<EffectsEntry>,
+}
+
+/// Where two paths use the same copper, at the highest frequency.
+#[derive(Clone, Debug, Serialize)]
+struct OverlapEntry {
+    paths: [String; 2],
+    plane: PlaneEntry,
+    area_m2: f64,
 }
 
 /// What joints carry of a path's return at one frequency.
@@ -169,6 +178,7 @@ impl Findings {
             transfer: Vec::new(),
             noise: Vec::new(),
             loops: Vec::new(),
+            overlaps: Vec::new(),
             skipped: Vec::new(),
             messages: Vec::new(),
             origin,
@@ -213,7 +223,8 @@ impl Findings {
     pub fn add_couplings<'n>(&mut self, couplings: &Couplings, name: impl Fn(usize) -> &'n str) {
         for (from, row) in couplings.paths.iter().zip(&couplings.z_ohm) {
             for (to, z) in couplings.paths.iter().zip(row).filter(|(to, _)| *to != from) {
-                self.transfer.push(finding::transfer(name(*from), name(*to), couplings.frequency_hz, *z));
+                let Some(z) = *z else { continue };
+                self.transfer.push(finding::transfer(name(*from), name(*to), couplings.frequency_hz, z));
             }
         }
     }
@@ -221,6 +232,12 @@ impl Findings {
     /// Adds the noise in a path.
     pub fn add_noise(&mut self, noise: &Noise) {
         self.noise.push(finding::noise(noise));
+    }
+
+    /// Adds the area of a plane where the densities of two paths both lie inside their 80 % contours.
+    pub fn add_overlap(&mut self, paths: [&str; 2], of: &PlaneId, area_m2: f64) {
+        let paths = paths.map(str::to_owned);
+        self.overlaps.push(OverlapEntry { paths, plane: plane(of), area_m2 });
     }
 
     /// Adds what joints carry of a path's return at a frequency, if they carry any.

@@ -85,6 +85,7 @@ fn amount(what: Measured, value: f64) -> String {
         Measured::ExtraInductance => with_prefix(value, "H", 2),
         Measured::ExtraPath => millimeters(value),
         Measured::Noise => with_prefix(value, "V", 2),
+        Measured::Transfer => with_prefix(value, "ohm", 2),
         Measured::ShareDrop | Measured::Stray | Measured::Share => percent(value),
         Measured::EdgeDensity => significant(value, 2),
     }
@@ -123,7 +124,7 @@ fn few_words(finding: &Finding) -> String {
         Measured::ShareDrop => format!("{cause}: {value} leaves the track"),
         Measured::EdgeDensity => format!("{cause}: {value} of the peak"),
         Measured::Stray => format!("{value} strays over the boundary"),
-        Measured::Noise => format!("{cause}: {value}"),
+        Measured::Noise | Measured::Transfer => format!("{cause}: {value}"),
         Measured::Share => format!("{value} within 3h"),
     }
 }
@@ -149,6 +150,7 @@ pub(super) fn result(finding: &Finding, net: &str, band: &str) -> String {
         }
         Measured::Stray => format!("{value} of the return of {net} strays over the partition in {band}"),
         Measured::Noise => format!("{cause} puts {value} of noise on {net} in {band}"),
+        Measured::Transfer => format!("{cause} and {net} are coupled by {value}"),
         Measured::Share => format!("{net}: {value} of the return stays within 3h in {band}"),
     }
 }

@@ -199,6 +199,7 @@ fn figure(finding: &Finding) -> String {
         Measured::EdgeDensity => "density at the edge in parts of 1/(pi h)",
         Measured::Stray => "stray more than without voids",
         Measured::Noise => "noise, rms",
+        Measured::Transfer => "transfer impedance",
         Measured::Share => "share within 3h",
     };
     let value = quantity(excess.what, excess.value);

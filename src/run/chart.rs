@@ -6,11 +6,11 @@ use crate::board::Board;
 use crate::diag::code::run as code;
 use crate::diag::{Diagnostic, Severity};
 use crate::draw::DensityScale;
-use crate::field::{Bench, Couplings, JointCurrent, LoopCurve, ReturnMap};
+use crate::field::{Bench, Couplings, JointCurrent, LoopCurve, PlaneId, ReturnMap};
 use crate::figure::{Charted, ChartedPath, Effects, Figures, chart_band, outline};
 use crate::finding::noise::{Noise, of_others};
 use crate::finding::{self, Finding, Judged, MapEvidence, PlaneEvidence, Trials};
-use crate::geom::Point;
+use crate::geom::{Point, Region};
 use crate::plan::{ChartPlan, PathPlan, Plan};
 use crate::report::{
     ContactCell, ContactRow, Findings, Outlined, Picture, Subject, Thumbnail, TicketInput, numbers,
@@ -85,6 +85,8 @@ pub struct PathDone<'a> {
     pub findings: Vec<Finding>,
     /// For each finding the lines of the 80 % contour of its map.
     outlines: Vec<Vec<Vec<Point>>>,
+    /// Of each plane the part inside the 80 % contour at the highest frequency.
+    pub crowded: Vec<(PlaneId, Region)>,
     /// What was assumed on the way.
     notes: Vec<Diagnostic>,
     /// The loop against frequency.
@@ -107,6 +109,7 @@ impl<'a> Charting<'a, '_> {
         }
         let judged = self.judge(index, &solved);
         let outlines = judged.findings.iter().map(|finding| outline(bench, &solved, finding)).collect();
+        let crowded = crowded(bench, &solved);
         let mut rows: Vec<(&ChartPlan, Vec<Done>)> =
             bench.charts().iter().map(|chart| (chart, Vec::new())).collect();
         let mut joints = Vec::with_capacity(each.len());
@@ -126,7 +129,16 @@ impl<'a> Charting<'a, '_> {
         let mut notes = bench.notes();
         notes.extend(judged.messages);
         notes.dedup();
-        Ok(PathDone { net, rows, joints, findings: judged.findings, outlines, notes, curve: bench.loop_curve() })
+        Ok(PathDone {
+            net,
+            rows,
+            joints,
+            findings: judged.findings,
+            outlines,
+            crowded,
+            notes,
+            curve: bench.loop_curve(),
+        })
     }
 
     /// The findings of a path, from its maps in all bands.
@@ -375,6 +387,19 @@ fn outline(bench: &Bench, solved: &[ChartedPath], finding: &Finding) -> Vec<Vec<
     };
     let found = maps.find(of_band);
     found.map_or_else(Vec::new, |found| outline::lines(&found.map, found.figures.contour_levels[1]))
+}
+
+/// Of each plane the part inside the 80 % contour at the highest frequency that was solved.
+fn crowded(bench: &Bench, solved: &[ChartedPath]) -> Vec<(PlaneId, Region)> {
+    let mut found = Vec::new();
+    for (row, chart) in bench.charts().iter().enumerate() {
+        let maps = solved.iter().filter_map(|charted| charted.planes[row].as_ref().ok());
+        if let Some(highest) = maps.max_by(|a, b| a.frequency_hz.total_cmp(&b.frequency_hz)) {
+            let level = highest.figures.contour_levels[1];
+            found.push((chart.plane.clone(), outline::region(&highest.map, level)));
+        }
+    }
+    found
 }
 
 /// Leaves a map without its cells, which would fill the memory.

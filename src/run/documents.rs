@@ -6,6 +6,7 @@ use crate::board::Board;
 use crate::diag::Diagnostic;
 use crate::diag::code::run as code;
 use crate::field::Couplings;
+use crate::figure::outline;
 use crate::finding::Finding;
 use crate::finding::noise::Noise;
 use crate::plan::Plan;
@@ -75,6 +76,17 @@ impl Documents<'_, '_> {
             findings.add_couplings(couplings, |path| &self.plan.paths[path].name);
         }
         self.noise.iter().for_each(|noise| findings.add_noise(noise));
+        for (index, one) in self.done.iter().enumerate() {
+            for other in &self.done[index + 1..] {
+                for (plane, crowded) in &one.crowded {
+                    let same = other.crowded.iter().find(|(known, _)| known == plane);
+                    let area_m2 = same.map_or(0.0, |(_, region)| outline::overlap_m2(crowded, region));
+                    if area_m2 > 0.0 {
+                        findings.add_overlap([one.name(), other.name()], plane, area_m2);
+                    }
+                }
+            }
+        }
         self.plan.messages.iter().filter(|message| is_skip(message)).for_each(|m| findings.add_skipped(m));
         self.messages.iter().for_each(|message| findings.add_message(message));
         json(&findings)

@@ -151,9 +151,8 @@ fn draw_plan(
     let benches: Vec<Bench> = plan.paths.par_iter().map(|path| workshop.bench(path)).collect();
     let paths: Vec<usize> = (0..plan.paths.len()).filter(|&path| chosen[path]).collect();
     // Coupling counts all paths of the review, whatever is drawn: any of them may disturb one that is.
-    let all: Vec<usize> = (0..plan.paths.len()).collect();
     let at_hz: Vec<f64> = frequencies(plan).into_iter().map(|(_, hz)| hz).collect();
-    let couplings = workshop.couplings(&all, &at_hz).unwrap_or_else(|reason| {
+    let couplings = workshop.couplings(chosen, &at_hz).unwrap_or_else(|reason| {
         watch.message(&reason, None);
         messages.push(reason);
         Vec::new()

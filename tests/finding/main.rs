@@ -4,6 +4,7 @@
 
 mod documents;
 mod effects;
+mod gauge;
 mod judging;
 mod noise;
 mod remedies;

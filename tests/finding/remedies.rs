@@ -70,7 +70,7 @@ fn a_remedy_keeps_its_promise() {
 
 #[test]
 fn a_track_is_moved_off_the_edge() {
-    let y = 29.6;
+    let y = 29.7;
     let track = vec![(5.0, 24.0), (8.0, y), (32.0, y), (35.0, 24.0)];
     let scene = Scene { track, cell: 0.2, ..Scene::default() };
     let found = findings(&scene, 1e8, Limits::default());
