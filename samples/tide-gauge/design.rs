@@ -57,6 +57,8 @@ pub struct Pad {
     pub shape: Shape,
     /// Diameter of the plated hole; none for a pad on the top layer alone.
     pub drill: Option<f64>,
+    /// From the middle of the hole to the centre of each round end of a routed slot; zero for a round hole.
+    pub slot: Xy,
 }
 
 /// A part, in place on the top side.

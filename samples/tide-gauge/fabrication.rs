@@ -207,6 +207,8 @@ fn drill(design: &Design, plated: bool) -> String {
         if plated { format!("Plated,1,{N_LAYERS},PTH") } else { format!("NonPlated,1,{N_LAYERS},NPTH") };
     // Tools: diameter in micrometres, function, places.
     let mut tools: Vec<(i64, &str, Vec<Xy>)> = Vec::new();
+    // Slots: diameter in micrometres, ends of the cutter's way.
+    let mut slots: Vec<(i64, Xy, Xy)> = Vec::new();
     let mut add = |diameter: f64, function: &'static str, at: Xy| {
         let micrometres = (diameter * 1e3).round() as i64;
         match tools.iter_mut().find(|tool| (tool.0, tool.1) == (micrometres, function)) {
@@ -217,23 +219,40 @@ fn drill(design: &Design, plated: bool) -> String {
     if plated {
         design.vias.iter().for_each(|via| add(VIA_DRILL, "Plated,PTH,ViaDrill", via.at));
         for pad in design.parts.iter().flat_map(|part| &part.pads) {
-            if let Some(diameter) = pad.drill {
+            let Some(diameter) = pad.drill else { continue };
+            if pad.slot != (0.0, 0.0) {
+                let end = |side: f64| (pad.at.0 + side * pad.slot.0, pad.at.1 + side * pad.slot.1);
+                slots.push(((diameter * 1e3).round() as i64, end(-1.0), end(1.0)));
+            } else {
                 add(diameter, "Plated,PTH,ComponentDrill", pad.at);
             }
         }
     } else {
         design.holes.iter().for_each(|hole| add(hole.diameter, "NonPlated,NPTH,MechanicalDrill", hole.at));
     }
+    // A tool of its own for the slots of a width: a cutter is no drill.
+    let mut cutters: Vec<i64> = slots.iter().map(|slot| slot.0).collect();
+    cutters.sort_unstable();
+    cutters.dedup();
+    let n_drills = tools.len();
+    tools.extend(cutters.into_iter().map(|width| (width, "Plated,PTH,ComponentDrill", Vec::new())));
     let mut text = format!("M48\n; #@! TF.FileFunction,{function}\nMETRIC\n");
     for (index, (micrometres, function, _)) in tools.iter().enumerate() {
         let diameter = *micrometres as f64 * 1e-3;
         let _ = writeln!(text, "; #@! TA.AperFunction,{function}\nT{:02}C{diameter:.3}\n; #@! TD", index + 1);
     }
     text.push_str("%\nG05\n");
-    for (index, (_, _, places)) in tools.iter().enumerate() {
+    for (index, (width, _, places)) in tools.iter().enumerate() {
         let _ = writeln!(text, "T{:02}", index + 1);
         for at in places {
             let _ = writeln!(text, "X{:.4}Y{:.4}", at.0, at.1);
+        }
+        if index >= n_drills {
+            for (_, from, to) in slots.iter().filter(|slot| slot.0 == *width) {
+                let _ =
+                    writeln!(text, "G00X{:.4}Y{:.4}\nM15\nG01X{:.4}Y{:.4}\nM16", from.0, from.1, to.0, to.1);
+            }
+            text.push_str("G05\n");
         }
     }
     text.push_str("M30\n");

@@ -6,6 +6,8 @@ use super::design::{Design, Pad, Part, Shape, Tie, Xy};
 struct Pattern {
     pads: Vec<(String, Xy, Shape, Option<f64>)>,
     body: Xy,
+    /// Half the way of the cutter along y in a slot for a flat pin; zero for round holes.
+    slot: f64,
 }
 
 fn smd(number: impl ToString, x: f64, y: f64, w: f64, h: f64) -> (String, Xy, Shape, Option<f64>) {
@@ -15,7 +17,7 @@ fn smd(number: impl ToString, x: f64, y: f64, w: f64, h: f64) -> (String, Xy, Sh
 
 /// Two pads side by side along x.
 fn two(gap: f64, w: f64, h: f64, body: Xy) -> Pattern {
-    Pattern { pads: vec![smd(1, -gap, 0.0, w, h), smd(2, gap, 0.0, w, h)], body }
+    Pattern { pads: vec![smd(1, -gap, 0.0, w, h), smd(2, gap, 0.0, w, h)], body, slot: 0.0 }
 }
 
 /// Two rows along y, pin 1 at the upper left, counting counter-clockwise.
@@ -24,7 +26,7 @@ fn dual(n: usize, pitch: f64, reach: f64, w: f64, h: f64, body: Xy) -> Pattern {
     let y = |k: usize| (0.5 * (side as f64 - 1.0) - k as f64) * pitch;
     let mut pads: Vec<_> = (0..side).map(|k| smd(k + 1, -reach, y(k), w, h)).collect();
     pads.extend((0..side).map(|k| smd(side + k + 1, reach, y(side - 1 - k), w, h)));
-    Pattern { pads, body }
+    Pattern { pads, body, slot: 0.0 }
 }
 
 /// Four rows, pin 1 at the upper left of the left row, counting counter-clockwise.
@@ -36,7 +38,7 @@ fn quad(n: usize, pitch: f64, reach: f64, w: f64, h: f64, body: Xy) -> Pattern {
     pads.extend((0..side).map(|k| smd(side + k + 1, -s(k), -reach, h, w)));
     pads.extend((0..side).map(|k| smd(2 * side + k + 1, reach, -s(k), w, h)));
     pads.extend((0..side).map(|k| smd(3 * side + k + 1, s(k), reach, h, w)));
-    Pattern { pads, body }
+    Pattern { pads, body, slot: 0.0 }
 }
 
 /// Pins with holes in one row along y, pin 1 at the top with a rectangular pad.
@@ -44,7 +46,7 @@ fn row(n: usize, pitch: f64, pad: f64, drill: f64, body_width: f64) -> Pattern {
     let y = |k: usize| (0.5 * (n as f64 - 1.0) - k as f64) * pitch;
     let shape = |k: usize| if k == 0 { Shape::Rect(pad, pad) } else { Shape::Round(pad) };
     let pads = (0..n).map(|k| ((k + 1).to_string(), (0.0, y(k)), shape(k), Some(drill))).collect();
-    Pattern { pads, body: (body_width, n as f64 * pitch) }
+    Pattern { pads, body: (body_width, n as f64 * pitch), slot: 0.0 }
 }
 
 fn pattern(package: &str) -> Pattern {
@@ -64,6 +66,7 @@ fn pattern(package: &str) -> Pattern {
                 smd(4, -1.1, 0.85, 1.3, 1.1),
             ],
             body: (3.2, 2.5),
+            slot: 0.0,
         },
         "SOT23" => Pattern {
             pads: vec![
@@ -72,6 +75,7 @@ fn pattern(package: &str) -> Pattern {
                 smd(3, 1.0, 0.0, 1.1, 0.6),
             ],
             body: (1.4, 2.9),
+            slot: 0.0,
         },
         "SOT23-5" => {
             let mut p = dual(6, 0.95, 1.2, 1.1, 0.6, (1.6, 2.9));
@@ -97,13 +101,20 @@ fn pattern(package: &str) -> Pattern {
                 ("2".into(), (0.5, 0.0), Shape::Rect(0.6, 0.6), None),
             ],
             body: (1.6, 0.6),
+            slot: 0.0,
         },
-        "TEST" => Pattern { pads: vec![("1".into(), (0.0, 0.0), Shape::Round(1.0), None)], body: (1.0, 1.0) },
+        "TEST" => Pattern {
+            pads: vec![("1".into(), (0.0, 0.0), Shape::Round(1.0), None)],
+            body: (1.0, 1.0),
+            slot: 0.0,
+        },
         "ROW4" => row(4, 2.54, 1.7, 1.0, 2.5),
         "ROW5" => row(5, 2.54, 1.7, 1.0, 2.5),
         "ROW6" => row(6, 2.54, 1.7, 1.0, 2.5),
         "ROW8" => row(8, 2.54, 1.7, 1.0, 2.5),
         "CLAMP2" => row(2, 5.0, 2.6, 1.3, 8.0),
+        // Flat pins in slots of 1.0 x 1.8 mm.
+        "CLAMP2-FLAT" => Pattern { slot: 0.4, ..row(2, 5.0, 2.6, 1.0, 8.0) },
         "CLAMP3" => row(3, 5.0, 2.6, 1.3, 8.0),
         "CLAMP6" => row(6, 5.0, 2.6, 1.3, 8.0),
         _ => panic!("no land pattern {package}"),
@@ -129,6 +140,7 @@ impl Design {
         let pattern = pattern(package);
         let nets: Vec<&str> = nets.split_whitespace().collect();
         assert_eq!(nets.len(), pattern.pads.len(), "{reference}: one net per pin");
+        let way = if quarters % 2 == 1 { (pattern.slot, 0.0) } else { (0.0, pattern.slot) };
         let mut pads = Vec::new();
         for ((number, (mut x, mut y), mut shape, drill), net) in pattern.pads.into_iter().zip(nets) {
             for _ in 0..quarters {
@@ -136,7 +148,7 @@ impl Design {
                 shape = shape.turned();
             }
             let net = if net == "-" { String::new() } else { net.to_owned() };
-            pads.push(Pad { number, net, at: (tidy(at.0 + x), tidy(at.1 + y)), shape, drill });
+            pads.push(Pad { number, net, at: (tidy(at.0 + x), tidy(at.1 + y)), shape, drill, slot: way });
         }
         if package == "TIE" {
             let (x, y) = if quarters % 2 == 1 { (0.2, 0.3) } else { (0.3, 0.2) };

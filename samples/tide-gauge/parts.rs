@@ -168,7 +168,7 @@ fn field_bus(d: &mut Design) {
 
 /// Input protection, buck converter, digital regulator.
 fn supply(d: &mut Design) {
-    d.place("J2", "CLAMP2", "12 V supply", (94.0, 15.0), 0, "VIN GND");
+    d.place("J2", "CLAMP2-FLAT", "12 V supply", (94.0, 15.0), 0, "VIN GND");
     d.place("F1", "1206", "500 mA", (86.0, 17.5), 2, "VIN VIN_F");
     d.place("D1", "SMA", "60 V 1 A", (79.0, 17.5), 2, "VIN_F VIN_P");
     d.place("D2", "SMB-TVS", "18 V", (84.2, 11.0), 1, "GND VIN_F");

@@ -90,6 +90,18 @@ fn the_tide_gauge_is_as_large_as_promised() {
         let valued = board.parts.iter().filter(|part| part.value.is_some()).count();
         assert_eq!(valued, board.parts.len(), "every part has a value");
     }
+    // Flat pins of the supply's clamp: 1.0 x 1.8 mm.
+    for board in [&*A, &*B, &*CLEAN] {
+        let slots: Vec<_> = board.holes.iter().filter(|hole| hole.path.len() > 1).collect();
+        assert_eq!(slots.len(), 2);
+        for slot in slots {
+            let long_mm = (slot.path[0].distance(slot.path[1]) + slot.diameter_m) * 1e3;
+            assert!((long_mm - 1.8).abs() < 1e-6 && (slot.diameter_m - 1.0e-3).abs() < 1e-9);
+            assert!(slot.plating == ebbmap::board::Plating::Plated && !slot.via);
+            let name = board.net_name(slot.net.expect("a slot has the net of its pin"));
+            assert!(["VIN", "GND"].contains(&name), "{name}");
+        }
+    }
     assert_eq!(A.nets, CLEAN.nets);
     assert_eq!(A.parts, B.parts);
 }
