@@ -99,6 +99,8 @@ struct Sums {
     coarse: Option<(Sum, Sum)>,
     /// Mean resistance in ohm and inductance in henry of what each void adds.
     void_parts: Option<Vec<(f64, f64)>>,
+    /// Mean part of the return that is left out.
+    left_out: f64,
 }
 
 impl Sums {
@@ -106,6 +108,7 @@ impl Sums {
         let sum = |map| Sum::new(map, weight);
         Self {
             void_parts: parts(&maps, weight),
+            left_out: weight * maps.left_out,
             map: sum(maps.map),
             without_voids: sum(maps.without_voids),
             coarse: maps.coarse.map(|(map, without)| (sum(map), sum(without))),
@@ -116,6 +119,7 @@ impl Sums {
         self.void_parts = self.void_parts.take().zip(parts(&maps, weight)).map(|(sums, own)| {
             sums.iter().zip(&own).map(|(sum, own)| (sum.0 + own.0, sum.1 + own.1)).collect()
         });
+        self.left_out += weight * maps.left_out;
         self.map.add(&maps.map, weight, told);
         self.without_voids.add(&maps.without_voids, weight, told);
         self.coarse = match (self.coarse.take(), maps.coarse) {
@@ -133,6 +137,7 @@ impl Sums {
         let impedance = |&(ohm, henry): &(f64, f64)| Complex64::new(ohm, omega * henry);
         PlaneMaps {
             void_parts: self.void_parts.map(|parts| parts.iter().map(impedance).collect()),
+            left_out: self.left_out,
             map: self.map.finish(shape),
             without_voids: self.without_voids.finish(shape),
             coarse: self.coarse.map(|(map, without)| (map.finish(shape), without.finish(shape))),

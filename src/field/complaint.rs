@@ -74,7 +74,7 @@ pub fn landings_apart(lay: &Lay) -> Diagnostic {
 }
 
 /// A cell of a layer cannot stand for its copper.
-pub fn too_coarse(_: &Board, lay: &Lay, misfit: Misfit) -> Diagnostic {
+pub fn too_coarse(lay: &Lay, misfit: Misfit) -> Diagnostic {
     let Misfit { layer, place } = misfit;
     let text = format!(
         "cell of {} must be smaller here to keep its pieces apart; got {:.4} mm",
@@ -87,20 +87,26 @@ pub fn too_coarse(_: &Board, lay: &Lay, misfit: Misfit) -> Diagnostic {
         .hint(format!("set `cell = \"{half_mm:.4}mm\"` or less under `[solver]`"))
 }
 
-/// Cells are smaller than the plan's.
-pub fn halved(lay: &Lay, cell_m: f64) -> Diagnostic {
+/// Nothing is known of where the return of a lay flows, because no frequency was asked for.
+pub fn not_surveyed(lay: &Lay) -> Diagnostic {
+    let text = format!("net `{}` must be solved at one frequency at least; the plan has none", lay.name);
+    Diagnostic::error(code::RETURN_OPEN, text)
+}
+
+/// Cells are smaller than wanted, by so many halvings.
+pub fn halved(lay: &Lay, cell_m: f64, halvings: usize) -> Diagnostic {
     let text = format!(
         "net `{}` on {} is solved on cells of {:.4} mm; cells of {:.4} mm cannot keep its copper apart",
         lay.name,
         copper_of(lay),
         cell_m * 1e3,
-        lay.cell_m * 1e3
+        cell_m * 1e3 * f64::from(1 << halvings)
     );
     Diagnostic::note(code::CELL_HALVED, text)
 }
 
 /// What the cells do not show as it is drawn, one message for each layer.
-pub fn mended(_: &Board, lay: &Lay, stage: &Stage) -> Vec<Diagnostic> {
+pub fn mended(lay: &Lay, stage: &Stage) -> Vec<Diagnostic> {
     let mut messages = Vec::new();
     for sheet in &stage.sheets {
         let mask = &sheet.mask;

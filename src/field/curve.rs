@@ -7,7 +7,8 @@
 //! has a reduced basis of its own ([`Family`]), and Z between is their mean weighted by the part of the foil's half
 //! that counts, theta = 1/(1 + |lam| h) ([`super::Foil::current_depth_m`]): Z = theta Z_low + (1 - theta) Z_high. Both
 //! vary smoothly, and Z is nearly linear in a height that changes by little.
-//! The copper is on cells of twice the size where those can stand for it, so L is within about 2 %.
+//! Each form sees the copper as maps at its frequencies do, on cells of twice the size where those can stand for it,
+//! so L is within about 2 %.
 //! Source: the formulas of the rooms that it uses. Range: below a tenth of a wavelength, as the maps.
 //! Checked by: `the_loop_curve_meets_the_maps` in tests/field.
 
@@ -88,7 +89,7 @@ impl LayBench<'_, '_> {
 
     /// What the sheets put into the loop, with height and profile as at `form_hz`.
     fn sheets_ohm(&self, stack: &Stack, form_hz: f64, frequency_hz: &[f64]) -> Option<Vec<Complex64>> {
-        let (stage, entered) = self.coarsest(stack)?;
+        let (stage, entered) = self.coarsest(stack, form_hz)?;
         let drive =
             Drive { strips: self.source.strips(stack, form_hz), injections: entered.injections.clone() };
         let points: Vec<OperatingPoint> = frequency_hz

@@ -2,6 +2,7 @@
 
 mod band;
 mod complaint;
+mod compose;
 mod coupling;
 mod curve;
 mod foil;
@@ -14,6 +15,7 @@ mod source;
 pub mod spread;
 mod stack;
 mod stage;
+mod survey;
 pub mod track;
 mod wiring;
 mod workshop;
@@ -22,11 +24,12 @@ pub use band::BandDensity;
 pub use coupling::Couplings;
 pub use curve::LoopCurve;
 pub use foil::Foil;
+pub use laybench::Setup;
 pub use mask::{Mask, NO_ISLAND, TooCoarse};
 pub use pieces::Copper;
 pub use source::Source;
 pub use stack::Stack;
-pub use stage::Voids;
+pub use stage::{Stage, StagedSheet, Voids};
 pub use workshop::{Bench, PlaneMaps, Progress, Solved, TOLERANCE, Workshop};
 
 use crate::geom::{Grid, Point};

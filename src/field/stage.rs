@@ -107,7 +107,7 @@ impl Stage {
 }
 
 /// Most cells of all stages that are kept; the least recently used go first.
-const KEPT_CELLS: usize = 1_500_000;
+const KEPT_CELLS: usize = 2_500_000;
 /// Most cells of all masks that are kept.
 const KEPT_MASKS: usize = 8_000_000;
 
@@ -164,6 +164,10 @@ impl Stages {
         let wiring = Wiring::new(lay, &sheets, &grid, stack);
         let z_m = sheets.iter().map(|sheet| stack.z_m(sheet.layer)).collect();
         let stage = Stage { grid, sheets, wiring, z_m, system: OnceLock::new() };
+        if view.window.is_some() {
+            // windows differ from path to path
+            return Ok(Arc::new(stage));
+        }
         let mut kept = self.kept.lock().unwrap_or_else(PoisonError::into_inner);
         let stage = match kept.iter().position(|known| known.equals(&stage)) {
             Some(at) => kept.remove(at),
@@ -246,8 +250,8 @@ pub fn plane_cells(board: &Board, lay: &Lay, sheet: &StagedSheet, chart: &ChartP
         });
         let mut cells = sheet.mask.copper.clone();
         for (_, other) in others {
-            let (_, covered) = covered_by_net(board, other, &sheet.mask.grid);
-            cells.iter_mut().zip(covered).for_each(|(cell, theirs)| *cell &= !theirs);
+            let theirs = plane_on(board, other, &sheet.mask.grid);
+            cells.iter_mut().zip(theirs).for_each(|(cell, theirs)| *cell &= !theirs);
         }
         return cells;
     }
@@ -259,15 +263,16 @@ pub fn plane_cells(board: &Board, lay: &Lay, sheet: &StagedSheet, chart: &ChartP
     sheet.mask.group.iter().map(|&group| group != NO_ISLAND && of_net[group as usize]).collect()
 }
 
-fn covered_by_net(board: &Board, chart: &ChartPlan, grid: &Grid) -> (Grid, Vec<bool>) {
+/// Which cells of a grid a chart's plane covers by half.
+pub fn plane_on(board: &Board, chart: &ChartPlan, grid: &Grid) -> Vec<bool> {
     let region = Region(plane_areas(board, chart).into_iter().cloned().collect());
-    (*grid, raster::coverage(&region, grid).into_iter().map(|part| part >= 0.5).collect())
+    raster::coverage(&region, grid).into_iter().map(|part| part >= 0.5).collect()
 }
 
 /// The grid of a chart's plane and which cells are copper, for a model that does not ask what is connected.
 pub fn cells_of_plane(board: &Board, chart: &ChartPlan, cell_m: f64) -> (Grid, Vec<bool>) {
     let grid = grid_over(board, &plane_areas(board, chart), &chart.voids, cell_m);
-    covered_by_net(board, chart, &grid)
+    (grid, plane_on(board, chart, &grid))
 }
 
 fn is_net(board: &Board, net: Option<NetId>, name: &str) -> bool {

@@ -102,7 +102,7 @@ fn place_of(lay: &Lay, sheets: &[StagedSheet], end: &End) -> Option<Place> {
         End::Copper { layer, area, at, radius_m } => (layer, area, at, radius_m),
     };
     let Some(index) = sheets.iter().position(|sheet| sheet.layer == layer) else {
-        let left_out = lay.layers.iter().any(|known| known.layer == layer);
+        let left_out = lay.layers.iter().any(|known| known.layer == layer && known.areas.contains(&area));
         let key = NodeKey::Through(layer, area, at.x.to_bits(), at.y.to_bits());
         return left_out.then_some(Place::Node(key));
     };

@@ -1,7 +1,7 @@
 //! From a path of the plan to solved maps, sharing prepared copper between paths.
 
 use super::lay::Lay;
-use super::laybench::LayBench;
+use super::laybench::{LayBench, Setup};
 use super::spread::{SpreadLeg, face_currents};
 use super::stage::Stages;
 use super::{JointCurrent, ReturnMap};
@@ -23,6 +23,8 @@ pub struct Workshop<'a> {
     pub(super) joints: Vec<Joint>,
     pub(super) model: Model,
     pub(super) tolerance: f64,
+    /// Whether only what matters near a path is solved finely.
+    pub(super) windows: bool,
     pub(super) stages: Stages,
 }
 
@@ -47,6 +49,8 @@ pub struct PlaneMaps {
     /// Loop impedance less that without voids, in ohm, divided among the voids of the chart, with the rest behind them;
     /// none where both are the same or the model does not tell.
     pub void_parts: Option<Vec<Complex64>>,
+    /// Part of the return that was left out of the solve: layers that carry little, and what flows off its window.
+    pub left_out: f64,
 }
 
 /// What a path has done so far.
@@ -80,12 +84,18 @@ impl<'a> Workshop<'a> {
                 joints.push(joint.clone());
             }
         }
-        Self { board, plan, joints, model, tolerance: TOLERANCE, stages: Stages::default() }
+        Self { board, plan, joints, model, tolerance: TOLERANCE, windows: true, stages: Stages::default() }
     }
 
     /// The same with another relative residual for the sheet model.
     pub fn with_tolerance(mut self, tolerance: f64) -> Self {
         self.tolerance = tolerance;
+        self
+    }
+
+    /// The same with every path solved on the whole board with all its layers, which takes long.
+    pub fn with_whole_boards(mut self) -> Self {
+        self.windows = false;
         self
     }
 
@@ -95,13 +105,13 @@ impl<'a> Workshop<'a> {
         let mut bench = Bench { workshop: self, path, charts, lays: Vec::new() };
         if self.model == Model::Sheet {
             let lays = Lay::of_path(self.board, &self.plan.conductors, &self.joints, path, &bench.charts);
-            bench.lays = lays
-                .into_iter()
-                .map(|lay| {
-                    let charts = lay.charts.iter().map(|(index, _)| *index).collect();
-                    LayBench::new(self, lay).map_err(|reason| (charts, reason))
-                })
-                .collect();
+            for lay in lays {
+                let charts = lay.charts.iter().map(|(index, _)| *index).collect();
+                bench.lays.push(match lay.single {
+                    true => LayBench::whole(self, lay).map_err(|reason| (charts, reason)),
+                    false => Ok(LayBench::surveyed(self, lay, path, &mut bench.charts)),
+                });
+            }
         }
         bench
     }
@@ -135,6 +145,17 @@ impl Bench<'_, '_> {
     /// What was assumed while it was made ready.
     pub fn notes(&self) -> Vec<Diagnostic> {
         self.lays.iter().flatten().flat_map(LayBench::notes).collect()
+    }
+
+    /// What solves take at a frequency, for a caller that solves itself: prepared system, drive and operating point of
+    /// each stretch that is solved alone (one for a plan with conductors). Cells, window and layers are those of the
+    /// nearest frequency of the plan. Empty for the closed form.
+    pub fn at(&self, frequency_hz: f64) -> Vec<Result<Setup, Diagnostic>> {
+        let lay = |lay: &Result<LayBench, (Vec<usize>, Diagnostic)>| match lay {
+            Ok(lay) => lay.at(frequency_hz),
+            Err((_, reason)) => Err(reason.clone()),
+        };
+        self.lays.iter().map(lay).collect()
     }
 
     /// Solves at one frequency of a band.
@@ -209,6 +230,7 @@ impl Bench<'_, '_> {
             map: fine,
             coarse: Some((coarse.clone(), coarse)),
             void_parts: None,
+            left_out: 0.0,
         }
     }
 }

@@ -106,6 +106,7 @@ fn charted(
         map: &solved.map,
         without_voids: Some(&solved.without_voids),
         coarse: solved.coarse.as_ref().map(|(map, filled)| (map, Some(filled))),
+        left_out: solved.left_out,
     };
     let figures = figures(&maps, &track);
     let effects = effect::of(&maps, &track, &chart.voids, zones, solved.void_parts.as_deref());

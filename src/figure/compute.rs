@@ -28,6 +28,8 @@ pub struct Maps<'a> {
     pub without_voids: Option<&'a ReturnMap>,
     /// Both on cells of 2d.
     pub coarse: Option<(&'a ReturnMap, Option<&'a ReturnMap>)>,
+    /// Part of the return that the solve left out.
+    pub left_out: f64,
 }
 
 /// The track that the map belongs to.
@@ -49,7 +51,7 @@ pub fn figures(maps: &Maps, track: &Track) -> Figures {
     let here = all(maps.map);
     let filled = maps.without_voids.map(all);
     let coarse = maps.coarse.map(|(map, filled)| (all(map), filled.map(all)));
-    let least = LEAST_ERROR[usize::from(maps.map.grid.cell_m > 1.001 * track.height_m)];
+    let least = LEAST_ERROR[usize::from(maps.map.grid.cell_m > 1.001 * track.height_m)] + maps.left_out;
     let figure = |pick: &dyn Fn(&Raw) -> Option<f64>, slow: f64| {
         let value = pick(&here);
         let change =
