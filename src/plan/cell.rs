@@ -42,7 +42,8 @@ pub fn choose(bounds: Bounds, sheets: usize, height_m: f64, finest_m: f64) -> Ce
     }
     let mut cell_m = rounded((area / MOST_CELLS).sqrt());
     while cells_of(cell_m) > MOST_CELLS {
-        cell_m = rounded(cell_m * 1.3);
+        // more than the largest ratio of neighbours in the series, so that each round takes the next size
+        cell_m = rounded(cell_m * 1.35);
     }
     CellChoice { cell_m, enlarged: cell_m > height_m }
 }
@@ -128,5 +129,11 @@ mod tests {
         near(choice(plane(100.0, 80.0), 4, 0.01e-3).cell_m, 0.1e-3);
         let huge = choice(plane(300.0, 300.0), 2, f64::INFINITY);
         assert!(huge.enlarged && huge.cell_m > 0.2e-3, "{huge:?}");
+        for side_mm in 100..2000 {
+            let sheets = 1 + side_mm % 6;
+            let large = choice(plane(side_mm as f64, 200.0), sheets, f64::INFINITY);
+            let cells = 0.2 * 1e-3 * side_mm as f64 * sheets as f64 / (large.cell_m * large.cell_m);
+            assert!(cells <= 2.4e6, "{side_mm}: {large:?}");
+        }
     }
 }

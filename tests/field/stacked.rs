@@ -127,6 +127,7 @@ impl Stacked {
             joints: Vec::new(),
             own_areas: Vec::new(),
             valid_to_hz: 0.0,
+            signal: Default::default(),
             charts: self.charts.iter().map(chart).collect(),
         };
         let layers = self.copper.iter().enumerate().filter(|(_, areas)| !areas.is_empty());
