@@ -241,7 +241,8 @@ fn draws_everything_it_names_and_nothing_else() {
             want.push(format!("numbers/{net}--L2-GND--{band}.npz"));
         }
     }
-    for name in ["contact-sheet-1.svg", "contact-sheet-1.png", "findings.json", "numbers/index.json"] {
+    let documents = ["findings.json", "findings.csv", "findings.gbr", "review.md", "numbers/index.json"];
+    for name in ["contact-sheet-1.svg", "contact-sheet-1.png"].into_iter().chain(documents) {
         want.push(name.to_owned());
     }
     want.sort();

@@ -156,7 +156,9 @@ fn imports_point_downward() {
             wrong.push(format!("{}: room `{room}` has no floor in FLOORS", path.display()));
             continue;
         };
-        for imported in imported_rooms(&code_only(&text)) {
+        // tests inside a file may use any room, for example to read a style
+        let outside_tests = text.split("#[cfg(test)]").next().unwrap_or_default();
+        for imported in imported_rooms(&code_only(outside_tests)) {
             let Some(other) = floors.get(imported.as_str()) else { continue };
             let arrow = ARROWS.iter().find(|arrow| arrow.0 == room && arrow.1 == imported);
             let allowed = arrow.map_or(other < floor, |arrow| arrow.2);

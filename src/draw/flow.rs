@@ -94,10 +94,11 @@ pub fn arrows(
         let mut x = view.x + if row % 2 == 0 { 0.5 } else { 1.0 } * PITCH;
         while x < right - 0.4 * PITCH {
             let near = tracks.iter().any(|&(a, b)| from_segment((x, y), a, b) < FROM_TRACK);
-            if !near && !placer.is_taken(around((x, y), 0.6 * LENGTH)) {
-                if let Some((line, ink)) = arrow((flow, density), (x, y), view, look) {
-                    add(&mut paths, line, ink);
-                }
+            if !near
+                && !placer.is_taken(around((x, y), 0.6 * LENGTH))
+                && let Some((line, ink)) = arrow((flow, density), (x, y), view, look)
+            {
+                add(&mut paths, line, ink);
             }
             x += PITCH;
         }

@@ -339,7 +339,7 @@ fn label_leader(spot: (f64, f64), rect: Rect) -> Option<Line> {
     let end = (spot.0.clamp(rect[0], rect[2]), spot.1.clamp(rect[1], rect[3]));
     let length = libm::hypot(end.0 - spot.0, end.1 - spot.1);
     let t = 1.6 / length;
-    (length >= 4.5).then(|| ((spot.0 + t * (end.0 - spot.0), spot.1 + t * (end.1 - spot.1)), end))
+    (length >= 4.5).then_some(((spot.0 + t * (end.0 - spot.0), spot.1 + t * (end.1 - spot.1)), end))
 }
 
 fn unit(direction: usize, of: usize) -> (f64, f64) {

@@ -127,10 +127,10 @@ impl Workshop<'_> {
         let z_ohm: Result<Vec<Vec<Option<Complex64>>>, Diagnostic> = ready.par_iter().map(row).collect();
         let mut z_ohm = z_ohm?;
         // by reciprocity the other way round is the same
-        for from in 0..ready.len() {
-            for to in 0..ready.len() {
-                z_ohm[from][to] = z_ohm[from][to].or(z_ohm[to][from]);
-            }
+        let other_way: Vec<Vec<Option<Complex64>>> =
+            (0..ready.len()).map(|from| z_ohm.iter().map(|row| row[from]).collect()).collect();
+        for (row, other) in z_ohm.iter_mut().zip(&other_way) {
+            row.iter_mut().zip(other).for_each(|(z, other)| *z = z.or(*other));
         }
         let paths = ready.iter().map(|(member, _)| member.index).collect();
         Ok(Couplings { frequency_hz, paths, z_ohm })

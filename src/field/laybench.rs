@@ -31,11 +31,16 @@ pub struct LayBench<'w, 'a> {
     pub(super) source: Source<'w>,
     /// What a solve takes at the frequencies asked, with the survey that says so; one entry without a survey where the
     /// whole is always solved.
-    asked: Vec<(f64, Result<(Choice, Option<Survey>), Diagnostic>)>,
+    asked: Vec<(f64, Surveyed)>,
     notes: Mutex<Vec<Diagnostic>>,
     /// Cells of planes on whole boards: index of the chart, grid, cells.
-    planes: Mutex<Vec<(usize, Grid, Arc<Vec<bool>>)>>,
+    planes: Mutex<Vec<PlaneCells>>,
 }
+
+/// What a solve takes at a frequency and the survey that says so, or why it cannot be had.
+type Surveyed = Result<(Choice, Option<Survey>), Diagnostic>;
+/// Index of a chart, a grid, and which of its cells are copper.
+type PlaneCells = (usize, Grid, Arc<Vec<bool>>);
 
 /// Maps of a lay at one frequency: index of the chart and its maps.
 pub struct LaySolved {

@@ -57,7 +57,7 @@ impl Mask {
     pub fn new(copper: &Copper, grid: &Grid) -> Result<Self, TooCoarse> {
         let pieces = Pieces::find(copper, grid);
         let mut choice = Choice::by_half(&pieces, grid);
-        let crumbs = choice.link(&pieces, grid, |place| Err(place))?;
+        let crumbs = choice.link(&pieces, grid, Err)?;
         Ok(choice.into_mask(&pieces, grid, crumbs, 0))
     }
 

@@ -92,8 +92,7 @@ pub fn magnitude_at(solved: &[(f64, f64)], frequency_hz: f64) -> f64 {
 /// Voltage in V rms that a drive puts into another path within a band, for transfer magnitudes at solved frequencies.
 pub fn band_volts(signal: &SignalRequest, band: &Band, solved: &[(f64, f64)]) -> f64 {
     let Some(drive) = signal.drive.as_ref().filter(|drive| drive.is_absolute()) else { return 0.0 };
-    let flow =
-        |hz: f64| signal.load.as_ref().and_then(|load| admittance(load, hz)).unwrap_or(Complex64::default());
+    let flow = |hz: f64| signal.load.as_ref().and_then(|load| admittance(load, hz)).unwrap_or_default();
     let spectrum = band_spectrum(drive, Limits::from(band), &flow, CONDENSED);
     let volts =
         spectrum.points.iter().map(|line| line.current_rms_a * magnitude_at(solved, line.frequency_hz));

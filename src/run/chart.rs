@@ -119,7 +119,7 @@ impl<'a> Charting<'a, '_> {
                 let stem = &self.stems[index][row][at];
                 let (plan, done) = &mut rows[row];
                 let map = match map {
-                    Ok(map) => self.draw(net, plan, band, map, &beside, stem, (index, row))?,
+                    Ok(map) => self.draw((net, plan), band, map, &beside, stem, (index, row))?,
                     Err(reason) => Err(reason),
                 };
                 done.push(Done { band, frequency_hz, stem: stem.clone(), map });
@@ -174,8 +174,7 @@ impl<'a> Charting<'a, '_> {
     /// Draws and writes one map. The outer error is a file that cannot be written, the inner one withholds the map.
     fn draw(
         &self,
-        net: &PathPlan,
-        plan: &ChartPlan,
+        (net, plan): (&PathPlan, &ChartPlan),
         band: usize,
         charted: Charted,
         beside: &Beside,

@@ -263,8 +263,11 @@ impl Branches {
     }
 }
 
+/// A capacitor of a gap: its two nodes and its capacitance in farad.
+type Facing = (u32, u32, f64);
+
 /// For each gap its cells, and the capacitors between the nodes there.
-fn facing_cells(problem: &Problem, node: &[u32]) -> (Vec<Vec<u32>>, Vec<(u32, u32, f64)>) {
+fn facing_cells(problem: &Problem, node: &[u32]) -> (Vec<Vec<u32>>, Vec<Facing>) {
     let cells = problem.grid.len();
     let area = problem.grid.cell_m * problem.grid.cell_m;
     let (mut gap_cells, mut facing) = (Vec::new(), Vec::new());

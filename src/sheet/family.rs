@@ -91,7 +91,7 @@ impl<'a> Family<'a> {
         for (index, &f) in sorted.iter().enumerate() {
             let far = match watched.last() {
                 None => true,
-                Some(&last) if last == 0.0 => true,
+                Some(&0.0) => true,
                 Some(&last) => libm::log10(f / last) >= 1.0 / steps.max(1.5) - 1e-12,
             };
             if far || index + 1 == sorted.len() {

@@ -341,7 +341,7 @@ impl Projector {
         let zero = Complex::new(T::zero(), T::zero());
         // W^-1 v on the verticals while the divergence is taken
         let kept = emf[faces..].to_vec();
-        emf[faces..gaps].iter_mut().zip(&self.conductance).for_each(|(v, g)| *v = *v * T::of(*g));
+        emf[faces..gaps].iter_mut().zip(&self.conductance).for_each(|(v, g)| *v *= T::of(*g));
         emf[gaps..].fill(zero);
         let mut potential = self.laplacian.solve(&branches.divergence(emf));
         emf[faces..].copy_from_slice(&kept);

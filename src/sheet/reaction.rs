@@ -60,7 +60,7 @@ impl System {
         branches.subtract_gradient(&potential, None, &mut voltage);
         let mut parts = vec![Complex64::default(); count + 1];
         let cells = branches.cells();
-        for sheet in 0..branches.sheets {
+        for (sheet, of_sheet) in of_cells.iter().enumerate().take(branches.sheets) {
             for (direction, step) in [(0, 1), (1, branches.nx)] {
                 let first = branches.plane(sheet, direction).start;
                 for cell in 0..cells {
@@ -68,7 +68,7 @@ impl System {
                     if !branches.conducts[face] {
                         continue;
                     }
-                    let label = |cell: usize| of_cells[sheet][cell] as usize;
+                    let label = |cell: usize| of_sheet[cell] as usize;
                     let part = label(cell).min(label(cell - step)).min(count);
                     parts[part] -= zero[face] * voltage[face];
                 }

@@ -16,6 +16,9 @@ pub const DGND: u32 = 1;
 pub const GND: u32 = 2;
 pub const V3: u32 = 3;
 
+/// Layer, start, end, width, current.
+pub type Run = (usize, (f64, f64), (f64, f64), f64, f64);
+
 /// A board in mm; layers from the top.
 pub struct Stacked {
     pub size: (f64, f64),
@@ -24,8 +27,8 @@ pub struct Stacked {
     /// Copper by layer: net and shape.
     pub copper: Vec<Vec<(u32, Polygon)>>,
     pub foil: f64,
-    /// Track: layer, start, end, width, current.
-    pub track: Vec<(usize, (f64, f64), (f64, f64), f64, f64)>,
+    /// Track.
+    pub track: Vec<Run>,
     /// Entries: layer, area, place, current.
     pub entries: Vec<(usize, usize, (f64, f64), f64)>,
     pub joints: Vec<Joint>,
