@@ -521,14 +521,14 @@ fn named(frequency_hz: f64) -> Band {
     Band { name, at_hz: vec![frequency_hz], ..Band::default() }
 }
 
-/// Takes away the currents through faces that touch no cell of `copper`.
+/// Takes away the currents through faces that do not lie between two cells of `copper`.
 fn keep_faces(copper: &[bool], nx: usize, jx: &mut [Complex64], jy: &mut [Complex64]) {
     let ny = copper.len() / nx;
     for iy in 0..ny {
         for ix in 0..=nx {
             let left = ix > 0 && copper[iy * nx + ix - 1];
             let right = ix < nx && copper[iy * nx + ix];
-            if !left && !right {
+            if !left || !right {
                 jx[iy * (nx + 1) + ix] = Complex64::default();
             }
         }
@@ -537,7 +537,7 @@ fn keep_faces(copper: &[bool], nx: usize, jx: &mut [Complex64], jy: &mut [Comple
         for ix in 0..nx {
             let below = iy > 0 && copper[(iy - 1) * nx + ix];
             let above = iy < ny && copper[iy * nx + ix];
-            if !below && !above {
+            if !below || !above {
                 jy[iy * nx + ix] = Complex64::default();
             }
         }
