@@ -55,14 +55,7 @@ pub fn map(
         .map(|&change| color(&gradient, style.change.zero, place(scale, change)))
         .flat_map(|color| [color.0, color.1, color.2])
         .collect();
-    group.items.push(Item::Image(Image {
-        x: view.x,
-        y: view.y,
-        width: view.width(),
-        height: view.height(),
-        png: rgb_png(nx as u32, ny as u32, &bytes),
-        label: label.to_owned(),
-    }));
+    group.items.push(Item::Image(Image::filling(view, rgb_png(nx as u32, ny as u32, &bytes), label)));
     let mut lines = Group::new("change-lines").clipped(view.x, view.y, view.width(), view.height());
     for (level, dash) in [(LINE, &[] as &[f64]), (-LINE, &[1.6, 0.8])] {
         let shown = |at| before.is_copper(view.back(at)) && after.is_copper(view.back(at));

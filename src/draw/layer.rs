@@ -51,17 +51,12 @@ pub fn scene(sheet: &LayerSheet, style: &Style) -> Scene {
     let (width, margin) = (style.ticket.width, style.ticket.margin[0]);
     let right = width - margin;
     let mut scene = Scene {
-        width,
-        height: style.ticket.height,
-        px: style.ticket.px,
-        page: style.color.page,
-        fallback: style.font.fallback.clone(),
         title: sheet.title.clone(),
         description: sheet.description.clone(),
         caution: sheet.caution.clone(),
         number: sheet.number.clone(),
         facts: sheet.facts.clone(),
-        items: Vec::new(),
+        ..Scene::blank((width, style.ticket.height), style.ticket.px, style)
     };
     scene.group(head(sheet, margin, right - margin, style));
     let pitch = style.font.pitch();

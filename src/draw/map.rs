@@ -172,14 +172,7 @@ fn heat(data: &MapData, view: &View, look: &MapLook, label: &str) -> Group {
     let raster = data.density.raster(view, pixels(view.width()), pixels(view.height()), &look.scale);
     let png = heat_png(&raster, &look.scale, &look.style.density.gradient, look.style.color.over);
     let mut group = Group::new("density");
-    group.items.push(Item::Image(Image {
-        x: view.x,
-        y: view.y,
-        width: view.width(),
-        height: view.height(),
-        png,
-        label: label.to_owned(),
-    }));
+    group.items.push(Item::Image(Image::filling(view, png, label)));
     group
 }
 

@@ -52,14 +52,7 @@ pub fn heat(
     let colors = first.level_db.iter().zip(&second.level_db).map(|(&a, &b)| color(&style.pair, a, b));
     let bytes: Vec<u8> = colors.flat_map(|color| [color.0, color.1, color.2]).collect();
     let mut group = Group::new("density");
-    group.items.push(Item::Image(Image {
-        x: view.x,
-        y: view.y,
-        width: view.width(),
-        height: view.height(),
-        png: rgb_png(nx as u32, ny as u32, &bytes),
-        label: label.to_owned(),
-    }));
+    group.items.push(Item::Image(Image::filling(view, rgb_png(nx as u32, ny as u32, &bytes), label)));
     group
 }
 

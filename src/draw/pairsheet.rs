@@ -76,17 +76,12 @@ pub fn scene(sheet: &PairSheet, style: &Style) -> Scene {
     let (width, margin) = (style.ticket.width, style.ticket.margin[0]);
     let right = width - margin;
     let mut scene = Scene {
-        width,
-        height: style.ticket.height,
-        px: style.ticket.px,
-        page: style.color.page,
-        fallback: style.font.fallback.clone(),
         title: sheet.title.clone(),
         description: sheet.description.clone(),
         caution: sheet.caution.clone(),
         number: sheet.number.clone(),
         facts: sheet.facts.clone(),
-        items: Vec::new(),
+        ..Scene::blank((width, style.ticket.height), style.ticket.px, style)
     };
     let mut head = Group::new("headline");
     let wanted = marked_width(Face::Bold, style.font.headline, &sheet.headline);

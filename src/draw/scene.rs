@@ -2,7 +2,8 @@
 
 use super::path::PathData;
 use super::text::{Anchor, Text};
-use crate::style::Rgb;
+use super::view::View;
+use crate::style::{Rgb, Style};
 
 /// One picture.
 #[derive(Clone, Debug, Default)]
@@ -108,6 +109,20 @@ pub struct Image {
     pub png: Vec<u8>,
     /// What it shows, in words.
     pub label: String,
+}
+
+impl Image {
+    /// An image that fills a view.
+    pub fn filling(view: &View, png: Vec<u8>, label: &str) -> Self {
+        Self {
+            x: view.x,
+            y: view.y,
+            width: view.width(),
+            height: view.height(),
+            png,
+            label: label.to_owned(),
+        }
+    }
 }
 
 /// Items that belong together.
@@ -222,6 +237,12 @@ impl TextBox {
 }
 
 impl Scene {
+    /// A page of width and height in mm, with a PNG of `px` pixels, without words and items.
+    pub fn blank((width, height): (f64, f64), px: u32, style: &Style) -> Self {
+        let (page, fallback) = (style.color.page, style.font.fallback.clone());
+        Self { width, height, px, page, fallback, ..Self::default() }
+    }
+
     /// Adds a group if it holds anything.
     pub fn group(&mut self, group: Group) {
         if !group.items.is_empty() {

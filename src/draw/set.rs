@@ -169,17 +169,12 @@ pub fn scene(page: &SetPage, style: &Style) -> Scene {
     let style = &Style { font: style.font.at_most(TYPE), ..style.clone() };
     let sheet = style.set;
     let mut scene = Scene {
-        width: sheet.width,
-        height: sheet.height,
-        px: sheet.px,
-        page: style.color.page,
-        fallback: style.font.fallback.clone(),
         title: page.title.clone(),
         description: page.description.clone(),
         caution: page.caution.clone(),
         number: page.number.clone(),
         facts: page.facts.clone(),
-        items: Vec::new(),
+        ..Scene::blank((sheet.width, sheet.height), sheet.px, style)
     };
     scene.group(frame(style));
     scene.group(head(page, style));

@@ -89,17 +89,12 @@ pub fn scene(sheet: &TicketSheet, style: &Style) -> Scene {
     let grid = grid(style);
     let right = width - margin;
     let mut scene = Scene {
-        width,
-        height: style.ticket.height,
-        px: style.ticket.px,
-        page: style.color.page,
-        fallback: style.font.fallback.clone(),
         title: sheet.title.clone(),
         description: sheet.description.clone(),
         caution: sheet.caution.clone(),
         number: sheet.number.clone(),
         facts: sheet.facts.clone(),
-        items: Vec::new(),
+        ..Scene::blank((width, style.ticket.height), style.ticket.px, style)
     };
     scene.group(head(sheet, margin, right - margin, style));
     let (view, block, room) = placed_view(sheet, right, style);

@@ -3,8 +3,7 @@
 //! The density is that of the cells at their middles; lines are those of marching squares between them.
 
 use crate::field::ReturnMap;
-use crate::geom::locate::point_segment_distance;
-use crate::geom::{Point, Region, boolean};
+use crate::geom::{Point, Region, boolean, simplify};
 use contour::ContourBuilder;
 
 /// Deviation of a line from its points that is dropped, in cells.
@@ -54,21 +53,6 @@ fn simplified(points: &[Point], tolerance_m: f64) -> Vec<Point> {
     if n < 4 {
         return points.to_vec();
     }
-    let mut kept = vec![false; n];
-    (kept[0], kept[n / 2], kept[n - 1]) = (true, true, true);
-    let mut open = vec![(0, n / 2), (n / 2, n - 1)];
-    while let Some((from, to)) = open.pop() {
-        let ends = (points[from], points[to]);
-        let farthest = (from + 1..to)
-            .map(|index| (point_segment_distance(points[index], ends), index))
-            .max_by(|a, b| a.0.total_cmp(&b.0));
-        if let Some((distance, index)) = farthest
-            && distance > tolerance_m
-        {
-            kept[index] = true;
-            open.push((from, index));
-            open.push((index, to));
-        }
-    }
+    let kept = simplify::kept(points, &[0, n / 2, n - 1], tolerance_m);
     points.iter().zip(kept).filter(|(_, kept)| *kept).map(|(&point, _)| point).collect()
 }

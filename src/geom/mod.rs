@@ -6,6 +6,7 @@ pub mod locate;
 mod point;
 pub mod polygon;
 pub mod raster;
+pub mod simplify;
 pub mod stroke;
 
 pub use grid::Grid;

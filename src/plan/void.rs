@@ -8,7 +8,7 @@ use crate::board::{Board, Plating};
 use crate::field::PlaneId;
 use crate::geom::locate::{Locator, point_segment_distance};
 use crate::geom::polygon::ring_area;
-use crate::geom::{Bounds, Point, Polygon, Region, Ring, boolean, stroke};
+use crate::geom::{Bounds, Point, Polygon, Region, Ring, boolean, simplify, stroke};
 use std::collections::BTreeMap;
 
 /// No pull-back is wider than this, in metres.
@@ -133,23 +133,7 @@ fn simplified_ring(ring: &[Point], tolerance_m: f64) -> Ring {
     if ring.len() < 8 {
         return ring.to_vec();
     }
-    let half = ring.len() / 2;
-    let mut kept = vec![false; ring.len()];
-    (kept[0], kept[half]) = (true, true);
-    let mut open = vec![(0, half), (half, ring.len())];
-    while let Some((from, to)) = open.pop() {
-        let ends = (ring[from], ring[to % ring.len()]);
-        let farthest = (from + 1..to)
-            .map(|index| (point_segment_distance(ring[index], ends), index))
-            .max_by(|a, b| a.0.total_cmp(&b.0));
-        if let Some((distance, index)) = farthest
-            && distance > tolerance_m
-        {
-            kept[index] = true;
-            open.push((from, index));
-            open.push((index, to));
-        }
-    }
+    let kept = simplify::kept(ring, &[0, ring.len() / 2, ring.len()], tolerance_m);
     let simple: Ring = ring.iter().zip(kept).filter(|(_, kept)| *kept).map(|(&point, _)| point).collect();
     if simple.len() > 2 { simple } else { ring.to_vec() }
 }

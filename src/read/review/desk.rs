@@ -2,6 +2,7 @@
 
 use crate::diag::code::review as code;
 use crate::diag::{Code, Diagnostic, nearest};
+use crate::review::Marks;
 use crate::unit::{Dimension, parse_quantity};
 use std::ops::Range;
 use toml::Spanned;
@@ -9,6 +10,11 @@ use toml::de::{DeTable, DeValue};
 
 /// A value with its place in the file.
 pub type Value<'i> = Spanned<DeValue<'i>>;
+
+/// The first byte of an entry, so that a missing key does not mark a whole table.
+pub fn header(span: &Range<usize>) -> Range<usize> {
+    span.start..span.end.min(span.start + 1)
+}
 
 /// The file being read and the messages so far.
 pub struct Desk<'t> {
@@ -28,6 +34,15 @@ impl<'t> Desk<'t> {
     pub fn line(&self, at: usize) -> u32 {
         let upto = at.min(self.text.len());
         1 + self.text.as_bytes()[..upto].iter().filter(|&&byte| byte == b'\n').count() as u32
+    }
+
+    /// Where those of `keys` stand that `table` has.
+    pub fn marks(&self, table: &DeTable<'_>, keys: &[&'static str]) -> Marks {
+        let mark = |key: &&'static str| {
+            let span = table.get(*key)?.span();
+            Some((*key, self.line(span.start), span))
+        };
+        Marks(keys.iter().filter_map(mark).collect())
     }
 
     /// A message at a byte range.

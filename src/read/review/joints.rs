@@ -1,13 +1,11 @@
 //! The `[[part]]` and `[[tie]]` entries of a review: what joins copper.
 
-use super::desk::{Desk, Value};
+use super::desk::{Desk, Value, header};
 use super::nets;
 use crate::diag::code::review as code;
 use crate::geom::Point;
-use crate::review::Marks;
 use crate::review::joint::{Branch, PartRequest, TieEnd, TieRequest};
 use crate::unit::Dimension;
-use std::ops::Range;
 use toml::de::{DeTable, DeValue};
 
 const PART_KEYS: &[&str] =
@@ -52,7 +50,7 @@ pub fn read_parts(desk: &mut Desk<'_>, root: &DeTable<'_>) -> Vec<PartRequest> {
             let at = table.get("reference").map_or(header(&span), toml::Spanned::span);
             desk.error(code::REVIEW_DUPLICATE, at, text);
         }
-        let (line, marks) = (desk.line(span.start), marks(desk, table, PART_KEYS));
+        let (line, marks) = (desk.line(span.start), desk.marks(table, PART_KEYS));
         parts.push(PartRequest { reference, value, nets: of_nets, fitted, branch, joins, line, marks });
     }
     parts
@@ -95,7 +93,7 @@ pub fn read_ties(desk: &mut Desk<'_>, root: &DeTable<'_>, origin: Point) -> Vec<
             .push("write `at = [\"3mm\", \"4mm\"]` beside `net`".into());
             continue;
         }
-        let (line, marks) = (desk.line(span.start), marks(desk, table, TIE_KEYS));
+        let (line, marks) = (desk.line(span.start), desk.marks(table, TIE_KEYS));
         let name = name.unwrap_or_else(|| format!("tie in line {line}"));
         ties.push(TieRequest { name, from, to, branch, line, marks });
     }
@@ -179,17 +177,4 @@ fn truth(desk: &mut Desk<'_>, value: &Value<'_>, key: &str) -> bool {
             true
         }
     }
-}
-
-/// The first byte of an entry, so that a missing key does not mark a whole table.
-fn header(span: &Range<usize>) -> Range<usize> {
-    span.start..span.end.min(span.start + 1)
-}
-
-fn marks(desk: &Desk<'_>, table: &DeTable<'_>, keys: &[&'static str]) -> Marks {
-    let mark = |key: &&'static str| {
-        let span = table.get(*key)?.span();
-        Some((*key, desk.line(span.start), span))
-    };
-    Marks(keys.iter().filter_map(mark).collect())
 }

@@ -1,6 +1,6 @@
 //! The `[[net]]` entries of a review.
 
-use super::desk::{Desk, Value};
+use super::desk::{Desk, Value, header};
 use super::drives;
 use crate::diag::code::review as code;
 use crate::geom::Point;
@@ -67,11 +67,6 @@ pub fn read(desk: &mut Desk<'_>, root: &DeTable<'_>, origin: Point) -> Vec<NetRe
         }
     }
     nets
-}
-
-/// The first bytes of an entry, so that a missing key does not mark a whole table.
-fn header(span: &std::ops::Range<usize>) -> std::ops::Range<usize> {
-    span.start..span.end.min(span.start + 1)
 }
 
 /// A pin, part and number joined by a dot.

@@ -1,10 +1,9 @@
 //! The `[[path]]` and `[[pair]]` entries of a review.
 
-use super::desk::{Desk, Value};
+use super::desk::{Desk, Value, header};
 use super::{drives, nets};
 use crate::diag::code::review as code;
 use crate::geom::Point;
-use crate::review::Marks;
 use crate::review::path::{PairRequest, PathRequest, Receiver, Step};
 use std::ops::Range;
 use toml::de::{DeTable, DeValue};
@@ -70,7 +69,7 @@ pub fn read_paths(desk: &mut Desk<'_>, root: &DeTable<'_>, origin: Point) -> Vec
             desk.error(code::REVIEW_BAD_VALUE, header(&span), text);
         }
         let line = desk.line(span.start);
-        let marks = marks(desk, table, PATH_KEYS);
+        let marks = desk.marks(table, PATH_KEYS);
         paths.push(PathRequest {
             name,
             driver,
@@ -108,7 +107,7 @@ pub fn read_pairs(desk: &mut Desk<'_>, root: &DeTable<'_>) -> Vec<PairRequest> {
             desk.error(code::REVIEW_BAD_VALUE, at, text);
         }
         let line = desk.line(span.start);
-        let marks = marks(desk, table, PAIR_KEYS);
+        let marks = desk.marks(table, PAIR_KEYS);
         pairs.push(PairRequest { name, positive, negative, imbalance, signal, line, marks });
     }
     pairs
@@ -287,17 +286,4 @@ fn missing(desk: &mut Desk<'_>, span: &Range<usize>, what: &str, key: &str) {
     desk.error(code::REVIEW_MISSING_KEY, header(span), format!("{what} must have the key `{key}`"))
         .hints
         .push(format!("write `{key} = \"...\"` under `[[{what}]]`"));
-}
-
-/// The first byte of an entry, so that a missing key does not mark a whole table.
-fn header(span: &Range<usize>) -> Range<usize> {
-    span.start..span.end.min(span.start + 1)
-}
-
-fn marks(desk: &Desk<'_>, table: &DeTable<'_>, keys: &[&'static str]) -> Marks {
-    let mark = |key: &&'static str| {
-        let span = table.get(*key)?.span();
-        Some((*key, desk.line(span.start), span))
-    };
-    Marks(keys.iter().filter_map(mark).collect())
 }
